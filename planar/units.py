@@ -55,7 +55,7 @@ _NUMBER_AND_UNIT = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s
 
 
 @cache
-def _registry() -> pint.UnitRegistry:
+def _registry() -> pint.UnitRegistry[float]:
     import pint
 
     return pint.UnitRegistry(cache_folder=None)
@@ -67,13 +67,16 @@ def _factor(unit: str, kind: str) -> float:
     import pint
 
     try:
-        return float(_registry().Quantity(1.0, unit).to(KINDS[kind]).magnitude)
+        one, two = (float(_registry().Quantity(n, unit).to(KINDS[kind]).magnitude) for n in (1.0, 2.0))
     except pint.UndefinedUnitError as error:
         raise UnitError(f"unknown unit {unit!r}, write {EXAMPLES[kind]}") from error
     except pint.DimensionalityError as error:
         raise UnitError(f"{unit!r} is no unit of {kind}, write {EXAMPLES[kind]}") from error
     except Exception as error:  # pint's parser raises many kinds on malformed units
         raise UnitError(f"cannot read unit {unit!r}, write {EXAMPLES[kind]}") from error
+    if abs(two - 2.0 * one) > 1e-9 * abs(one):  # dBm, degrees Celsius: no plain factor
+        raise UnitError(f"{unit!r} is no plain unit of {kind}, write {EXAMPLES[kind]}")
+    return one
 
 
 def quantity(text: object, kind: str) -> float:
@@ -83,7 +86,7 @@ def quantity(text: object, kind: str) -> float:
     missing, unknown or of another kind.
     """
     if not isinstance(text, str):
-        raise UnitError(f"a {kind} is a text with its unit, write {EXAMPLES[kind]}")
+        raise UnitError(f"a text with a number and a unit is needed, write {EXAMPLES[kind]}")
     match = _NUMBER_AND_UNIT.fullmatch(text)
     if match is None:
         raise UnitError(f"no number with a unit, write {EXAMPLES[kind]}")

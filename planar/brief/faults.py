@@ -24,6 +24,7 @@ Path = tuple[str | int, ...]
 
 NOT_GIVEN = "(not given)"
 _LONGEST_VALUE = 80
+_DEEPEST_VALUE = 4
 _PARTICULAR_WORDS: dict[tuple[Path, str], str] = {
     (("target", "polarisation"), "circular"): 'with its sense: "circular-right" or "circular-left"',
     (("target", "polarisation"), "vertical"): '"linear"; how the board is mounted makes it vertical',
@@ -43,7 +44,7 @@ def as_written(value: object) -> str:
 
 def one_line(text: str) -> str:
     """`text` with unprintable characters blanked, cut to a length that fits a message."""
-    text = "".join(character if character.isprintable() else " " for character in text)
+    text = _printable(text)
     return text if len(text) <= _LONGEST_VALUE else f"{text[: _LONGEST_VALUE - 3]}..."
 
 
@@ -58,7 +59,12 @@ def _fault(details: ErrorDetails, data: Mapping[str, Any], where: str) -> Fault:
     if isinstance(cause, ElsewhereError):
         path = cause.path
     expected = WORDS.get(details["type"], _not_read)(details, path)
-    return Fault(where=where, key=_dotted(path), value=_value_at(data, path), expected=expected)
+    key, value = one_line(_dotted(path)), _value_at(data, path)
+    return Fault(where=where, key=key, value=value, expected=_printable(expected))
+
+
+def _printable(text: str) -> str:
+    return "".join(character if character.isprintable() else " " for character in text)
 
 
 def _dotted(path: Path) -> str:
@@ -81,15 +87,17 @@ def _value_at(data: object, path: Path) -> str:
     return as_written(data)
 
 
-def _toml(value: object) -> str:
+def _toml(value: object, levels: int = _DEEPEST_VALUE) -> str:
     if isinstance(value, bool):
         return str(value).lower()
     if isinstance(value, str):
         return json.dumps(value, ensure_ascii=False)
-    if isinstance(value, list | tuple):
-        return f"[{', '.join(_toml(item) for item in value)}]"
+    if isinstance(value, list | dict) and value and levels == 0:
+        return "..."
+    if isinstance(value, list):
+        return f"[{', '.join(_toml(item, levels - 1) for item in value)}]"
     if isinstance(value, dict):
-        inside = ", ".join(f"{_key(key)} = {_toml(item)}" for key, item in value.items())
+        inside = ", ".join(f"{_key(key)} = {_toml(item, levels - 1)}" for key, item in value.items())
         return f"{{ {inside} }}" if inside else "{}"
     return str(value)
 

@@ -101,7 +101,8 @@ def _terminals(layout: Layout) -> tuple[Label, ...]:
     labels = []
     for pad in layout.pads:
         x, y = pad.outline.shape().representative_point().coords[0]
-        labels.append(Label(f"COPPER_{pad.level.name}", pad.name, (_on_grid(x), _on_grid(y))))
+        name = pad.name.encode("ascii", "replace").decode("ascii")  # the formats know no other letters
+        labels.append(Label(f"COPPER_{pad.level.name}", name, (_on_grid(x), _on_grid(y))))
     return tuple(labels)
 
 

@@ -54,7 +54,7 @@ def write_gds(layout: Layout, path: Path) -> None:
     for label in content.labels:
         layer = layer_named(label.layer)
         place = (label.at[0] / _USER_UNIT, label.at[1] / _USER_UNIT)
-        cell.add(gdstk.Label(_ascii(label.text), place, layer=layer.gds_layer, texttype=layer.gds_datatype))
+        cell.add(gdstk.Label(label.text, place, layer=layer.gds_layer, texttype=layer.gds_datatype))
     library = gdstk.Library(cell.name, unit=_USER_UNIT, precision=_DATABASE_UNIT)
     library.add(cell)
     library.write_gds(path, max_points=MAX_VERTICES, timestamp=_TIMESTAMP)
@@ -79,10 +79,6 @@ def _checked(outline: Outline, layer: str) -> Outline:
     if farthest > FARTHEST:
         raise HandoffError(f"GDS: an outline on {layer} reaches {farthest:.3f} m from the origin, limit {FARTHEST} m")
     return outline
-
-
-def _ascii(text: str) -> str:
-    return text.encode("ascii", "replace").decode("ascii")
 
 
 def read_gds(path: Path) -> Drawing:

@@ -90,7 +90,7 @@ def measure(kind: str, low: float, high: float) -> Convert:
 
     def convert(value: object) -> float:
         si = quantity(value, kind)
-        # A hundredth of a billionth covers the rounding of unit conversion at the ends of the range.
+        # Unit conversion rounds: without slack a value at the end of the range could fall outside.
         slack = 1e-11 * max(abs(low), abs(high))
         if not low - slack <= si <= high + slack:
             raise ValueError(f"out of range, from {show(low, kind)} to {show(high, kind)} is possible")

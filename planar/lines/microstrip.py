@@ -12,6 +12,7 @@ from __future__ import annotations
 import math
 from dataclasses import replace
 
+from planar.errors import RangeError
 from planar.lines.ranges import require
 from planar.lines.records import Conductor, Line, Substrate
 from planar.lines.static_spectral import DielectricLayer, StaticLine, microstrip_static
@@ -131,3 +132,137 @@ def impedance_dispersion(
     r16 = 1.0 + 0.0503 * eps_r**2 * r11 * (1.0 - math.exp(-((u / 15.0) ** 6)))
     r17 = r7 * (1.0 - 1.1241 * r12 / r16 * math.exp(-0.026 * fh**1.15656 - r15))
     return float((r13 / r14) ** r17)
+
+
+def current_factor(static_air_impedance: float) -> float:
+    """Share by which an uneven current raises or lowers the loss of strip and plane, see `conductor_loss`.
+
+    `static_air_impedance` in ohm, of the same strip with air for dielectric: the current follows the
+    magnetic field, which no dielectric changes. exp(-1.2 (Z/eta0)^0.7): Hammerstad & Jensen 1980, eq. 14.
+    """
+    return math.exp(-1.2 * (static_air_impedance / WAVE_IMPEDANCE) ** 0.7)
+
+
+def conductor_loss(width: float, impedance: float, sheet_resistance: float, factor: float) -> float:
+    """Attenuation in Np/m by strip and plane: factor Rs/(Z w).
+
+    `width` in m, `impedance` of the line in ohm, `sheet_resistance` in ohm with roughness, `factor` from
+    `current_factor` (1: even current, no edge effect). Hammerstad & Jensen 1980, eq. 13, Q turned into
+    attenuation; for strips of at least two skin depths.
+    """
+    return factor * sheet_resistance / (impedance * width)
+
+
+def dielectric_loss(filling: float, layer: DielectricLayer, frequency: float, eps_eff: float) -> float:
+    """Attenuation in Np/m by one dielectric: k0 eps_r tan_d filling/(2 sqrt(eps_eff)).
+
+    `filling` = d eps_eff/d eps_r, (eps_eff - 1)/(eps_r - 1) where one dielectric and air share the field;
+    `frequency` in Hz. Welch & Pratt, IEEE Trans. MTT-14 (1966) 332; Schneider, Bell Syst. Tech. J. 48
+    (1969) 1421 (both from memory).
+    """
+    wavenumber = 2.0 * math.pi * frequency / SPEED_OF_LIGHT
+    return 0.5 * wavenumber * layer.eps_r * layer.tan_d * filling / math.sqrt(eps_eff)
+
+
+def cover_ratios(width: float, substrate: Substrate) -> tuple[float, float]:
+    """Factors on impedance and effective permittivity by which the cover of `substrate` changes a line.
+
+    `width` in m. Both are 1 without cover. The ratio of two exact static solutions (`microstrip_static`):
+    the variational treatment of a covered strip, Yamashita & Mittra, IEEE Trans. MTT-16 (1968) 251,
+    and Bahl & Stuchly, IEEE Trans. MTT-28 (1980) 104 (from memory); frequency and strip thickness are
+    taken not to change the ratio.
+    """
+    if not substrate.cover:
+        return 1.0, 1.0
+    bare = microstrip_static(width, below=(substrate.slab,))
+    covered = microstrip_static(width, below=(substrate.slab,), above=substrate.cover)
+    return covered.impedance / bare.impedance, covered.eps_eff / bare.eps_eff
+
+
+def microstrip_wave(
+    width: float, substrate: Substrate, *, thickness: float, frequency: float
+) -> tuple[float, float]:
+    """Impedance in ohm and effective permittivity of a microstrip at `frequency` in Hz, without its losses.
+
+    `width` and strip `thickness` in m. Statics, dispersion and cover together; raises `RangeError`
+    outside the range of any of them (w/h 0.1 to 10, eps_r 1 to 18, h up to a tenth of a wavelength).
+    """
+    impedance, bare, cover = _wave(width, substrate, thickness, frequency)
+    return impedance * cover[0], bare * cover[1]
+
+
+def microstrip_line(
+    width: float, gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
+) -> Line:
+    """Analysed microstrip; `width` in m, `frequency` in Hz, `gap` must be None.
+
+    Raises `RangeError` as `microstrip_wave`, and where the strip is thinner than two skin depths.
+    """
+    if gap is not None:
+        raise RangeError("microstrip has no gap, leave it out")
+    require_thick(conductor, frequency)
+    bare_impedance, bare_eps, cover = _wave(width, substrate, conductor.thickness, frequency)
+    impedance, eps_eff = bare_impedance * cover[0], bare_eps * cover[1]
+    ratio = width / substrate.height
+    in_air, _ = widened_ratios(ratio, conductor.thickness / substrate.height, substrate.eps_r)
+    sheet = rough_sheet_resistance(conductor, frequency)
+    filling = (bare_eps - 1.0) / (substrate.eps_r - 1.0) if substrate.eps_r > 1.0 else 1.0
+    dielectric = dielectric_loss(filling, substrate.slab, frequency, eps_eff)
+    for index, layer in enumerate(substrate.cover):
+        if layer.tan_d:
+            filling = _cover_filling(width, substrate, index)
+            dielectric += dielectric_loss(filling, layer, frequency, eps_eff)
+    return Line(
+        kind="microstrip",
+        width=width,
+        gap=None,
+        frequency=frequency,
+        impedance=impedance,
+        eps_eff=eps_eff,
+        alpha_conductor=conductor_loss(width, impedance, sheet, current_factor(air_impedance(in_air))),
+        alpha_dielectric=dielectric,
+    )
+
+
+def require_thick(conductor: Conductor, frequency: float) -> None:
+    """Raise `RangeError` if the strip is thinner than two skin depths at `frequency` in Hz; zero thickness passes."""
+    if conductor.thickness:
+        two_depths = 2.0 * skin_depth(frequency, conductor.conductivity)
+        require("copper thickness", conductor.thickness, (two_depths, 1e-3), "length")
+
+
+def rough_sheet_resistance(conductor: Conductor, frequency: float) -> float:
+    """Surface resistance in ohm of the conductor with its roughness, at `frequency` in Hz."""
+    smooth = surface_resistance(frequency, conductor.conductivity)
+    return smooth * roughness_factor(frequency, conductor.conductivity, conductor.rq)
+
+
+def _wave(
+    width: float, substrate: Substrate, thickness: float, frequency: float
+) -> tuple[float, float, tuple[float, float]]:
+    """Impedance and permittivity of the bare line at frequency, and the cover's factors on both."""
+    require("width / height", width / substrate.height, RATIO_RANGE)
+    require("eps_r", substrate.eps_r, EPS_RANGE)
+    ratio, thickness_ratio = width / substrate.height, thickness / substrate.height
+    static = quasi_static(ratio, thickness_ratio, substrate.eps_r)
+    _, effective = widened_ratios(ratio, thickness_ratio, substrate.eps_r)
+    effective = min(effective, RATIO_RANGE[1])
+    fh = frequency * substrate.height * 1e-6
+    dispersed = dispersed_eps_eff(effective, substrate.eps_r, static.eps_eff, fh)
+    factor = impedance_dispersion(effective, substrate.eps_r, static.eps_eff, dispersed, fh)
+    return static.impedance * factor, dispersed, cover_ratios(width, substrate)
+
+
+def _cover_filling(width: float, substrate: Substrate, index: int) -> float:
+    """d eps_eff / d eps_r of one cover layer, from static solutions 1 % apart."""
+    low, high = (
+        microstrip_static(width, below=(substrate.slab,), above=_scaled(substrate.cover, index, factor))
+        for factor in (1.0, 1.01)
+    )
+    return (high.eps_eff - low.eps_eff) / (0.01 * substrate.cover[index].eps_r)
+
+
+def _scaled(layers: tuple[DielectricLayer, ...], index: int, factor: float) -> tuple[DielectricLayer, ...]:
+    """The layers with one permittivity multiplied."""
+    changed = replace(layers[index], eps_r=factor * layers[index].eps_r)
+    return (*layers[:index], changed, *layers[index + 1 :])

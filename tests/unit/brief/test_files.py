@@ -27,7 +27,8 @@ def only_fault(caught):
         ("[board]\nthickness = '1 mm'\nthickness = '2 mm'", 3, "board.thickness", "given twice"),
         ("[board]\n[make]\n[board]\n", 3, "[board]", "begun twice"),
         ('name = "gateway\n[board]\n', 1, "name", "closing quote"),
-        ('[target]\nband = ["863 MHz", "870 MHz"', 2, "target.band", "too early"),
+        ('[target]\nband = ["863 MHz", "870 MHz"', 2, "target.band", "closing ]"),
+        ("[board", 1, "[board", "too early"),
         ("name\n", 1, "name", "followed by ="),
         ("!", 1, "!", "key = value"),
     ],
@@ -41,7 +42,7 @@ def test_no_toml_names_file_line_and_key(text, line, key, says, library):
 
 
 @pytest.mark.parametrize("depth", [50, 400, 5000])
-def test_brackets_without_end_are_refused(depth, library):
+def test_deep_brackets_are_refused(depth, library):
     with pytest.raises(BriefError):
         parse_brief(f"name = {'[' * depth}{']' * depth}", "gateway.toml", library)
 

@@ -83,7 +83,7 @@ WRONG: dict[str, tuple[str, Any, str | None, str]] = {
         "board.thickness",
         "1.6 inch",
         None,
-        "1.6 inch is 40.64 mm; boards are 50 um to 6.5 mm thick: did you mean 1.6 mm?",
+        "is 40.64 mm; boards are 50 um to 6.5 mm thick: did you mean 1.6 mm?",
     ),
     "thickness in mm for mil": ("board.thickness", "63 mm", None, "did you mean 63 mil?"),
     "thickness in volts": ("board.thickness", "1.6 V", None, "'V' is no unit of length, write \"1.6 mm\""),

@@ -1,0 +1,181 @@
+"""Reads the written files again and compares them with the layout they came from.
+
+What a user loses silently when an exchange file is wrong is looked for here: scale, a mirrored
+bottom, lost islands, flipped arcs, open outlines, drills off their place. The arc file must agree to
+1e-9 in area; the files of chords within what their chord error allows. Every mismatch is reported.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from shapely import affinity
+from shapely.geometry.base import BaseGeometry
+from shapely.ops import unary_union
+
+from planar.copper.layout import Layout, bounds_of
+from planar.copper.outline import CHECK_CHORD, GRID, Outline
+from planar.errors import HandoffError
+from planar.handoff.drawing import Drawing, Drill, Label, drawing
+from planar.handoff.dxf import SEGMENT_CHORD, read_dxf
+from planar.handoff.gds import GDS_CHORD, read_gds
+from planar.handoff.layers import LAYERS, read_layers_csv
+
+ARC_AREA = 1e-9
+"""Relative difference in area allowed where arcs stay arcs."""
+GRID_SLACK = 2.0 * GRID
+"""m, allowed on positions, diameters and extents for rounding to the grid."""
+
+_MISTAKES: tuple[tuple[str, float, float], ...] = (
+    ("mirrored left to right", -1.0, 1.0),
+    ("mirrored top to bottom", 1.0, -1.0),
+    ("25.4 times too large", 1.0 / 25.4, 1.0 / 25.4),
+    ("25.4 times too small", 25.4, 25.4),
+    ("1000 times too large", 1e-3, 1e-3),
+    ("1000 times too small", 1e3, 1e3),
+)
+"""What commonly goes wrong, and the factors on x and y that put it right."""
+
+
+@dataclass(frozen=True)
+class _File:
+    """A file to check: its chord error in m (0 where arcs stay arcs) and the layers whose texts it carries."""
+
+    name: str
+    read: Callable[[Path], Drawing]
+    chord_error: float
+    labelled: frozenset[str]
+
+
+_ALL_LAYERS = frozenset(layer.name for layer in LAYERS)
+_FILES = (
+    _File("board.dxf", read_dxf, 0.0, frozenset({"DIMENSIONS"})),
+    _File("board-segments.dxf", read_dxf, SEGMENT_CHORD, frozenset({"DIMENSIONS"})),
+    _File("board.gds", read_gds, GDS_CHORD, _ALL_LAYERS),
+)
+
+
+def check_files(layout: Layout, folder: Path) -> None:
+    """Read board.dxf, board-segments.dxf, board.gds and layers.csv in `folder` and compare with `layout`.
+
+    Compared by layer: number of outlines, area, extents, shape, number, place and diameter of the drills,
+    labels. Raises `HandoffError` with every mismatch: file, layer, what was found, what was expected.
+    """
+    expected = drawing(layout)
+    mismatches = [m for file in _FILES for m in _file_mismatches(file, folder / file.name, expected)]
+    mismatches += _layer_map_mismatches(folder / "layers.csv")
+    if mismatches:
+        raise HandoffError("\n".join(["the written files do not agree with the layout:", *mismatches]))
+
+
+def _layer_map_mismatches(path: Path) -> list[str]:
+    try:
+        right = read_layers_csv(path) == LAYERS
+    except (OSError, HandoffError) as error:
+        return [f"{path.name}: cannot be read: {error}"]
+    return [] if right else [f"{path.name}: other layers than the files hold"]
+
+
+def _file_mismatches(file: _File, path: Path, expected: Drawing) -> list[str]:
+    try:
+        got = file.read(path)
+    except HandoffError as error:
+        return [str(error)]
+    found = list(got.faults)
+    for layer in sorted({*got.outlines, *got.drills} - _ALL_LAYERS):
+        found.append(f"{layer}: outlines on a layer of that name, expected none")
+    for layer in expected.outlines:
+        found += [
+            f"{layer}: {text}"
+            for text in _outline_mismatches(got.outlines.get(layer, ()), expected.outlines[layer], file.chord_error)
+        ]
+    for layer in sorted({*expected.drills, *got.drills}):
+        found += [
+            f"{layer}: {text}" for text in _drill_mismatches(got.drills.get(layer, ()), expected.drills.get(layer, ()))
+        ]
+    found += _label_mismatches(got.labels, [label for label in expected.labels if label.layer in file.labelled])
+    return [f"{file.name}: {text}" for text in found]
+
+
+def _outline_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord_error: float) -> list[str]:
+    found = []
+    if len(got) != len(expected):
+        found.append(f"{len(got)} outlines, expected {len(expected)}")
+    if not got or not expected:
+        return found
+    area, right_area = (math.fsum(abs(o.area) for o in outlines) for outlines in (got, expected))
+    allowed = _chord_budget(expected, chord_error) if chord_error else ARC_AREA * right_area
+    if abs(area - right_area) > allowed:
+        found.append(f"area {1e6 * area:.9g} mm2, expected {1e6 * right_area:.9g} within {1e6 * allowed:.2g}")
+    box, right_box = bounds_of(got), bounds_of(expected)
+    if max(abs(a - b) for a, b in zip(box, right_box, strict=True)) > chord_error + GRID_SLACK:
+        found.append(f"extents {_box(box)}, expected {_box(right_box)}")
+    return found + _shape_mismatches(got, expected, chord_error)
+
+
+def _chord_budget(outlines: Sequence[Outline], chord_error: float) -> float:
+    """Area (m2) that chords and rounding may take from or add to `outlines`."""
+    arcs = math.fsum(edge.length for outline in outlines for edge in outline.edges if edge.bulge != 0.0)
+    return chord_error * arcs + GRID * math.fsum(outline.perimeter for outline in outlines)
+
+
+def _shape_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord_error: float) -> list[str]:
+    """Whether the area of the symmetric difference is more than chords and rounding explain."""
+    if not all(outline.shape().is_valid for outline in got):
+        return ["an outline that crosses itself, expected none"]
+    shape, right_shape = (unary_union([o.shape() for o in outlines]) for outlines in (got, expected))
+    allowed = _chord_budget(expected, chord_error + CHECK_CHORD)
+    apart = shape.symmetric_difference(right_shape).area
+    if apart <= allowed:
+        return []
+    return [f"{_mistake(shape, right_shape, allowed)}, {1e6 * apart:.6g} mm2 differ, expected at most {1e6 * allowed:.2g}"]
+
+
+def _mistake(shape: BaseGeometry, right_shape: BaseGeometry, allowed: float) -> str:
+    """Name of the common mistake that explains `shape`, if one does."""
+    for name, x_factor, y_factor in _MISTAKES:
+        righted = affinity.scale(shape, x_factor, y_factor, origin=(0.0, 0.0))
+        if righted.symmetric_difference(right_shape).area <= allowed * max(1.0, abs(x_factor)):
+            return name
+    return "another shape"
+
+
+def _drill_mismatches(got: Sequence[Drill], expected: Sequence[Drill]) -> list[str]:
+    found = []
+    if len(got) != len(expected):
+        found.append(f"{len(got)} drills, expected {len(expected)}")
+    left = list(got)
+    for drill in expected:
+        if not left:
+            break
+        nearest = min(left, key=lambda other: math.dist(other.centre, drill.centre))
+        left.remove(nearest)
+        if math.dist(nearest.centre, drill.centre) > GRID_SLACK:
+            found.append(f"drill at {_place(nearest.centre)}, expected {_place(drill.centre)}")
+        if abs(nearest.diameter - drill.diameter) > GRID_SLACK:
+            found.append(
+                f"drill at {_place(drill.centre)} of {1e3 * nearest.diameter:.6f} mm, "
+                f"expected {1e3 * drill.diameter:.6f} mm"
+            )
+    return found
+
+
+def _label_mismatches(got: Sequence[Label], expected: Sequence[Label]) -> list[str]:
+    here, right = (
+        {(a.layer, a.text, round(a.at[0] / GRID), round(a.at[1] / GRID)) for a in labels} for labels in (got, expected)
+    )
+    missing = [f"{layer}: no label {text!r} at {_place((GRID * x, GRID * y))}" for layer, text, x, y in right - here]
+    extra = [f"{layer}: label {text!r} at {_place((GRID * x, GRID * y))}, expected none" for layer, text, x, y in here - right]
+    return sorted(missing) + sorted(extra)
+
+
+def _place(point: tuple[float, float]) -> str:
+    return f"({1e3 * point[0]:.6f}, {1e3 * point[1]:.6f}) mm"
+
+
+def _box(box: tuple[float, float, float, float]) -> str:
+    x0, y0, x1, y1 = (f"{1e3 * value:.6f}" for value in box)
+    return f"({x0}, {y0}) to ({x1}, {y1}) mm"

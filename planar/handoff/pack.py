@@ -1,0 +1,127 @@
+"""The result folder, replaced whole or not at all.
+
+Everything is written into a folder beside the destination; only when all of it is there is the old
+folder moved aside and the new one renamed into its place. `SHA256SUMS` lists what is ours: a folder
+without it, with other files in it, or with files changed since, belongs to the user and is refused.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import shutil
+import tempfile
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+from planar.errors import HandoffError
+
+MANIFEST = "SHA256SUMS"
+"""Name of the list of our files, in the format `sha256sum -c` reads."""
+
+
+@contextmanager
+def packed(destination: Path) -> Iterator[Path]:
+    """A folder to write into, which becomes `destination` when the block ends without an exception.
+
+    On any exception the folder vanishes and an earlier result stays as it was. Raises `HandoffError` when
+    the destination holds files that are not ours, or when the folder cannot be written.
+    """
+    destination = destination.absolute()
+    _refuse_foreign(destination)
+    created = [p for p in destination.parents if not p.exists()]  # innermost first
+    try:
+        destination.parent.mkdir(parents=True, exist_ok=True)
+        # only its owner may enter the outer folder, the inner one gets everyday permissions
+        work = Path(tempfile.mkdtemp(prefix=f".{destination.name}-", dir=destination.parent))
+    except OSError as error:
+        raise HandoffError(f"cannot write into {destination.parent}: {error.strerror}") from error
+    try:
+        fresh = work / "new"
+        fresh.mkdir()
+        yield fresh
+        write_manifest(fresh)
+        _swap(fresh, destination, aside=work / "old")
+    except BaseException as error:
+        shutil.rmtree(work, ignore_errors=True)
+        _remove_empty(created)
+        if isinstance(error, OSError):
+            raise HandoffError(f"cannot write {destination}: {error.strerror or error}") from error
+        raise
+    _remove_aside(work, destination)
+
+
+def _swap(fresh: Path, destination: Path, *, aside: Path) -> None:
+    """Put `fresh` in the place of `destination`, whose earlier content moves `aside`; undone when it fails."""
+    _refuse_foreign(destination)  # again: hours may have passed
+    replaced = destination.exists()
+    if replaced:
+        destination.rename(aside)
+    try:
+        fresh.rename(destination)
+    except OSError:
+        if replaced:
+            aside.rename(destination)
+        raise
+
+
+def _remove_aside(work: Path, destination: Path) -> None:
+    try:
+        shutil.rmtree(work)
+    except OSError as error:
+        raise HandoffError(f"{destination} is written, but {work} cannot be removed: {error.strerror}") from error
+
+
+def _remove_empty(folders: list[Path]) -> None:
+    for folder in folders:
+        if not folder.is_dir() or any(folder.iterdir()):
+            return
+        folder.rmdir()
+
+
+def write_manifest(folder: Path) -> None:
+    """Write `SHA256SUMS`: hash and path of every other file in `folder`, sorted by path."""
+    lines = [f"{_hash(path)}  {name}\n" for name, path in _files(folder).items() if name != MANIFEST]
+    (folder / MANIFEST).write_bytes("".join(lines).encode("utf-8"))
+
+
+def read_manifest(folder: Path) -> dict[str, str]:
+    """Path relative to `folder` -> SHA-256 as `SHA256SUMS` lists them. Raises `HandoffError` when it is none."""
+    try:
+        lines = (folder / MANIFEST).read_text(encoding="utf-8").splitlines()
+        pairs = [line.split("  ", 1) for line in lines]
+        return {name: digest for digest, name in pairs}
+    except (OSError, ValueError) as error:
+        raise HandoffError(f"{folder / MANIFEST} cannot be read: {error}") from error
+
+
+def _files(folder: Path) -> dict[str, Path]:
+    """Everything in `folder` but plain folders, by relative path, sorted."""
+    paths = [p for p in folder.rglob("*") if p.is_symlink() or not p.is_dir()]
+    return dict(sorted((p.relative_to(folder).as_posix(), p) for p in paths))
+
+
+def _hash(path: Path) -> str:
+    return hashlib.sha256(path.read_bytes()).hexdigest()
+
+
+def _refuse_foreign(destination: Path) -> None:
+    """Raise `HandoffError` when something is at `destination` that this program did not write."""
+    if destination.is_symlink() or (destination.exists() and not destination.is_dir()):
+        raise HandoffError(f"{destination} is no folder: move it away or choose another name")
+    if not destination.exists():
+        return
+    files = _files(destination)
+    if not files:
+        return
+    if MANIFEST not in files:
+        raise HandoffError(f"{destination} holds files and no {MANIFEST}, so it is not ours to replace: move it away")
+    listed = read_manifest(destination)
+    foreign = [name for name, path in files.items() if name != MANIFEST and not _is_ours(path, listed.get(name))]
+    if foreign:
+        names = ", ".join(foreign[:5]) + (f" and {len(foreign) - 5} more" if len(foreign) > 5 else "")
+        raise HandoffError(f"{destination} holds files added or changed since it was written: {names}; move them away")
+
+
+def _is_ours(path: Path, digest: str | None) -> bool:
+    return digest is not None and path.is_file() and not path.is_symlink() and _hash(path) == digest
