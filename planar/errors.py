@@ -89,11 +89,16 @@ class GeometryError(PlanarError):
 
 
 class SynthesisError(PlanarError):
-    """A design that cannot be made: the reason, and the nearest change that works."""
+    """A design that cannot be made: the reason, the rules missed, and the nearest changes that work."""
 
-    def __init__(self, reason: str, findings: tuple[Finding, ...] = ()) -> None:
+    def __init__(self, reason: str, findings: tuple[Finding, ...] = (), changes: tuple[str, ...] = ()) -> None:
+        self.reason = reason
         self.findings = findings
-        super().__init__("\n".join([reason, *(f"  {finding}" for finding in findings)]))
+        self.changes = changes
+        lines = [reason, *(f"  {finding}" for finding in findings)]
+        if changes:
+            lines += ["Nearest changes that work:", *(f"  {change}" for change in changes)]
+        super().__init__("\n".join(lines))
 
 
 class HandoffError(PlanarError):

@@ -61,7 +61,7 @@ def plan_board(drawing: Drawing, request: DrawingRequest, levels: tuple[Level, .
         holes=holes,
         pads=centred.pads,
         ports=centred.ports,
-        mask_openings=openings,
+        mask_openings=tuple(opening for opening in openings if opening.level in request.masked),
         legend=(),
         edge=edge,
         keepout=_keepout(edge, centred.corridor, request),
@@ -146,8 +146,6 @@ def _keepout(edge: Outline, corridor: int, request: DrawingRequest) -> tuple[Out
 
 def _hole_openings(holes: tuple[Hole, ...], levels: tuple[Level, ...], request: DrawingRequest) -> tuple[Marking, ...]:
     """Mask openings round unplated holes, on every level; vias stay covered."""
-    if not request.has_mask:
-        return ()
     grow = 2.0 * request.fab.mask_expansion
     return tuple(
         Marking(level, circle(hole.centre, hole.diameter + grow)) for hole in holes if not hole.plated for level in levels

@@ -11,7 +11,7 @@ from dataclasses import dataclass, replace
 
 from planar.copper.arc import Point
 from planar.copper.boolean import difference
-from planar.copper.layout import Hole, Island, Marking, Pad, Port
+from planar.copper.layout import Hole, Island, Level, Marking, Pad, Port
 from planar.copper.outline import Outline
 from planar.copper.path import Path, band, loop_path
 from planar.copper.shapes import turned_rectangle
@@ -27,7 +27,7 @@ class DrawingRequest:
     """What drawing needs beside the dimensions.
 
     `end` is "via" or "open" for a guided line. `mirrored` gives the other sense of circular
-    polarisation. `size_limit` (width, height) m caps the board, None leaves it free.
+    polarisation. `masked` lists the levels under solder mask. `size_limit` (width, height) m caps the board, None leaves it free.
     """
 
     name: str
@@ -36,7 +36,7 @@ class DrawingRequest:
     mirrored: bool
     connector: Connector
     fab: Fab
-    has_mask: bool = True
+    masked: tuple[Level, ...]
     size_limit: tuple[float, float] | None = None
 
 

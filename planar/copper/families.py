@@ -79,7 +79,7 @@ def ring_guided(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     """Loop on the bottom, guiding a line on top from the coax opposite the gap to past the gap."""
     half_height = 0.5 * loop_height(dimensions)
     feed = (0.0, -half_height - dimensions["feed_length"])
-    connector, rules = request.connector, request.fab
+    connector = request.connector
     lands = land_pads(connector, feed)
     tab = ground_tab(connector, feed, -half_height)
     bottom = [*_handed(loop_copper(dimensions, dimensions["gap"]), request), *([tab] if tab else [])]
@@ -95,7 +95,7 @@ def ring_guided(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     islands = [Island(Level.TOP, outline, Role.LINE) for outline in united(top)]
     islands += [Island(Level.TOP, p.outline, Role.GROUND) for p in lands if p.level is Level.TOP and p.terminal == "return"]
     islands += [Island(Level.BOTTOM, outline, Role.RADIATOR) for outline in united(bottom)]
-    openings = land_openings(connector, feed, rules.mask_expansion) if request.has_mask else ()
+    openings = land_openings(connector, feed, request.fab.mask_expansion)
     port = Port("feed", "vertical", Level.TOP, feed, (0.0, -1.0), 0.0, dimensions["line_width"])
     return Drawing(
         tuple(islands), tuple(holes), lands, (port,), openings, feed, -1, _inner_size(dimensions)
@@ -123,8 +123,6 @@ def _pair_openings(
     gap: float, reach: float, height: tuple[float, float], request: DrawingRequest
 ) -> tuple[Marking, ...]:
     """Mask openings over a pair of pads, one for both where the web between two could not be printed."""
-    if not request.has_mask:
-        return ()
     grow, fab = request.fab.mask_expansion, request.fab
     low, high = height[0] - grow, height[1] + grow
     inner = 0.5 * gap - grow

@@ -167,6 +167,8 @@ def _sizes(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None) -> 
     width, height = layout.size
     got = f"{_mm(width)} x {_mm(height)}"
     usable = tuple(side - 2.0 * fab.panel_border for side in fab.panel)
+    if not _fits((width, height), fab.max_board, turnable=True):
+        usable = (math.inf, math.inf)  # said once is enough
     checks = [
         ("size limit", size_limit, Severity.REFUSE, "choose a higher permittivity, another shape, or allow more space"),
         ("largest board", fab.max_board, Severity.REFUSE, "choose a fab with larger boards"),

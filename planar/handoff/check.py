@@ -19,7 +19,7 @@ from shapely.ops import unary_union
 from planar.copper.layout import Layout, bounds_of
 from planar.copper.outline import CHECK_CHORD, GRID, Outline
 from planar.errors import HandoffError
-from planar.handoff.drawing import Drawing, Drill, Label, drawing
+from planar.handoff.content import FileContent, Drill, Label, file_content
 from planar.handoff.dxf import SEGMENT_CHORD, read_dxf
 from planar.handoff.gds import GDS_CHORD, read_gds
 from planar.handoff.layers import LAYERS, read_layers_csv
@@ -45,7 +45,7 @@ class _File:
     """A file to check: its chord error in m (0 where arcs stay arcs) and the layers whose texts it carries."""
 
     name: str
-    read: Callable[[Path], Drawing]
+    read: Callable[[Path], FileContent]
     chord_error: float
     labelled: frozenset[str]
 
@@ -64,7 +64,7 @@ def check_files(layout: Layout, folder: Path) -> None:
     Compared by layer: number of outlines, area, extents, shape, number, place and diameter of the drills,
     labels. Raises `HandoffError` with every mismatch: file, layer, what was found, what was expected.
     """
-    expected = drawing(layout)
+    expected = file_content(layout)
     mismatches = [m for file in _FILES for m in _file_mismatches(file, folder / file.name, expected)]
     mismatches += _layer_map_mismatches(folder / "layers.csv")
     if mismatches:
@@ -79,7 +79,7 @@ def _layer_map_mismatches(path: Path) -> list[str]:
     return [] if right else [f"{path.name}: other layers than the files hold"]
 
 
-def _file_mismatches(file: _File, path: Path, expected: Drawing) -> list[str]:
+def _file_mismatches(file: _File, path: Path, expected: FileContent) -> list[str]:
     try:
         got = file.read(path)
     except HandoffError as error:
@@ -131,7 +131,9 @@ def _shape_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord
     apart = shape.symmetric_difference(right_shape).area
     if apart <= allowed:
         return []
-    return [f"{_mistake(shape, right_shape, allowed)}, {1e6 * apart:.6g} mm2 differ, expected at most {1e6 * allowed:.2g}"]
+    return [
+        f"{_mistake(shape, right_shape, allowed)}, {1e6 * apart:.6g} mm2 differ, expected at most {1e6 * allowed:.2g}"
+    ]
 
 
 def _mistake(shape: BaseGeometry, right_shape: BaseGeometry, allowed: float) -> str:
@@ -147,12 +149,8 @@ def _drill_mismatches(got: Sequence[Drill], expected: Sequence[Drill]) -> list[s
     found = []
     if len(got) != len(expected):
         found.append(f"{len(got)} drills, expected {len(expected)}")
-    left = list(got)
-    for drill in expected:
-        if not left:
-            break
-        nearest = min(left, key=lambda other: math.dist(other.centre, drill.centre))
-        left.remove(nearest)
+    for drill in expected if got else ():
+        nearest = min(got, key=lambda other: math.dist(other.centre, drill.centre))
         if math.dist(nearest.centre, drill.centre) > GRID_SLACK:
             found.append(f"drill at {_place(nearest.centre)}, expected {_place(drill.centre)}")
         if abs(nearest.diameter - drill.diameter) > GRID_SLACK:
@@ -164,16 +162,14 @@ def _drill_mismatches(got: Sequence[Drill], expected: Sequence[Drill]) -> list[s
 
 
 def _label_mismatches(got: Sequence[Label], expected: Sequence[Label]) -> list[str]:
-    here, right = (
-        {(a.layer, a.text, round(a.at[0] / GRID), round(a.at[1] / GRID)) for a in labels} for labels in (got, expected)
-    )
-    missing = [f"{layer}: no label {text!r} at {_place((GRID * x, GRID * y))}" for layer, text, x, y in right - here]
-    extra = [f"{layer}: label {text!r} at {_place((GRID * x, GRID * y))}, expected none" for layer, text, x, y in here - right]
-    return sorted(missing) + sorted(extra)
+    here, right = ({f"{a.layer}: {a.text!r} at {_place(a.at)}" for a in labels} for labels in (got, expected))
+    missing = [f"{label}: no such label, expected one" for label in sorted(right - here)]
+    return missing + [f"{label}: label, expected none" for label in sorted(here - right)]
 
 
 def _place(point: tuple[float, float]) -> str:
-    return f"({1e3 * point[0]:.6f}, {1e3 * point[1]:.6f}) mm"
+    x, y = (round(1e3 * c, 6) + 0.0 for c in point)  # + 0.0 makes minus zero zero
+    return f"({x:.6f}, {y:.6f}) mm"
 
 
 def _box(box: tuple[float, float, float, float]) -> str:

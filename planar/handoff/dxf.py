@@ -15,17 +15,21 @@ from contextlib import contextmanager
 from decimal import Decimal
 from pathlib import Path
 
-import ezdxf
 import numpy as np
-from ezdxf import units
+from ezdxf import options, units  # type: ignore[attr-defined]  # "options" is documented, not declared exported
 from ezdxf.document import Drawing as Document
-from ezdxf.entities import Circle, DXFEntity, LWPolyline, Text
-from ezdxf.layouts import Modelspace
+from ezdxf.entities.circle import Circle
+from ezdxf.entities.dxfentity import DXFEntity
+from ezdxf.entities.lwpolyline import LWPolyline
+from ezdxf.entities.text import Text
+from ezdxf.filemanagement import new, readfile
+from ezdxf.layouts.layout import Modelspace
+from ezdxf.lldxf.const import DXFError
 
 from planar.copper.layout import Layout
 from planar.copper.outline import Outline
 from planar.errors import HandoffError
-from planar.handoff.drawing import Drawing, Drill, Label, drawing
+from planar.handoff.content import FileContent, Drill, Label, file_content
 from planar.handoff.layers import LAYERS
 
 SEGMENT_CHORD = 2e-6
@@ -36,17 +40,17 @@ _EXPONENT = re.compile(r"^-?\d+(?:\.\d+)?e[+-]?\d+$", re.MULTILINE)
 
 def write_dxf(layout: Layout, path: Path) -> None:
     """Write a snapped `layout` with true arcs. The same layout gives the same bytes."""
-    _write(drawing(layout), path)
+    _write(file_content(layout), path)
 
 
 def write_dxf_segments(layout: Layout, path: Path) -> None:
     """Write a snapped `layout` with arcs as segments, 2 um chord error, for importers that drop bulges."""
-    _write(drawing(layout).flattened(SEGMENT_CHORD), path)
+    _write(file_content(layout).flattened(SEGMENT_CHORD), path)
 
 
-def _write(content: Drawing, path: Path) -> None:
+def _write(content: FileContent, path: Path) -> None:
     with _fixed_metadata():
-        document = ezdxf.new("R2000", units=units.MM)
+        document = new("R2000", units=units.MM)
         document.header["$INSUNITS"] = units.MM
         document.header["$MEASUREMENT"] = 1
         for layer in LAYERS:
@@ -61,15 +65,15 @@ def _write(content: Drawing, path: Path) -> None:
 @contextmanager
 def _fixed_metadata() -> Iterator[None]:
     """Dates and identifiers of the document are constants inside: two runs give the same bytes."""
-    before = ezdxf.options.write_fixed_meta_data_for_testing
-    ezdxf.options.write_fixed_meta_data_for_testing = True
+    before = options.write_fixed_meta_data_for_testing
+    options.write_fixed_meta_data_for_testing = True
     try:
         yield
     finally:
-        ezdxf.options.write_fixed_meta_data_for_testing = before
+        options.write_fixed_meta_data_for_testing = before
 
 
-def _draw(content: Drawing, space: Modelspace) -> None:
+def _draw(content: FileContent, space: Modelspace) -> None:
     for layer, outlines in content.outlines.items():
         for outline in outlines:
             rows = [(_mm(x), _mm(y), bulge) for x, y, bulge in outline.vertices.tolist()]
@@ -89,7 +93,7 @@ def _mm(length: float) -> float:
     return round(length * 1e9) / 1e6
 
 
-def read_dxf(path: Path) -> Drawing:
+def read_dxf(path: Path) -> FileContent:
     """What a DXF file of `write_dxf` or `write_dxf_segments` holds, by layer, in m.
 
     Polylines become outlines by their vertices and bulges. What the rules forbid (an open polyline, a
@@ -97,8 +101,8 @@ def read_dxf(path: Path) -> Drawing:
     Raises `HandoffError` when the file cannot be read as DXF.
     """
     try:
-        document = ezdxf.readfile(path)
-    except (OSError, ezdxf.DXFError) as error:
+        document = readfile(path)
+    except (OSError, DXFError) as error:
         raise HandoffError(f"{path.name} cannot be read as DXF: {error}") from error
     outlines: dict[str, list[Outline]] = {}
     drills: dict[str, list[Drill]] = {}
@@ -118,7 +122,7 @@ def read_dxf(path: Path) -> Drawing:
         elif isinstance(entity, Text):
             x, y, _ = entity.dxf.insert
             labels.append(Label(layer, entity.dxf.text, (x * 1e-3, y * 1e-3)))
-    return Drawing(
+    return FileContent(
         {layer: tuple(found) for layer, found in outlines.items()},
         {layer: tuple(found) for layer, found in drills.items()},
         tuple(labels),

@@ -19,7 +19,7 @@ from planar.copper.layout import Layout
 from planar.copper.outline import Outline
 from planar.copper.shapes import circle
 from planar.errors import HandoffError
-from planar.handoff.drawing import Drawing, Drill, Label, drawing, flattened_on_grid
+from planar.handoff.content import FileContent, Drill, Label, file_content, flattened_on_grid
 from planar.handoff.layers import DRILL_LAYERS, LAYERS, layer_named, name_of_gds
 
 GDS_CHORD = 1e-6
@@ -32,6 +32,8 @@ _USER_UNIT = 1e-6
 _DATABASE_UNIT = 1e-9
 _TIMESTAMP = datetime(2000, 1, 1)
 _LONGEST_NAME = 32
+_END_OF_LIBRARY = b"\x00\x04\x04\x00"
+"""The record every complete stream ends with."""
 
 
 def cell_name(name: str) -> str:
@@ -42,15 +44,16 @@ def cell_name(name: str) -> str:
 def write_gds(layout: Layout, path: Path) -> None:
     """Write a snapped `layout` as one cell. The same layout gives the same bytes.
 
-    Raises `HandoffError` when an outline needs more than 4094 vertices or lies beyond 2.147 m.
+    Raises `HandoffError` when an outline needs more than 4094 vertices or lies beyond 2.147 m, and when the
+    file could not be written whole.
     """
-    content = drawing(layout)
+    content = file_content(layout)
     cell = gdstk.Cell(cell_name(layout.name))
     for name, outlines in _polygons(content).items():
         layer = layer_named(name)
         for outline in outlines:
-            points = _checked(outline, name).vertices[:, :2] / _USER_UNIT
-            cell.add(gdstk.Polygon(points.round(3), layer=layer.gds_layer, datatype=layer.gds_datatype))
+            points = (_checked(outline, name).vertices[:, :2] / _USER_UNIT).round(3).tolist()
+            cell.add(gdstk.Polygon(points, layer=layer.gds_layer, datatype=layer.gds_datatype))
     for label in content.labels:
         layer = layer_named(label.layer)
         place = (label.at[0] / _USER_UNIT, label.at[1] / _USER_UNIT)
@@ -58,9 +61,11 @@ def write_gds(layout: Layout, path: Path) -> None:
     library = gdstk.Library(cell.name, unit=_USER_UNIT, precision=_DATABASE_UNIT)
     library.add(cell)
     library.write_gds(path, max_points=MAX_VERTICES, timestamp=_TIMESTAMP)
+    if not path.read_bytes().endswith(_END_OF_LIBRARY):  # the library says nothing when the disk is full
+        raise HandoffError(f"{path.name} could not be written whole: the disk may be full")
 
 
-def _polygons(content: Drawing) -> dict[str, list[Outline]]:
+def _polygons(content: FileContent) -> dict[str, list[Outline]]:
     """Everything as polygons by layer, drills too, in the order of the table."""
     polygons: dict[str, list[Outline]] = {layer.name: [] for layer in LAYERS}
     for name, outlines in content.outlines.items():
@@ -81,7 +86,7 @@ def _checked(outline: Outline, layer: str) -> Outline:
     return outline
 
 
-def read_gds(path: Path) -> Drawing:
+def read_gds(path: Path) -> FileContent:
     """What a GDS file of `write_gds` holds, by layer, in m; drills are told by their layer.
 
     What the rules forbid (several cells, references, paths, another grid) is named in `faults`. Layers
@@ -95,10 +100,10 @@ def read_gds(path: Path) -> Drawing:
     outlines: dict[str, list[Outline]] = {}
     drills: dict[str, list[Drill]] = {}
     labels: list[Label] = []
-    for cell in library.cells:
+    for cell in _cells(library):
         for polygon in cell.polygons:
             name = name_of_gds(polygon.layer, polygon.datatype)
-            outline = Outline.polygon(polygon.points * library.unit)
+            outline = Outline.polygon(np.asarray(polygon.points) * library.unit)
             if name in DRILL_LAYERS:
                 drills.setdefault(name, []).append(_drill(outline))
             else:
@@ -107,12 +112,16 @@ def read_gds(path: Path) -> Drawing:
             x, y = label.origin
             name = name_of_gds(label.layer, label.texttype)
             labels.append(Label(name, label.text, (x * library.unit, y * library.unit)))
-    return Drawing(
+    return FileContent(
         {layer: tuple(found) for layer, found in outlines.items()},
         {layer: tuple(found) for layer, found in drills.items()},
         tuple(labels),
         tuple(_faults(library)),
     )
+
+
+def _cells(library: gdstk.Library) -> list[gdstk.Cell]:
+    return [cell for cell in library.cells if isinstance(cell, gdstk.Cell)]
 
 
 def _drill(outline: Outline) -> Drill:
@@ -129,7 +138,7 @@ def _faults(library: gdstk.Library) -> list[str]:
         faults.append(f"header: database unit {library.precision:g} m, expected {_DATABASE_UNIT:g} m")
     if len(library.cells) != 1:
         faults.append(f"cells: {len(library.cells)}, expected 1")
-    for cell in library.cells:
+    for cell in _cells(library):
         if cell.references or cell.paths:
             faults.append(f"cell {cell.name}: references or paths, expected polygons and labels only")
     return faults

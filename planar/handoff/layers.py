@@ -73,10 +73,11 @@ def write_layers_csv(path: Path) -> None:
 
 def read_layers_csv(path: Path) -> tuple[Layer, ...]:
     """Layers of a layer map. Raises `HandoffError` when the file is none."""
-    header, *rows = csv.reader(io.StringIO(path.read_text(encoding="utf-8")))
-    if tuple(header) != _COLUMNS:
-        raise HandoffError(f"{path.name}: columns {', '.join(header)}, expected {', '.join(_COLUMNS)}")
+    rows = list(csv.reader(io.StringIO(path.read_text(encoding="utf-8"))))
+    header = ", ".join(rows[0]) if rows else ""
+    if header != ", ".join(_COLUMNS):
+        raise HandoffError(f"{path.name}: columns {header or 'missing'}, expected {', '.join(_COLUMNS)}")
     try:
-        return tuple(Layer(name, int(n), int(d), int(c), holds) for name, n, d, c, holds in rows)
+        return tuple(Layer(name, int(n), int(d), int(c), holds) for name, n, d, c, holds in rows[1:])
     except ValueError as error:
         raise HandoffError(f"{path.name}: a row does not hold {', '.join(_COLUMNS)}") from error

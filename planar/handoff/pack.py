@@ -43,10 +43,10 @@ def packed(destination: Path) -> Iterator[Path]:
         write_manifest(fresh)
         _swap(fresh, destination, aside=work / "old")
     except BaseException as error:
-        shutil.rmtree(work, ignore_errors=True)
-        _remove_empty(created)
+        shutil.rmtree(work / "new", ignore_errors=True)
+        _remove_empty([work, *created])  # never the old result, should it have to stay aside
         if isinstance(error, OSError):
-            raise HandoffError(f"cannot write {destination}: {error.strerror or error}") from error
+            raise HandoffError(f"cannot write {destination}: {error}") from error
         raise
     _remove_aside(work, destination)
 
@@ -59,7 +59,7 @@ def _swap(fresh: Path, destination: Path, *, aside: Path) -> None:
         destination.rename(aside)
     try:
         fresh.rename(destination)
-    except OSError:
+    except BaseException:
         if replaced:
             aside.rename(destination)
         raise

@@ -1,6 +1,7 @@
 """Laminates, fabs, connectors, cover materials and antenna families, as frozen records read from TOML."""
 
 from planar.library.dispersion import WidebandDebye
+from planar.library.families import Family
 from planar.library.inline import inline_laminate
 from planar.library.records import Body, Connector, Cover, Fab, GroundTab, Laminate, LandHole, LandPad
 from planar.library.store import KINDS, Library
@@ -11,6 +12,7 @@ __all__ = [
     "Connector",
     "Cover",
     "Fab",
+    "Family",
     "GroundTab",
     "Laminate",
     "LandHole",

@@ -6,13 +6,13 @@ entry does not keep the others from use.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any, Self
+from typing import Self
 
 from planar.errors import Fault, LibraryError
 from planar.library.entries import read_connector, read_cover, read_fab, read_laminate
+from planar.library.families import Family, read_family
 from planar.library.reading import nearest, parse
 from planar.library.records import Connector, Cover, Fab, Laminate
 
@@ -81,9 +81,10 @@ class Library:
         path = self.source("covers", key)
         return read_cover(key, parse(path), str(path))
 
-    def family_data(self, key: str) -> Mapping[str, Any]:
-        """Parsed file of an antenna family, unchecked. Raises `LibraryError` if it is missing or no TOML."""
-        return parse(self.source("families", key))
+    def family(self, key: str) -> Family:
+        """Antenna family of that key. Raises `LibraryError` if it is missing or malformed."""
+        path = self.source("families", key)
+        return read_family(key, parse(path), str(path))
 
 
 def _check_kind(kind: str) -> None:

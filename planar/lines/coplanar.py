@@ -79,17 +79,39 @@ def thick_line(thin: StaticLine, width: float, gap: float, substrate: Substrate,
 
 
 def coplanar_strips_wave(
-    width: float, gap: float, substrate: Substrate, *, thickness: float, frequency: float
+    width: float, gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
 ) -> tuple[float, float]:
     """Impedance in ohm and effective permittivity of coplanar strips, without their losses.
 
-    `width`, `gap` and copper `thickness` in m, `frequency` in Hz (it only decides whether the
-    quasi-static solution holds). Raises `RangeError` where copper or slab are too large against the
-    wavelength, and as `thick_line`.
+    `width` and `gap` in m, `frequency` in Hz (it only decides whether the quasi-static solution holds).
+    Raises `RangeError` without a gap, where copper or slab are too large against the wavelength, and as
+    `thick_line`.
     """
+    if gap is None:
+        raise RangeError("coplanar strips need a gap")
     _require_quasi_static(width, gap, substrate, frequency)
-    line = _static(width, gap, substrate, thickness)
+    line = _static(width, gap, substrate, conductor.thickness)
     return line.impedance, line.eps_eff
+
+
+def coplanar_width_limits(
+    gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
+) -> tuple[float, float]:
+    """Narrowest and widest strips in m covered at a `gap` in m; `frequency` in Hz."""
+    if gap is None:
+        raise RangeError("coplanar strips need a gap")
+    narrowest, widest = (ratio * gap for ratio in WIDTH_GAP_RANGE)
+    extent = _largest_extent(substrate, frequency)
+    return max(narrowest, conductor.thickness / THICKEST), min(widest, (extent - gap) / 2.0)
+
+
+def coplanar_gap_limits(
+    width: float, substrate: Substrate, conductor: Conductor, frequency: float
+) -> tuple[float, float]:
+    """Smallest and largest gap in m covered at a strip `width` in m; `frequency` in Hz."""
+    narrow, wide = WIDTH_GAP_RANGE
+    extent = _largest_extent(substrate, frequency)
+    return max(width / wide, conductor.thickness / THICKEST), min(width / narrow, extent - 2.0 * width)
 
 
 def strip_resistance(width: float, gap: float, stop: float) -> float:
@@ -127,16 +149,12 @@ def coplanar_strips_line(
     if gap is None:
         raise RangeError("coplanar strips need a gap")
     require_thick(conductor, frequency)
-    impedance, eps_eff = coplanar_strips_wave(
-        width, gap, substrate, thickness=conductor.thickness, frequency=frequency
-    )
+    impedance, eps_eff = coplanar_strips_wave(width, gap, substrate, conductor, frequency)
     stop = stopping_distance(conductor.thickness or 2.0 * skin_depth(frequency, conductor.conductivity))
     resistance = rough_sheet_resistance(conductor, frequency) * strip_resistance(width, gap, stop)
     layers = (substrate.slab, *substrate.cover)
     dielectric = sum(
-        dielectric_loss(
-            _filling(width, gap, substrate, conductor.thickness, index), layer, frequency, eps_eff
-        )
+        dielectric_loss(_filling(width, gap, substrate, conductor.thickness, index), layer, frequency, eps_eff)
         for index, layer in enumerate(layers)
         if layer.tan_d
     )
@@ -174,12 +192,17 @@ def _filling(width: float, gap: float, substrate: Substrate, thickness: float, i
     return (_static(width, gap, raised, thickness).eps_eff - low) / (0.01 * eps_r)
 
 
+def _largest_extent(substrate: Substrate, frequency: float) -> float:
+    """Largest gap + 2 x width in m for which the line is quasi-static."""
+    return WIDEST * SPEED_OF_LIGHT / (frequency * math.sqrt(0.5 * (substrate.eps_r + 1.0)))
+
+
 def _require_quasi_static(width: float, gap: float, substrate: Substrate, frequency: float) -> None:
     """Raise `RangeError` where extent of the copper or the slab is not small against the wavelength."""
-    wavelength = SPEED_OF_LIGHT / frequency
     require("eps_r", substrate.eps_r, (1.0, 20.0))
-    in_medium = wavelength / math.sqrt(0.5 * (substrate.eps_r + 1.0))
-    require("copper extent, gap + 2 x width,", gap + 2.0 * width, (0.0, WIDEST * in_medium), "length")
+    largest = _largest_extent(substrate, frequency)
+    require("copper extent, gap + 2 x width,", gap + 2.0 * width, (0.0, largest), "length")
     contrast = math.sqrt(substrate.eps_r - 1.0)
     if contrast:
-        require("slab height", substrate.height, (0.0, THICKEST_SLAB * wavelength / contrast), "length")
+        thickest = THICKEST_SLAB * SPEED_OF_LIGHT / (frequency * contrast)
+        require("slab height", substrate.height, (0.0, thickest), "length")

@@ -1,7 +1,7 @@
 """One analysis for every kind of line, chosen by name from one table.
 
-A kind is a row of `LINES`: its full analysis, and its impedance alone for root finding. A new kind
-is one module with these two functions and one row here.
+A kind is a row of `LINES`: its full analysis, its impedance alone for root finding, and the
+dimensions it covers. A new kind is one module with these functions and one row here.
 """
 
 from __future__ import annotations
@@ -10,8 +10,13 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from planar.errors import RangeError
-from planar.lines.coplanar import coplanar_strips_line, coplanar_strips_wave
-from planar.lines.microstrip import microstrip_line, microstrip_wave
+from planar.lines.coplanar import (
+    coplanar_gap_limits,
+    coplanar_strips_line,
+    coplanar_strips_wave,
+    coplanar_width_limits,
+)
+from planar.lines.microstrip import microstrip_line, microstrip_wave, microstrip_width_limits
 from planar.lines.records import Conductor, Line, Substrate
 
 __all__ = ["LINES", "Conductor", "Line", "LineKind", "Substrate", "analyse", "line_kind", "wave"]
@@ -23,33 +28,20 @@ Wave = tuple[float, float]
 class LineKind:
     """A kind of line: `analyse` gives the `Line`, `wave` impedance in ohm and effective permittivity only.
 
-    Arguments of both: width in m, gap in m or None, substrate, conductor, frequency in Hz.
+    Arguments of both: width in m, gap in m or None, substrate, conductor, frequency in Hz. `width_limits`
+    gives the narrowest and widest strip in m (first argument the gap), `gap_limits` the smallest and
+    largest gap (first argument the width), None for kinds without.
     """
 
     analyse: Callable[[float, float | None, Substrate, Conductor, float], Line]
     wave: Callable[[float, float | None, Substrate, Conductor, float], Wave]
-    has_gap: bool
-
-
-def _microstrip_wave(
-    width: float, gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
-) -> Wave:
-    if gap is not None:
-        raise RangeError("microstrip has no gap, leave it out")
-    return microstrip_wave(width, substrate, thickness=conductor.thickness, frequency=frequency)
-
-
-def _coplanar_wave(
-    width: float, gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
-) -> Wave:
-    if gap is None:
-        raise RangeError("coplanar strips need a gap")
-    return coplanar_strips_wave(width, gap, substrate, thickness=conductor.thickness, frequency=frequency)
+    width_limits: Callable[[float | None, Substrate, Conductor, float], tuple[float, float]]
+    gap_limits: Callable[[float, Substrate, Conductor, float], tuple[float, float]] | None
 
 
 LINES: dict[str, LineKind] = {
-    "microstrip": LineKind(microstrip_line, _microstrip_wave, has_gap=False),
-    "coplanar-strips": LineKind(coplanar_strips_line, _coplanar_wave, has_gap=True),
+    "microstrip": LineKind(microstrip_line, microstrip_wave, microstrip_width_limits, None),
+    "coplanar-strips": LineKind(coplanar_strips_line, coplanar_strips_wave, coplanar_width_limits, coplanar_gap_limits),
 }
 """Kind of line -> its functions."""
 

@@ -4,7 +4,7 @@ Each formula is one function of pure numbers: `ratio` is width over height, `thi
 thickness over height, frequency in GHz mm where the papers use it. `microstrip_line` joins them.
 A cover (solder mask) has no closed formula good enough: the static spectral solution with and
 without it gives the ratio by which impedance and permittivity change. Scalar `math` throughout,
-so that a thousand lines take well under a second.
+so that a thousand lines take well under a second. Equation numbers are from memory.
 """
 
 from __future__ import annotations
@@ -52,7 +52,7 @@ def static_eps_eff(ratio: float, eps_r: float) -> float:
         + math.log(1.0 + (ratio / 18.1) ** 3) / 18.7
     )
     b = 0.564 * ((eps_r - 0.9) / (eps_r + 3.0)) ** 0.053
-    return (eps_r + 1.0) / 2.0 + (eps_r - 1.0) / 2.0 * (1.0 + 10.0 / ratio) ** (-a * b)
+    return (eps_r + 1.0) / 2.0 + (eps_r - 1.0) / 2.0 * math.pow(1.0 + 10.0 / ratio, -a * b)
 
 
 def widened_ratios(ratio: float, thickness_ratio: float, eps_r: float) -> tuple[float, float]:
@@ -95,13 +95,11 @@ def dispersed_eps_eff(ratio: float, eps_r: float, static: float, frequency_heigh
     p2 = 0.33622 * (1.0 - math.exp(-0.03442 * eps_r))
     p3 = 0.0363 * math.exp(-4.6 * ratio) * (1.0 - math.exp(-((fh / 38.7) ** 4.97)))
     p4 = 1.0 + 2.751 * (1.0 - math.exp(-((eps_r / 15.916) ** 8)))
-    p = p1 * p2 * ((0.1844 + p3 * p4) * fh) ** 1.5763
+    p = p1 * p2 * math.pow((0.1844 + p3 * p4) * fh, 1.5763)
     return eps_r - (eps_r - static) / (1.0 + p)
 
 
-def impedance_dispersion(
-    ratio: float, eps_r: float, static: float, dispersed: float, frequency_height: float
-) -> float:
+def impedance_dispersion(ratio: float, eps_r: float, static: float, dispersed: float, frequency_height: float) -> float:
     """Factor from static impedance to the power-current impedance at frequency.
 
     `static` and `dispersed` are the effective permittivities; `ratio` 0.1 to 10, `eps_r` 1 to 18,
@@ -131,7 +129,7 @@ def impedance_dispersion(
     r15 = 0.707 * r10 * (fh / 12.3) ** 1.097
     r16 = 1.0 + 0.0503 * eps_r**2 * r11 * (1.0 - math.exp(-((u / 15.0) ** 6)))
     r17 = r7 * (1.0 - 1.1241 * r12 / r16 * math.exp(-0.026 * fh**1.15656 - r15))
-    return float((r13 / r14) ** r17)
+    return math.pow(r13 / r14, r17)
 
 
 def current_factor(static_air_impedance: float) -> float:
@@ -139,6 +137,8 @@ def current_factor(static_air_impedance: float) -> float:
 
     `static_air_impedance` in ohm, of the same strip with air for dielectric: the current follows the
     magnetic field, which no dielectric changes. exp(-1.2 (Z/eta0)^0.7): Hammerstad & Jensen 1980, eq. 14.
+    Within 2.5 % of Wheeler's incremental inductance rule for w/h >= 0.5 and strips a hundredth of the
+    height thick; thicker strips lose less than it says (10 to 30 % less at four hundredths).
     """
     return math.exp(-1.2 * (static_air_impedance / WAVE_IMPEDANCE) ** 0.7)
 
@@ -180,15 +180,28 @@ def cover_ratios(width: float, substrate: Substrate) -> tuple[float, float]:
 
 
 def microstrip_wave(
-    width: float, substrate: Substrate, *, thickness: float, frequency: float
+    width: float, gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
 ) -> tuple[float, float]:
     """Impedance in ohm and effective permittivity of a microstrip at `frequency` in Hz, without its losses.
 
-    `width` and strip `thickness` in m. Statics, dispersion and cover together; raises `RangeError`
-    outside the range of any of them (w/h 0.1 to 10, eps_r 1 to 18, h up to a tenth of a wavelength).
+    `width` in m, `gap` must be None. Statics, thickness, dispersion and cover together; raises
+    `RangeError` outside the range of any of them (w/h 0.1 to 10, eps_r 1 to 18, h up to a tenth of a
+    wavelength, copper up to half of width and height).
     """
-    impedance, bare, cover = _wave(width, substrate, thickness, frequency)
+    if gap is not None:
+        raise RangeError("microstrip has no gap, leave it out")
+    impedance, bare, cover = _wave(width, substrate, conductor.thickness, frequency)
     return impedance * cover[0], bare * cover[1]
+
+
+def microstrip_width_limits(
+    gap: float | None, substrate: Substrate, conductor: Conductor, frequency: float
+) -> tuple[float, float]:
+    """Narrowest and widest strip in m the formulas cover; `gap` must be None, `frequency` does not matter."""
+    if gap is not None:
+        raise RangeError("microstrip has no gap, leave it out")
+    narrowest, widest = (ratio * substrate.height for ratio in RATIO_RANGE)
+    return max(narrowest, conductor.thickness / THICKEST), widest
 
 
 def microstrip_line(

@@ -19,8 +19,8 @@ def quarter_wave_section(source_impedance: float, load: complex) -> tuple[float,
     Both in ohm, the source real. The length lies between 0 and pi, near pi/2 for a nearly real load.
     Z_t^2 = Z0 (R^2 + X^2 - Z0 R)/(R - Z0), tan(theta) = Z_t (Z0 - R)/(Z0 X): both parts of the condition
     Zin = Z0 on Zin = Z_t (Z_L + j Z_t tan)/(Z_t + j Z_L tan), Pozar, Microwave Engineering, eq. 2.44.
-    Raises `SynthesisError` where Z_t^2 is not positive: R between Z0 and |Z_L|^2/R side of it, saying by
-    how much R or X must change.
+    Raises `SynthesisError` where Z_t^2 is not positive, that is R <= Z0 <= |Z_L|^2/R, saying by how much R
+    or X must change.
     """
     z0, r, x = source_impedance, load.real, load.imag
     if not (z0 > 0.0 and r > 0.0):

@@ -27,9 +27,9 @@ Array = NDArray[np.float64]
 _POINTS, _WEIGHTS = special.roots_legendre(8)
 _PANEL_PHASE = 5.0  # rad of the fastest oscillation per 8-point panel: error below 1e-9
 _PANEL_GROWTH = 1.5  # ratio of panel ends: resolves tanh(kh) of every thickness alike
-_TAIL = 1e-8  # part of the kernel left beyond the last panel
+_TAIL = 1e-6  # part of the kernel left beyond the last panel
 _MOST_TERMS = 80
-_MOST_LAYER_TERMS = 24
+_MOST_LAYER_TERMS = 16
 
 
 @dataclass(frozen=True)
@@ -79,9 +79,7 @@ class _Stack:
         return sum(layer.thickness for layer in self.below)
 
 
-def static_admittance(
-    wavenumber: Array, layers: Sequence[DielectricLayer], *, grounded: bool = False
-) -> Array:
+def static_admittance(wavenumber: Array, layers: Sequence[DielectricLayer], *, grounded: bool = False) -> Array:
     """Static admittance Y(k), relative to eps0 k, of a half space seen from the strip; shape of `wavenumber`.
 
     `wavenumber` in 1/m, positive; `layers` in order from the strip outward, ended by a metal plane
@@ -131,8 +129,9 @@ def coplanar_strips_static(
     """Impedance and effective permittivity of two equal zero-thickness strips, driven against each other.
 
     `width` of each strip and `gap` between them in m; `below` and `above` from the strips outward,
-    each ended by open air. Relative accuracy better than 1e-5, without thin covers 1e-8. Raises `RangeError`
-    for a gap over width outside 0.002 to 200, a layer thinner than 0.1 um or with eps_r below 1. Sources as `microstrip_static`; the pair's transform carries sin(k c + n pi/2), c half the pitch.
+    each ended by open air. Relative accuracy better than 1e-5, without thin covers 1e-8. Raises
+    `RangeError` for a gap over width outside 0.002 to 200, a layer thinner than 0.1 um or with eps_r
+    below 1. Sources as `microstrip_static`; the pair's transform carries sin(k c + n pi/2), c half the pitch.
     """
     stack = _Stack(tuple(below), tuple(above), grounded=False)
     _check_layers(stack)
@@ -159,7 +158,8 @@ def _single_capacitance(width: float, stack: _Stack, terms: int) -> float:
     # Homogeneous part with its image: kernel (1 - exp(-2kH))/k, in space ln(sqrt(x^2 + 4H^2)/|x|).
     image = _chebyshev_moments(
         lambda t, u: 0.5 * np.log((half * (t - u)) ** 2 + 4.0 * stack.height**2),
-        2 * terms, math.asinh(4.0 * stack.height / width),
+        2 * terms,
+        math.asinh(4.0 * stack.height / width),
     )[::2, ::2]
     matrix = (_log_moments(half, orders) + image) / stack.eps_sum
     wavenumber, weight = _panels(stack, width)
@@ -176,9 +176,7 @@ def _pair_capacitance(width: float, gap: float, stack: _Stack, terms: int) -> fl
     half, centre = width / 2.0, (width + gap) / 2.0
     orders = np.arange(terms)
     distance = 2.0 * gap / width
-    mirror = _chebyshev_moments(
-        lambda t, u: np.log(2.0 * centre + half * (t + u)), terms, math.acosh(1.0 + distance)
-    )
+    mirror = _chebyshev_moments(lambda t, u: np.log(2.0 * centre + half * (t + u)), terms, math.acosh(1.0 + distance))
     matrix = 2.0 * (_log_moments(half, orders) + mirror) / stack.eps_sum
     wavenumber, weight = _panels(stack, gap + 2.0 * width)
     if len(wavenumber):
@@ -225,7 +223,8 @@ def _chebyshev_moments(kernel: Callable[[Array, Array], Array], terms: int, deca
     angle = (np.arange(count) + 0.5) * math.pi / count
     node = np.cos(angle)
     cosines = np.cos(np.outer(np.arange(terms), angle)) / count
-    return cosines @ kernel(node[:, None], node[None, :]) @ cosines.T
+    moments: Array = cosines @ kernel(node[:, None], node[None, :]) @ cosines.T
+    return moments
 
 
 def _panels(stack: _Stack, extent: float) -> tuple[Array, Array]:

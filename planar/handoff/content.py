@@ -1,6 +1,6 @@
 """What an exchange file holds, free of any format: outlines, drills and labels by layer.
 
-`drawing(layout)` says what belongs into the files; the writers put exactly that down, the readers
+`file_content(layout)` says what belongs into the files; the writers put exactly that down, the readers
 return the same record, and `check_files` compares the two. The DIMENSIONS layer is made here: a
 scale bar and a 10 mm square, because importers take millimetres for inches or metres.
 """
@@ -45,7 +45,7 @@ class Label:
 
 
 @dataclass(frozen=True)
-class Drawing:
+class FileContent:
     """Outlines and drills by layer name, and labels.
 
     `faults` lists what a reader met that the format's rules forbid (an open outline, wrong units);
@@ -57,7 +57,7 @@ class Drawing:
     labels: tuple[Label, ...] = ()
     faults: tuple[str, ...] = ()
 
-    def flattened(self, chord_error: float) -> Drawing:
+    def flattened(self, chord_error: float) -> FileContent:
         """A copy whose arcs are chains of chords no further than `chord_error` m from them, on the grid."""
         flat = {
             layer: tuple(flattened_on_grid(outline, chord_error) for outline in outlines)
@@ -73,7 +73,7 @@ def flattened_on_grid(outline: Outline, chord_error: float) -> Outline:
     return Outline.polygon(points[distinct] * GRID)
 
 
-def drawing(layout: Layout) -> Drawing:
+def file_content(layout: Layout) -> FileContent:
     """The drawing of a snapped `layout`. Every layer of the table is listed, empty or not."""
     outlines: dict[str, tuple[Outline, ...]] = {layer.name: () for layer in LAYERS}
     for level in Level:
@@ -88,7 +88,7 @@ def drawing(layout: Layout) -> Drawing:
         "DRILL_PLATED": tuple(Drill(h.centre, h.diameter) for h in layout.holes if h.plated),
         "DRILL_UNPLATED": tuple(Drill(h.centre, h.diameter) for h in layout.holes if not h.plated),
     }
-    return Drawing(outlines, drills, (*_terminals(layout), *scale_labels))
+    return FileContent(outlines, drills, (*_terminals(layout), *scale_labels))
 
 
 def scale_bar_length(layout: Layout) -> float:

@@ -1,0 +1,143 @@
+"""The command line: reads arguments, calls the pipeline, prints. Nothing else.
+
+Every command has `--json`; exit code 0 is done, 1 refused with the reason, 2 wrong usage. Heavy
+imports stand inside the commands, so that `planar --help` answers at once.
+"""
+
+from __future__ import annotations
+
+import functools
+import json
+import sys
+from collections.abc import Callable
+from dataclasses import asdict
+from pathlib import Path
+from typing import Any, TypeVar
+
+import click
+
+from planar import __version__
+from planar.errors import PlanarError
+
+Command = TypeVar("Command", bound=Callable[..., Any])
+
+library_option = click.option(
+    "--library",
+    "library_folder",
+    type=click.Path(path_type=Path),
+    help="Folder searched before the shipped laminates, fabs, connectors and families.",
+)
+json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON instead of a table.")
+
+
+def refusing(command: Command) -> Command:
+    """Turn a `PlanarError` into its message on stderr and exit code 1."""
+
+    @functools.wraps(command)
+    def wrapped(*args: Any, **kwargs: Any) -> Any:
+        try:
+            return command(*args, **kwargs)
+        except PlanarError as error:
+            click.echo(f"refused: {error}", err=True)
+            sys.exit(1)
+
+    return wrapped  # type: ignore[return-value]
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(__version__, prog_name="planar")
+def main() -> None:
+    """From a band and a laminate to a tuned printed loop antenna.
+
+    Start with `planar new NAME`, edit the brief, then `planar make NAME.toml`.
+    """
+
+
+@main.command()
+@click.argument("name", type=click.Path(path_type=Path))
+@json_option
+@refusing
+def new(name: Path, as_json: bool) -> None:
+    """Write a commented brief NAME.toml."""
+    from planar import pipeline
+
+    path = pipeline.new_brief(name)
+    click.echo(json.dumps({"file": str(path)}) if as_json else f"{path} written: edit it, then planar make {path}")
+
+
+@main.command()
+@click.argument("brief", type=click.Path(path_type=Path))
+@click.option(
+    "--outputs",
+    type=click.Path(path_type=Path),
+    default=Path("outputs"),
+    show_default=True,
+    help="Folder the pack is written to, under the brief's name.",
+)
+@library_option
+@json_option
+@refusing
+def make(brief: Path, outputs: Path, library_folder: Path | None, as_json: bool) -> None:
+    """Size, draw, check and write the pack for BRIEF."""
+    from planar import pipeline
+    from planar.library import Library
+    from planar.report import console
+
+    with console.progress() as step:
+        made = pipeline.make(brief, Library.open(library_folder), outputs, step)
+    if as_json:
+        console.print_json(pipeline.design_facts(made.design) | {"folder": str(made.folder)})
+    else:
+        console.print_design(made.design, made.folder)
+
+
+@main.command()
+@click.option("--kind", type=click.Choice(["microstrip", "coplanar-strips"]), default="microstrip", show_default=True)
+@click.option("--impedance", multiple=True, help='Such as "50 ohm"; may be repeated. Default 50, 75 and 100 ohm.')
+@click.option("--laminate", multiple=True, help="Library key; may be repeated. Default fr4-general.")
+@click.option("--height", multiple=True, help='Dielectric thickness such as "1.6 mm". Default: those sold.')
+@click.option("--eps-r", type=float, help="Relative permittivity, instead of --laminate.")
+@click.option("--tan-d", type=float, default=0.0, show_default=True, help="Loss tangent that goes with --eps-r.")
+@click.option("--frequency", default="1 GHz", show_default=True)
+@click.option("--copper", help="Finished copper. Default: 35 um base and the fab's plating; none with --eps-r.")
+@click.option("--gap", help="Gap of coplanar strips. Default: the widest that gives a usable width.")
+@click.option("--mask", is_flag=True, help="Count the fab's solder mask on top.")
+@click.option("--fab", default="pool-two-layer", show_default=True, help="Whose limits flag a row.")
+@click.option("--csv", "as_csv", is_flag=True, help="Print CSV instead of a table.")
+@click.option("--plot", type=click.Path(path_type=Path), help="Write width over impedance as an SVG.")
+@library_option
+@json_option
+@refusing
+def lines(library_folder: Path | None, as_json: bool, as_csv: bool, plot: Path | None, **asked: Any) -> None:
+    """Trace widths for impedances across laminates and thicknesses."""
+    from planar import pipeline
+    from planar.library import Library
+    from planar.report import console
+
+    rows = pipeline.lines(pipeline.LineQuestion(**asked), Library.open(library_folder))
+    if plot is not None:
+        pipeline.plot_lines(rows, plot)
+    if as_json:
+        console.print_json([asdict(row) for row in rows])
+    else:
+        (console.print_lines_csv if as_csv else console.print_lines)(rows)
+
+
+@main.command("library")
+@click.argument("kind", required=False)
+@click.argument("key", required=False)
+@library_option
+@json_option
+@refusing
+def show_library(kind: str | None, key: str | None, library_folder: Path | None, as_json: bool) -> None:
+    """List laminates, fabs, connectors, covers and families; KIND and KEY show one entry with its sources."""
+    from planar import pipeline
+    from planar.library import Library
+    from planar.report import console
+
+    library = Library.open(library_folder)
+    found = pipeline.library_entries(library, kind) if key is None else pipeline.library_entry(library, kind or "", key)
+    if as_json:
+        console.print_json(found)
+    else:
+        (console.print_entries if key is None else console.print_entry)(found)

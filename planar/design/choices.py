@@ -1,0 +1,184 @@
+"""Everything a brief leaves open, chosen, with the reason; library keys turned into records.
+
+The result is what sizing, drawing and the writers work from. A combination that cannot be built (a
+coax on a balanced port, two levels at a one-level fab) is refused here, before any sizing.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from planar.brief import Brief
+from planar.brief.model import CoverSpec, InlineLaminate, InlineMaterial
+from planar.copper.layout import Level
+from planar.errors import Finding, Severity, SynthesisError
+from planar.library import Connector, Cover, Fab, Family, Laminate, Library, inline_laminate
+from planar.stackup import BoardChoice, CoverChoice, Stackup, Surroundings, build_stackup
+from planar.units import show
+
+COAX_IMPEDANCES = (40.0, 80.0)
+"""ohm, port impedances taken to be a coax."""
+STRIP_IMPEDANCES = (45.0, 220.0)
+"""ohm, port impedances coplanar strips can be sized for."""
+
+
+@dataclass(frozen=True)
+class Choices:
+    """A brief with nothing left open. `centre` Hz is the middle of the band; `reasons` say what was assumed."""
+
+    brief: Brief
+    family: Family
+    laminate: Laminate
+    fab: Fab
+    connector: Connector
+    stackup: Stackup
+    end: str | None
+    reasons: tuple[str, ...]
+
+    @property
+    def centre(self) -> float:
+        """Middle of the band, Hz."""
+        low, high = self.brief.target.band
+        return 0.5 * (low + high)
+
+    @property
+    def circular(self) -> bool:
+        """Whether circular polarisation is asked for."""
+        return self.brief.target.polarisation != "linear"
+
+    @property
+    def traits(self) -> frozenset[str]:
+        """What makes a dimension needed, see `planar.library.families.TRAITS`."""
+        shape = self.brief.antenna.shape
+        present = {
+            "corner": shape != "circle",
+            "rectangle": shape == "rectangle",
+            "circular": self.circular,
+            "via": self.end == "via",
+            "open": self.end == "open",
+        }
+        return frozenset(trait for trait, there in present.items() if there)
+
+    @property
+    def levels(self) -> tuple[Level, ...]:
+        """Copper levels, top first."""
+        return (Level.TOP, Level.BOTTOM)[: self.family.levels]
+
+    @property
+    def masked(self) -> tuple[Level, ...]:
+        """Levels that carry solder mask."""
+        return tuple(level for level in self.levels if self.stackup.find(f"mask-{level.value}") is not None)
+
+
+def choose(brief: Brief, library: Library) -> Choices:
+    """Records and defaults for `brief`. Raises `LibraryError` or `SynthesisError` where they do not go together."""
+    fab = library.fab(brief.make.fab)
+    reasons: list[str] = []
+    family = library.family(_family_key(brief, fab, reasons))
+    end = _end(brief, family, reasons)
+    connector = library.connector(_connector_key(brief, family, library, reasons))
+    _check_feed(family, connector, brief, fab)
+    laminate = _laminate(brief, library)
+    _note_laminate(brief, laminate, reasons)
+    reasons.append("thickness is that of the dielectric; finished copper and mask come on top")
+    reasons.append(f"copper is the base foil; the fab plates {show(fab.plating, 'length', 3)} on top of it")
+    board = BoardChoice(laminate, brief.board.thickness, brief.board.copper, family.levels, _mask(brief, family))
+    around = Surroundings(_cover(brief.surroundings.cover, library), _reflector(brief))
+    stackup = build_stackup(board, fab, surroundings=around)
+    return Choices(brief, family, laminate, fab, connector, stackup, end, tuple(reasons))
+
+
+def _family_key(brief: Brief, fab: Fab, reasons: list[str]) -> str:
+    if brief.antenna.family is not None:
+        return brief.antenna.family
+    ohm = brief.target.impedance
+    low, high = COAX_IMPEDANCES
+    coax = brief.make.connector is None or not brief.make.connector.startswith("bare")
+    if fab.levels >= 2 and low <= ohm <= high and coax:
+        key, why = "ring-guided", f"{ohm:g} ohm is a coax, and on two copper levels it needs no balun"
+    elif brief.target.polarisation == "linear" and STRIP_IMPEDANCES[0] <= ohm <= STRIP_IMPEDANCES[1]:
+        key, why = "coplanar", f"{ohm:g} ohm on one copper level: strips transform the loop to the port"
+    else:
+        key, why = "plain", f"a port of {ohm:g} ohm on one copper level needs no line on the board"
+    reasons.append(f'family "{key}" chosen: {why}')
+    return key
+
+
+def _end(brief: Brief, family: Family, reasons: list[str]) -> str | None:
+    if family.key not in ("ring-guided",):
+        return None
+    if brief.antenna.end is None:
+        reasons.append('the line ends "open": no via, and the widest band')
+    return brief.antenna.end or "open"
+
+
+def _connector_key(brief: Brief, family: Family, library: Library, reasons: list[str]) -> str:
+    if brief.make.connector is not None:
+        return brief.make.connector
+    if family.feed == "balanced":
+        reasons.append("no connector: two pads for a balanced chip, balun or line")
+        return "bare-pads"
+    edge = library.connector("edge-coax")
+    low, high = edge.board_thickness or (0.0, 1.0)
+    key = edge.key if low <= brief.board.thickness <= high else "pigtail-pads"
+    reasons.append(f'connector "{key}" chosen for a board of {show(brief.board.thickness, "length")}')
+    return key
+
+
+def _check_feed(family: Family, connector: Connector, brief: Brief, fab: Fab) -> None:
+    findings = []
+    if connector.balanced != (family.feed == "balanced"):
+        wanted = "bare-pads" if family.feed == "balanced" else "edge-coax, miniature-coax or pigtail-pads"
+        advice = f"use {wanted}, or another family"
+        limit = f"a {family.feed} feed for {family.key}"
+        findings.append(Finding("feed", "make.connector", connector.key, limit, advice, Severity.REFUSE))
+    thickness = brief.board.thickness
+    low, high = connector.board_thickness or (0.0, 1.0)
+    if not low <= thickness <= high:
+        got, limit = show(thickness, "length"), f"{show(low, 'length')} to {show(high, 'length')}"
+        advice = f"{connector.key} does not fit this board: use pigtail-pads, or another thickness"
+        findings.append(Finding("connector", "board.thickness", got, limit, advice, Severity.REFUSE))
+    if family.levels > fab.levels:
+        advice = "use a two-level fab, or the family plain or coplanar"
+        got, limit = f"{family.levels} for {family.key}", f"{fab.levels} at {fab.key}"
+        findings.append(Finding("copper levels", "make.fab", got, limit, advice, Severity.REFUSE))
+    if findings:
+        raise SynthesisError("the brief asks for parts that do not go together:", tuple(findings))
+
+
+def _laminate(brief: Brief, library: Library) -> Laminate:
+    choice = brief.board.laminate
+    if isinstance(choice, InlineLaminate):
+        return inline_laminate(choice.eps_r, choice.tan_d, at=choice.at)
+    return library.laminate(choice)
+
+
+def _note_laminate(brief: Brief, laminate: Laminate, reasons: list[str]) -> None:
+    usual = laminate.thicknesses
+    thickness = brief.board.thickness
+    if usual and min(abs(thickness - each) for each in usual) > 0.02 * thickness:
+        sold = ", ".join(show(each, "length", 4) for each in usual)
+        reasons.append(f"{show(thickness, 'length', 4)} is no usual thickness of {laminate.key} ({sold}): ask the fab")
+
+
+def _mask(brief: Brief, family: Family) -> str:
+    """The mask asked for; a one-level board has copper on top only, and mask there is what matters."""
+    if family.levels == 1 and brief.board.mask == "bottom":
+        return "none"
+    return brief.board.mask
+
+
+def _cover(spec: CoverSpec | None, library: Library) -> CoverChoice | None:
+    if spec is None:
+        return None
+    if isinstance(spec.material, InlineMaterial):
+        given = (("eps_r", "given in the brief"), ("tan_d", "given in the brief"))
+        cover = Cover("inline", "cover given in the brief", spec.material.eps_r, 0.05, spec.material.tan_d, 0.3, 1e9, given)
+    else:
+        cover = library.cover(spec.material)
+    return CoverChoice(cover, spec.air_gap, spec.thickness)
+
+
+def _reflector(brief: Brief) -> float | None:
+    reflector = brief.surroundings.reflector
+    return None if reflector is None else reflector.distance

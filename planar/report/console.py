@@ -1,0 +1,170 @@
+"""What commands print: aligned tables for people, JSON and CSV for programs.
+
+Tables go to stdout, progress to stderr and only to a terminal, so that piped output stays clean.
+"""
+
+from __future__ import annotations
+
+import csv
+import json
+import sys
+import time
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from dataclasses import asdict, fields
+from pathlib import Path
+from typing import Any
+
+from rich.console import Console
+from rich.table import Table
+
+from planar.design.design import Design
+from planar.design.line_table import LineRow
+from planar.errors import Severity
+from planar.units import show
+
+WIDTH = 160
+"""Columns of a table that is not printed to a terminal."""
+HEADS = {
+    "kind": "kind",
+    "laminate": "laminate",
+    "height_mm": "height mm",
+    "frequency_ghz": "GHz",
+    "impedance_ohm": "ohm",
+    "width_mm": "width mm",
+    "gap_mm": "gap mm",
+    "eps_eff": "eps eff",
+    "quarter_wave_mm": "quarter wave mm",
+    "loss_db_per_m": "loss dB/m",
+    "ohm_per_25_um_etch": "ohm per 25 um etch",
+    "ohm_per_10_percent_height": "ohm per 10 % height",
+    "ohm_per_1_percent_eps_r": "ohm per 1 % eps",
+    "makeable": "fab",
+    "note": "note",
+}
+MARKS = {Severity.REFUSE: "refused", Severity.WARN: "warning", Severity.NOTE: "note"}
+
+
+@contextmanager
+def progress() -> Iterator[Callable[[str], None]]:
+    """A function that reports the stage begun, with seconds since the start, to a terminal on stderr."""
+    started = time.monotonic()
+    shown = sys.stderr.isatty()
+
+    def step(stage: str) -> None:
+        if shown:
+            sys.stderr.write(f"{time.monotonic() - started:6.2f} s  {stage}\n")
+
+    yield step
+
+
+def print_json(data: object) -> None:
+    """Print `data` as indented JSON."""
+    sys.stdout.write(json.dumps(data, indent=2, ensure_ascii=False) + "\n")
+
+
+def print_design(design: Design, folder: Path | None = None) -> None:
+    """Print dimensions, lines, findings and where the pack is."""
+    console = _console()
+    choices, bare = design.choices, design.bare_loop
+    polarisation = choices.brief.target.polarisation
+    console.print(f"{design.name}: {choices.family.key}, {choices.brief.antenna.shape}, {polarisation}", highlight=False)
+    width, height = design.layout.size
+    console.print(
+        f"bare loop {bare.perimeter_wavelengths:.3f} wavelengths round, {bare.resistance:.0f} ohm at "
+        f"{show(bare.frequency, 'frequency', 4)}; board {width * 1e3:.1f} x {height * 1e3:.1f} mm",
+        highlight=False,
+    )
+    console.print(_dimension_table(design))
+    if design.lines:
+        console.print(_design_line_table(design))
+    console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in design.findings]))
+    console.print(_text_table(("assumed",), [(reason,) for reason in choices.reasons]))
+    console.print(design.status, highlight=False)
+    if choices.brief.target.transmit:
+        console.print(CAUTION_TRANSMIT, highlight=False)
+    if folder is not None:
+        console.print(f"written to {folder}", highlight=False, soft_wrap=True)
+
+
+CAUTION_TRANSMIT = (
+    "Transmitting: keep people at a distance until the exposure figures are worked out; local rules and licensed "
+    "practice decide what may be radiated. Etching and cutting boards: gloves, eye protection, no glass dust in the air."
+)
+
+
+def _dimension_table(design: Design) -> Table:
+    family = design.choices.family
+    rows = [(name, f"{value * 1e3:.2f}", family.meaning(name)) for name, value in design.dimensions.items()]
+    return _text_table(("dimension", "mm", "meaning"), rows, right=(1,))
+
+
+def _design_line_table(design: Design) -> Table:
+    rows = [
+        (
+            each.name,
+            each.line.kind,
+            f"{each.line.impedance:.1f}",
+            f"{each.tolerance_ohm:.1f}",
+            f"{each.line.eps_eff:.3f}",
+            f"{each.line.quarter_wave * 1e3:.2f}",
+            f"{each.line.loss_db_per_m:.2f}",
+            each.reference,
+        )
+        for each in design.lines
+    ]
+    heads = ("line", "kind", "ohm", "+-ohm", "eps eff", "quarter wave mm", "loss dB/m", "against")
+    return _text_table(heads, rows, right=(2, 3, 4, 5, 6))
+
+
+def print_lines(rows: Sequence[LineRow]) -> None:
+    """Print line rows as a table; columns nobody needs are left out."""
+    empty = {name for name in HEADS if all(getattr(row, name) in (None, "") for row in rows)}
+    names = [name for name in HEADS if name not in empty]
+    cells = [tuple(_line_cell(name, getattr(row, name)) for name in names) for row in rows]
+    right = tuple(i for i, name in enumerate(names) if name not in {"kind", "laminate", "makeable", "note"})
+    _console().print(_text_table(tuple(HEADS[name] for name in names), cells, right=right))
+
+
+def _line_cell(name: str, value: object) -> str:
+    if name == "makeable":
+        return "ok" if value else "no"
+    if isinstance(value, float):
+        return f"{value:.3f}" if name in {"width_mm", "gap_mm", "eps_eff"} else f"{value:.4g}"
+    return "" if value is None else str(value)
+
+
+def print_lines_csv(rows: Sequence[LineRow]) -> None:
+    """Print line rows as CSV, full precision, empty where there is no value."""
+    writer = csv.DictWriter(sys.stdout, [field.name for field in fields(LineRow)], lineterminator="\n")
+    writer.writeheader()
+    writer.writerows(asdict(row) for row in rows)
+
+
+def print_entries(entries: Mapping[str, Sequence[Mapping[str, Any]]]) -> None:
+    """Print library entries by kind: key and title, and where they come from."""
+    for kind, found in entries.items():
+        rows = [(entry["key"], entry["title"], entry["file"]) for entry in found]
+        _console().print(_text_table((kind, "title", "file"), rows))
+
+
+def print_entry(entry: Mapping[str, Any]) -> None:
+    """Print one library entry: every value with its source."""
+    console = _console()
+    console.print(f"{entry['key']}: {entry['title']}\n{entry['file']}", highlight=False, soft_wrap=True)
+    rows = [(name, str(value["value"]), value["source"]) for name, value in entry["values"].items()]
+    console.print(_text_table(("name", "value", "source"), rows))
+
+
+def _text_table(heads: Sequence[str], rows: Sequence[Sequence[str]], *, right: Sequence[int] = ()) -> Table:
+    table = Table(box=None, pad_edge=False, header_style="bold")
+    for i, head in enumerate(heads):
+        table.add_column(head, justify="right" if i in right else "left", overflow="fold")
+    for row in rows:
+        table.add_row(*row)
+    return table
+
+
+def _console() -> Console:
+    terminal = sys.stdout.isatty()
+    return Console(file=sys.stdout, width=None if terminal else WIDTH, markup=False, emoji=False)

@@ -1,0 +1,83 @@
+"""Layouts drawn by hand: small boards with everything an exchange file can hold, none of it symmetric."""
+
+from __future__ import annotations
+
+import pytest
+
+from planar.copper.boolean import difference
+from planar.copper.layout import Hole, Island, Layout, Level, Marking, Pad, Port, Role
+from planar.copper.lettering import lettered
+from planar.copper.path import band, loop_path, stepped_band
+from planar.copper.shapes import circle, rectangle, rounded_rectangle
+
+GAP = 2e-3
+
+
+@pytest.fixture(scope="session")
+def two_level() -> Layout:
+    """A loop with two gaps on the bottom, a line of two widths above it, a via, two mounting holes."""
+    loop = loop_path(0.1, 0.09, 0.02)
+    ring = band(loop.between(0.5 * GAP, loop.length - 0.5 * GAP), 5e-3)
+    pieces = difference(ring, rectangle(-0.06, 0.01, -0.04, 0.0108))
+    line = stepped_band([(loop.between(0.02, 0.17), 2.1e-3), (loop.between(0.17, 0.19), 0.25e-3)])
+    start, _ = loop.at(0.025)
+    end, _ = loop.at(0.18)
+    return Layout(
+        name="two level, 868 MHz",
+        levels=(Level.TOP, Level.BOTTOM),
+        islands=(
+            *(Island(Level.BOTTOM, piece, Role.RADIATOR) for piece in pieces),
+            Island(Level.TOP, line, Role.LINE),
+        ),
+        holes=(
+            Hole(start, 0.3e-3, True, "via"),
+            Hole((0.03, 0.02), 3.2e-3, False, "mounting"),
+            Hole((-0.03, -0.025), 2.5e-3, False, "mounting"),
+        ),
+        pads=(
+            Pad("SIG", Level.TOP, circle(start, 1.5e-3), "signal"),
+            Pad("RET", Level.BOTTOM, circle(end, 3e-3), "return"),
+        ),
+        ports=(Port("feed", "gap", Level.BOTTOM, (0.0, 0.045), (1.0, 0.0), GAP, 5e-3),),
+        mask_openings=(
+            Marking(Level.TOP, circle(start, 1.7e-3)),
+            Marking(Level.BOTTOM, rounded_rectangle(0.01, -0.05, 0.02, -0.04, radius=1e-3)),
+        ),
+        legend=(
+            *(Marking(Level.TOP, stroke) for stroke in lettered("TOP", (0.01, 0.0), 3e-3, stroke=0.2e-3)),
+            *(
+                Marking(Level.BOTTOM, stroke)
+                for stroke in lettered("BOTTOM", (0.01, -0.01), 3e-3, stroke=0.2e-3, mirrored=True)
+            ),
+        ),
+        edge=rounded_rectangle(-0.06, -0.055, 0.065, 0.055, radius=3e-3),
+        keepout=(rectangle(-0.07, -0.065, 0.075, 0.065),),
+    ).snapped()
+
+
+@pytest.fixture(scope="session")
+def one_level() -> Layout:
+    """A small circle with a gap and two pads, nothing else."""
+    loop = loop_path(0.03, 0.03, 0.015)
+    ring = band(loop.between(0.5 * GAP, loop.length - 0.5 * GAP), 3e-3)
+    pads = {"1": (-2e-3, "signal"), "2": (2e-3, "return")}
+    outlines = {name: rectangle(x - 0.8e-3, 0.0138, x + 0.8e-3, 0.0158) for name, (x, _) in pads.items()}
+    return Layout(
+        name="loop/1",
+        levels=(Level.TOP,),
+        islands=(Island(Level.TOP, ring, Role.RADIATOR),),
+        holes=(),
+        pads=tuple(Pad(name, Level.TOP, outlines[name], terminal) for name, (_, terminal) in pads.items()),
+        ports=(Port("feed", "gap", Level.TOP, (0.0, 0.015), (1.0, 0.0), GAP, 3e-3),),
+        mask_openings=tuple(Marking(Level.TOP, outline) for outline in outlines.values()),
+        legend=(),
+        edge=rounded_rectangle(-0.02, -0.02, 0.02, 0.02, radius=1e-3),
+        keepout=(rectangle(-0.025, -0.025, 0.025, 0.025),),
+    ).snapped()
+
+
+@pytest.fixture(params=["two_level", "one_level"])
+def layout(request: pytest.FixtureRequest) -> Layout:
+    """Each of the hand-drawn boards."""
+    board: Layout = request.getfixturevalue(request.param)
+    return board
