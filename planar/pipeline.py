@@ -26,8 +26,8 @@ from planar.handoff import (
     SheetFacts,
     StackupSheet,
     check_files,
+    check_stackup,
     packed,
-    read_stackup_json,
     stackup_sheet,
     write_layout_files,
     write_stackup_json,
@@ -221,8 +221,7 @@ def write_pack(design: Design, folder: Path) -> None:
 def check_pack(design: Design, folder: Path) -> None:
     """Read the written files again and compare. Raises `HandoffError` naming what differs."""
     check_files(design.layout, folder / "layout")
-    if read_stackup_json(folder / "fabrication" / "stackup.json") != _sheet(design):
-        raise HandoffError("stackup.json does not say what the design says")
+    check_stackup(_sheet(design), folder / "fabrication" / "stackup.json")
 
 
 def design_facts(design: Design) -> dict[str, Any]:

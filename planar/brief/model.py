@@ -202,7 +202,7 @@ class Board(_Record):
     thickness: BoardThickness = Field(examples=['thickness = "1.6 mm"'])
     """Of the dielectric between the copper planes, m."""
     copper: CopperThickness = 35e-6
-    """Finished, m."""
+    """Base foil, m; the fab's plating comes on top."""
     mask: Literal["none", "top", "bottom", "both"] = "both"
     size_limit: tuple[BoardSize, BoardSize] | None = Field(default=None, examples=['size_limit = ["100 mm", "80 mm"]'])
     """Largest extent in x and y, m."""

@@ -81,7 +81,8 @@ def choose(brief: Brief, library: Library) -> Choices:
     laminate = _laminate(brief, library)
     _note_laminate(brief, laminate, reasons)
     reasons.append("thickness is that of the dielectric; finished copper and mask come on top")
-    reasons.append(f"copper is the base foil; the fab plates {show(fab.plating, 'length', 3)} on top of it")
+    plated = f"the fab plates {show(fab.plating, 'length', 3)} on top of it" if fab.plating else "the fab plates nothing on it"
+    reasons.append(f"copper is the base foil; {plated}")
     board = BoardChoice(laminate, brief.board.thickness, brief.board.copper, family.levels, _mask(brief, family))
     around = Surroundings(_cover(brief.surroundings.cover, library), _reflector(brief))
     stackup = build_stackup(board, fab, surroundings=around)

@@ -7,6 +7,7 @@ is drawn.
 
 from __future__ import annotations
 
+import bisect
 import math
 from dataclasses import dataclass
 
@@ -14,7 +15,7 @@ from planar.copper.layout import Level
 from planar.design.choices import Choices
 from planar.design.loop_size import layers_of
 from planar.errors import SynthesisError
-from planar.lines.line import Line, analyse
+from planar.lines.line import Line, analyse, line_kind, wave
 from planar.lines.records import Conductor, Substrate
 from planar.lines.synthesis import Sensitivities, sensitivities, width_for_impedance
 from planar.units import show
@@ -23,6 +24,7 @@ STEP = 1e-5
 """m, dimensions are rounded to this: drawings in hundredths of a millimetre."""
 STRIP_GAPS = (1.0e-3, 0.7e-3, 0.5e-3, 0.4e-3, 0.3e-3, 0.25e-3, 0.2e-3, 0.15e-3, 0.1e-3)
 """m, gaps tried for coplanar strips, widest first: a wide gap is the least sensitive to etching."""
+_SLACK = 1e-9
 STRIP_WIDTHS = (0.5e-3, 4.0e-3)
 """m, strips wide enough to solder and etch, narrow enough not to fill the loop."""
 
@@ -81,27 +83,46 @@ def strip_width_and_gap(impedance: float, settings: LineSettings, least: tuple[f
     `least` is the fab's smallest track and gap, m. Raises `SynthesisError` saying what can be reached.
     """
     narrowest = max(STRIP_WIDTHS[0], least[0])
-    reached = []
-    for gap in (gap for gap in STRIP_GAPS if gap >= least[1] - 1e-9):
-        low, high = (strips(width, gap, settings).impedance for width in (STRIP_WIDTHS[1], narrowest))
-        reached += [low, high]
-        if low <= impedance <= high:
-            line = width_for_impedance(
-                "coplanar-strips",
-                impedance,
-                gap=gap,
-                substrate=settings.substrate,
-                conductor=settings.conductor,
-                frequency=settings.frequency,
-            )
-            return rounded(line.width), gap
-    if not reached:
+    gaps = [gap for gap in sorted(STRIP_GAPS) if gap >= least[1] - _SLACK]
+    if not gaps:
         raise SynthesisError(f"coplanar strips: the fab's smallest gap, {show(least[1], 'length')}, is too wide for any")
-    raise SynthesisError(
-        f"coplanar strips of {impedance:.0f} ohm: with gaps from {show(max(least[1], STRIP_GAPS[-1]), 'length')} and "
-        f"widths of {show(narrowest, 'length')} to {show(STRIP_WIDTHS[1], 'length')} this board gives "
-        f"{min(reached):.0f} to {max(reached):.0f} ohm; change target.impedance, the laminate or the fab"
+
+    def widest(gap: float) -> float:
+        limits = line_kind("coplanar-strips").width_limits(gap, settings.substrate, settings.conductor, settings.frequency)
+        return max(min(STRIP_WIDTHS[1], limits[1]), narrowest)
+
+    def lowest(gap: float) -> float:
+        return _strip_impedance(widest(gap), gap, settings)
+
+    # impedance grows with the gap: the widest gap that is low enough with the widest strips
+    count = bisect.bisect_right(gaps, impedance, key=lowest)
+    if count == 0 or impedance > _strip_impedance(narrowest, gaps[count - 1], settings):
+        low, high = lowest(gaps[0]), _strip_impedance(narrowest, gaps[-1], settings)
+        raise SynthesisError(
+            f"coplanar strips of {impedance:.0f} ohm: with gaps from {show(gaps[0], 'length')} and widths of "
+            f"{show(narrowest, 'length')} to {show(widest(gaps[0]), 'length', 3)} this board gives {low:.0f} to {high:.0f} ohm; "
+            "change target.impedance, the laminate or the fab"
+        )
+    line = width_for_impedance(
+        "coplanar-strips",
+        impedance,
+        gap=gaps[count - 1],
+        substrate=settings.substrate,
+        conductor=settings.conductor,
+        frequency=settings.frequency,
     )
+    return rounded(line.width), gaps[count - 1]
+
+
+def _strip_impedance(width: float, gap: float, settings: LineSettings) -> float:
+    return wave(
+        "coplanar-strips",
+        width,
+        gap=gap,
+        substrate=settings.substrate,
+        conductor=settings.conductor,
+        frequency=settings.frequency,
+    )[0]
 
 
 def design_lines(dimensions: dict[str, float], choices: Choices, settings: LineSettings) -> tuple[DesignLine, ...]:

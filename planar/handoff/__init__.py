@@ -1,7 +1,7 @@
 """Files for the fab and the layout engineer, written, read again and compared."""
 
 from planar.handoff.check import check_files
-from planar.handoff.content import FileContent, Drill, Label, file_content
+from planar.handoff.content import Drill, FileContent, Label, file_content
 from planar.handoff.dxf import read_dxf, write_dxf, write_dxf_segments
 from planar.handoff.folder import write_layout_files
 from planar.handoff.gds import read_gds, write_gds
@@ -9,19 +9,20 @@ from planar.handoff.layers import LAYERS, read_layers_csv, write_layers_csv
 from planar.handoff.pack import packed, read_manifest, write_manifest
 from planar.handoff.preview import write_preview_svg
 from planar.handoff.readme import write_layout_readme
-from planar.handoff.stackup_files import read_stackup_json, write_stackup_json, write_stackup_markdown
+from planar.handoff.stackup_files import check_stackup, read_stackup_json, write_stackup_json, write_stackup_markdown
 from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, SheetLayer, StackupSheet, stackup_sheet
 
 __all__ = [
     "LAYERS",
-    "FileContent",
     "Drill",
+    "FileContent",
     "ImpedanceLine",
     "Label",
     "SheetFacts",
     "SheetLayer",
     "StackupSheet",
     "check_files",
+    "check_stackup",
     "file_content",
     "packed",
     "read_dxf",

@@ -19,7 +19,7 @@ from shapely.ops import unary_union
 from planar.copper.layout import Layout, bounds_of
 from planar.copper.outline import CHECK_CHORD, GRID, Outline
 from planar.errors import HandoffError
-from planar.handoff.content import FileContent, Drill, Label, file_content
+from planar.handoff.content import Drill, FileContent, Label, file_content
 from planar.handoff.dxf import SEGMENT_CHORD, read_dxf
 from planar.handoff.gds import GDS_CHORD, read_gds
 from planar.handoff.layers import LAYERS, read_layers_csv

@@ -49,7 +49,7 @@ class FileContent:
     """Outlines and drills by layer name, and labels.
 
     `faults` lists what a reader met that the format's rules forbid (an open outline, wrong units);
-    a drawing made from a layout has none.
+    what is made from a layout has none.
     """
 
     outlines: Mapping[str, tuple[Outline, ...]]
@@ -74,7 +74,7 @@ def flattened_on_grid(outline: Outline, chord_error: float) -> Outline:
 
 
 def file_content(layout: Layout) -> FileContent:
-    """The drawing of a snapped `layout`. Every layer of the table is listed, empty or not."""
+    """What the files of a snapped `layout` hold. Every layer of the table is listed, empty or not."""
     outlines: dict[str, tuple[Outline, ...]] = {layer.name: () for layer in LAYERS}
     for level in Level:
         side = level.name

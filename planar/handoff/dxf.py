@@ -29,7 +29,7 @@ from ezdxf.lldxf.const import DXFError
 from planar.copper.layout import Layout
 from planar.copper.outline import Outline
 from planar.errors import HandoffError
-from planar.handoff.content import FileContent, Drill, Label, file_content
+from planar.handoff.content import Drill, FileContent, Label, file_content
 from planar.handoff.layers import LAYERS
 
 SEGMENT_CHORD = 2e-6

@@ -19,7 +19,7 @@ from planar.copper.layout import Layout
 from planar.copper.outline import Outline
 from planar.copper.shapes import circle
 from planar.errors import HandoffError
-from planar.handoff.content import FileContent, Drill, Label, file_content, flattened_on_grid
+from planar.handoff.content import Drill, FileContent, Label, file_content, flattened_on_grid
 from planar.handoff.layers import DRILL_LAYERS, LAYERS, layer_named, name_of_gds
 
 GDS_CHORD = 1e-6

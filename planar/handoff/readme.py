@@ -35,7 +35,7 @@ def write_layout_readme(layout: Layout, path: Path, *, status: str) -> None:
 
 _KEEPOUT = (
     "The KEEPOUT outlines hold on every level, inner ones and those of the host board included: no copper but "
-    "the antenna's own, no ground pour, no tracks, no vias, no parts, no screws."
+    "the antenna's own, no ground pour, no tracks, no vias, no parts, no metal screws."
 )
 _DO_NOT_ALTER = (
     "No width, gap or bend; no teardrops, thermal reliefs, thieving, solder mask change or text inside the "

@@ -17,8 +17,20 @@ from planar.units import show
 
 def write_stackup_json(sheet: StackupSheet, path: Path) -> None:
     """Write `sheet` as JSON. The same sheet gives the same bytes."""
+    path.write_bytes((json.dumps(_content(sheet), indent=2, ensure_ascii=False) + "\n").encode("utf-8"))
+
+
+def check_stackup(sheet: StackupSheet, path: Path) -> None:
+    """Read the JSON at `path` again. Raises `HandoffError` naming what differs from `sheet`."""
+    got, expected = _content(read_stackup_json(path)), _content(sheet)
+    wrong = [f"{path.name}: {key} is {got[key]}, expected {expected[key]}" for key in expected if got[key] != expected[key]]
+    if wrong:
+        raise HandoffError("\n".join(wrong))
+
+
+def _content(sheet: StackupSheet) -> dict[str, Any]:
     facts = sheet.facts
-    content = {
+    return {
         "name": facts.name,
         "frequency_hz": facts.frequency_hz,
         "finish": facts.finish,
@@ -33,7 +45,6 @@ def write_stackup_json(sheet: StackupSheet, path: Path) -> None:
         "impedance_lines": [_line_json(line) for line in sheet.impedance_lines],
         "notes": list(sheet.notes),
     }
-    path.write_bytes((json.dumps(content, indent=2, ensure_ascii=False) + "\n").encode("utf-8"))
 
 
 def read_stackup_json(path: Path) -> StackupSheet:
