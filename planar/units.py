@@ -50,7 +50,13 @@ EXAMPLES: dict[str, str] = {
 
 _TRADE_UNITS = {"%": "percent", "mil": "thou"}
 _PREFIXES = [(1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "u"), (1e-9, "n")]
-_SYMBOLS = {"length": "m", "frequency": "Hz", "impedance": "ohm", "power": "W"}
+_SYMBOLS = {"frequency": "Hz", "impedance": "ohm", "power": "W"}
+_FIXED = {
+    "decibel": (1.0, "dB"),
+    "fraction": (0.01, "%"),
+    "angle": (math.pi / 180.0, "deg"),
+    "conductivity": (1.0, "S/m"),
+}
 _NUMBER_AND_UNIT = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(\S.*?)?\s*")
 
 
@@ -109,19 +115,11 @@ def show(value: float, kind: str, digits: int = 6) -> str:
 
     Lengths below a metre are shown in mm (um below 0.1 mm), as drawings do.
     """
-    if kind == "decibel":
-        return f"{value:.{digits}g} dB"
-    if kind == "fraction":
-        return f"{100 * value:.{digits}g} %"
     if kind == "length":
-        if 0 < abs(value) < 0.9995e-4:
-            return f"{1e6 * value:.{digits}g} um"
-        return f"{1e3 * value:.{digits}g} mm"
-    if kind == "angle":
-        return f"{math.degrees(value):.{digits}g} deg"
-    if kind == "conductivity":
-        return f"{value:.{digits}g} S/m"
-    scale, prefix = next(
-        ((s, p) for s, p in _PREFIXES if abs(value) >= s * 0.9999995), (1.0, "")
-    )
-    return f"{value / scale:.{digits}g} {prefix}{_SYMBOLS[kind]}"
+        scale, unit = (1e-6, "um") if 0 < abs(value) < 0.9995e-4 else (1e-3, "mm")
+    elif kind in _FIXED:
+        scale, unit = _FIXED[kind]
+    else:
+        scale, prefix = next(((s, p) for s, p in _PREFIXES if abs(value) >= s * 0.9999995), (1.0, ""))
+        unit = prefix + _SYMBOLS[kind]
+    return f"{value / scale:.{digits}g} {unit}"

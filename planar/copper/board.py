@@ -32,6 +32,8 @@ HOLE_SIZES = ((60e-3, 3.2e-3), (0.0, 2.2e-3))
 """(smallest board side, mounting hole diameter), m: M3 screws on boards of 60 mm, M2 below."""
 HOLE_CLEARANCE = 1e-3
 """m, from a mounting hole to copper and to the board edge, beyond the fab's own rule."""
+FEED_KEPT_CLEAR = 2e-3
+"""m below a feed inside the loop that the legend leaves to its pads."""
 LETTER_HEIGHTS = (2.5e-3, 2e-3, 1.5e-3, 1.2e-3, 1e-3)
 """m, tried from the largest."""
 
@@ -148,11 +150,16 @@ def _hole_openings(holes: tuple[Hole, ...], levels: tuple[Level, ...], request: 
     """Mask openings round unplated holes, on every level; vias stay covered."""
     grow = 2.0 * request.fab.mask_expansion
     return tuple(
-        Marking(level, circle(hole.centre, hole.diameter + grow)) for hole in holes if not hole.plated for level in levels
+        Marking(level, circle(hole.centre, hole.diameter + grow))
+        for hole in holes
+        if not hole.plated
+        for level in levels
     )
 
 
-def _legend(layout: Layout, inside: tuple[float, float, float, float], request: DrawingRequest) -> dict[Level, list[list[Outline]]]:
+def _legend(
+    layout: Layout, inside: tuple[float, float, float, float], request: DrawingRequest
+) -> dict[Level, list[list[Outline]]]:
     """Texts and marks of the legend by level, each a list of capsules; empty where the fab prints none.
 
     `inside` is centre and size (x, y, width, height) of the loop's inside.
@@ -160,18 +167,23 @@ def _legend(layout: Layout, inside: tuple[float, float, float, float], request: 
     if not request.fab.legend:
         return {}
     x, y, width, height = inside
+    bottom = y - 0.5 * height
+    feed_inside = bottom < 0.0 < y + 0.5 * height
+    middle = 0.5 * (bottom - FEED_KEPT_CLEAR) if feed_inside else y - 0.2 * height
     stroke = request.fab.legend_min_stroke
     path = "DC SHORT INTENDED" if layout.dc_short else "NO DC SHORT"
     texts = {Level.TOP: [request.name, "TOP", path, "ORIGIN AT FEED"], Level.BOTTOM: [request.name, "BOTTOM", path]}
     legend: dict[Level, list[list[Outline]]] = {}
     for level in layout.levels:
         lines = texts[level]
-        size = next((h for h in LETTER_HEIGHTS if max(text_width(t, h, stroke=stroke) for t in lines) < 0.7 * width), None)
+        size = next(
+            (h for h in LETTER_HEIGHTS if max(text_width(t, h, stroke=stroke) for t in lines) < 0.7 * width), None
+        )
         legend[level] = []
         if size is None:
             lines, size = [level.value], LETTER_HEIGHTS[-1]
         for i, line in enumerate(lines):
-            place = (x, y - 0.2 * height - 1.8 * size * (i - 0.5 * (len(lines) - 1)))
+            place = (x, middle - 1.8 * size * (i - 0.5 * (len(lines) - 1)))
             pen = max(stroke, size / 10.0)
             legend[level].append(lettered(line, place, size, stroke=pen, mirrored=level is Level.BOTTOM))
     legend[Level.TOP] += [[mark] for mark in _origin_marks(stroke)]

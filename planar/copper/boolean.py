@@ -8,6 +8,7 @@ unsnapped coordinates and snap the result: arcs that share a circle do so only b
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Callable, Iterator, Sequence
 from enum import Enum
@@ -105,7 +106,7 @@ def _pieces(outline: Outline, other: Outline) -> Iterator[Edge]:
         for f in ordered:
             if f - kept[-1] > smallest and (f == 1.0 or 1.0 - f > smallest):
                 kept.append(f)
-        for low, high in zip(kept, kept[1:], strict=False):
+        for low, high in itertools.pairwise(kept):
             yield edge.part(low, high)
 
 

@@ -27,7 +27,8 @@ class DrawingRequest:
     """What drawing needs beside the dimensions.
 
     `end` is "via" or "open" for a guided line. `mirrored` gives the other sense of circular
-    polarisation. `masked` lists the levels under solder mask. `size_limit` (width, height) m caps the board, None leaves it free.
+    polarisation. `masked` lists the levels under solder mask. `size_limit` (width, height) m caps the
+    board, None leaves it free.
     """
 
     name: str

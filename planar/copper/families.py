@@ -55,7 +55,9 @@ def coplanar(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     end = feed[1] - 0.5 * pad_length
     clear = end - (-top + 0.5 * dimensions["trace_width"])
     if clear < dimensions["trace_width"]:
-        raise GeometryError(f"the strips end {clear * 1e3:.2f} mm from the far side of the loop, less than a trace width")
+        raise GeometryError(
+            f"the strips end {clear * 1e3:.2f} mm from the far side of the loop, less than a trace width"
+        )
     copper = list(_handed(loop_copper(dimensions, gap), request))
     pads = []
     for name, terminal, side in (("FEED-P", "signal", 1.0), ("FEED-N", "return", -1.0)):
@@ -93,13 +95,13 @@ def ring_guided(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
         top.append(circle(centre, drill + 2.0 * dimensions["via_ring"]))
         holes.append(Hole(centre, drill, True, "via"))
     islands = [Island(Level.TOP, outline, Role.LINE) for outline in united(top)]
-    islands += [Island(Level.TOP, p.outline, Role.GROUND) for p in lands if p.level is Level.TOP and p.terminal == "return"]
+    islands += [
+        Island(Level.TOP, p.outline, Role.GROUND) for p in lands if p.level is Level.TOP and p.terminal == "return"
+    ]
     islands += [Island(Level.BOTTOM, outline, Role.RADIATOR) for outline in united(bottom)]
     openings = land_openings(connector, feed, request.fab.mask_expansion)
     port = Port("feed", "vertical", Level.TOP, feed, (0.0, -1.0), 0.0, dimensions["line_width"])
-    return Drawing(
-        tuple(islands), tuple(holes), lands, (port,), openings, feed, -1, _inner_size(dimensions)
-    )
+    return Drawing(tuple(islands), tuple(holes), lands, (port,), openings, feed, -1, _inner_size(dimensions))
 
 
 FAMILIES: dict[str, Callable[[Dimensions, DrawingRequest], Drawing]] = {
@@ -140,7 +142,7 @@ def _guided_line(dimensions: Dimensions, feed: Point) -> tuple[Outline, Point]:
     lead, joins_at = _lead(dimensions, feed)
     if narrow_from <= joins_at:
         raise GeometryError(
-            f"the transformer of {dimensions['transformer_length'] * 1e3:.2f} mm is longer than the line on half the loop"
+            f"the transformer of {dimensions['transformer_length'] * 1e3:.2f} mm is longer than the line on the loop"
         )
     past = loop.between(0.0, dimensions["end_length"])
     sections = [

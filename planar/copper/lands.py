@@ -27,9 +27,7 @@ def land_outline(pad: LandPad, feed: Point, *, grown: float = 0.0) -> Outline:
 
 def land_pads(connector: Connector, feed: Point) -> tuple[Pad, ...]:
     """The connector's lands as pads, in loop coordinates with the line starting at `feed`."""
-    return tuple(
-        Pad(pad.name, Level(pad.level), land_outline(pad, feed), TERMINALS[pad.net]) for pad in connector.pads
-    )
+    return tuple(Pad(pad.name, Level(pad.level), land_outline(pad, feed), TERMINALS[pad.net]) for pad in connector.pads)
 
 
 def land_openings(connector: Connector, feed: Point, expansion: float) -> tuple[Marking, ...]:

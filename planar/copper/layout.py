@@ -118,7 +118,9 @@ class Layout:
         return replace(
             self,
             islands=tuple(replace(island, net=net) for island, net in zip(islands, nets, strict=True)),
-            holes=tuple(replace(hole, net=_net_at(hole.centre, islands, nets) if hole.plated else "") for hole in holes),
+            holes=tuple(
+                replace(hole, net=_net_at(hole.centre, islands, nets) if hole.plated else "") for hole in holes
+            ),
             pads=tuple(replace(pad, net=nets[_island_under(pad, islands)]) for pad in pads),
             mask_openings=_normalised(self.mask_openings),
             legend=_normalised(self.legend),

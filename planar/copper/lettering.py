@@ -5,6 +5,8 @@ Every stroke becomes a capsule outline; a fab's legend printer and every file fo
 
 from __future__ import annotations
 
+import itertools
+
 from planar.copper.arc import Point
 from planar.copper.outline import Outline
 from planar.copper.shapes import capsule
@@ -38,7 +40,10 @@ def lettered(text: str, position: Point, height: float, *, stroke: float, mirror
     strokes are written as "?".
     """
     unit = (height - stroke) / CELL_HEIGHT
-    x0, y0 = position[0] - 0.5 * text_width(text, height, stroke=stroke) + 0.5 * stroke, position[1] - 0.5 * (height - stroke)
+    x0, y0 = (
+        position[0] - 0.5 * text_width(text, height, stroke=stroke) + 0.5 * stroke,
+        position[1] - 0.5 * (height - stroke),
+    )
     capsules = []
     for i, letter in enumerate(text.upper()):
         for polyline in _STROKES.get(letter, _STROKES["?"]).split("|"):
@@ -46,7 +51,7 @@ def lettered(text: str, position: Point, height: float, *, stroke: float, mirror
             points = [(x0 + (i * ADVANCE + cx) * unit, y0 + cy * unit) for cx, cy in cells]
             if mirrored:
                 points = [(2.0 * position[0] - x, y) for x, y in points]
-            capsules += [capsule(a, b, stroke) for a, b in zip(points, points[1:], strict=False)]
+            capsules += [capsule(a, b, stroke) for a, b in itertools.pairwise(points)]
     return capsules
 
 

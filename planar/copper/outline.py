@@ -89,7 +89,7 @@ class Outline:
 
     def translated(self, dx: float, dy: float) -> Outline:
         """Moved by (dx, dy) m."""
-        return Outline(self.vertices + (dx, dy, 0.0))
+        return Outline(self.vertices + np.array([dx, dy, 0.0]))
 
     def rotated(self, angle: float) -> Outline:
         """Turned counter-clockwise about the origin by `angle` rad."""

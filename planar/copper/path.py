@@ -115,7 +115,9 @@ def loop_path(width: float, height: float, corner_radius: float) -> Path:
     """
     a, b, r = 0.5 * width, 0.5 * height, corner_radius
     if not 0.0 <= r <= min(a, b) * (1.0 + 1e-12):
-        raise GeometryError(f"a corner radius of {r * 1e3:.3f} mm does not fit {width * 1e3:.3f} by {height * 1e3:.3f} mm")
+        raise GeometryError(
+            f"a corner radius of {r * 1e3:.3f} mm does not fit {width * 1e3:.3f} by {height * 1e3:.3f} mm"
+        )
     quarter = math.tan(math.pi / 8.0)
     corners = [(-a, b), (-a, -b), (a, -b), (a, b)]
     along = [(-1.0, 0.0), (0.0, -1.0), (1.0, 0.0), (0.0, 1.0)]

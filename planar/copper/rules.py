@@ -10,7 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 
-from shapely.geometry import MultiPolygon, Polygon
+from shapely.geometry import MultiPolygon
 from shapely.geometry import Point as ShapelyPoint
 from shapely.geometry.base import BaseGeometry
 from shapely.ops import unary_union
@@ -22,7 +22,6 @@ from planar.units import show
 
 SLACK = 1e-8
 """m, ten grid steps: rounding never makes a finding."""
-MITRED = {"join_style": "mitre", "mitre_limit": 5.0}
 
 
 def fab_findings(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None = None) -> tuple[Finding, ...]:
@@ -67,12 +66,16 @@ def _tracks_and_gaps(layout: Layout, fab: Fab) -> list[Finding]:
     return findings
 
 
+def _grown(copper: BaseGeometry, by: float) -> BaseGeometry:
+    return copper.buffer(by, join_style="mitre", mitre_limit=5.0)
+
+
 def _lost_when_opened(copper: BaseGeometry, width: float) -> BaseGeometry:
-    return copper.difference(copper.buffer(-0.5 * width, **MITRED).buffer(0.5 * width * 1.0001, **MITRED))
+    return copper.difference(_grown(_grown(copper, -0.5 * width), 0.5 * width * 1.0001))
 
 
 def _filled_when_closed(copper: BaseGeometry, width: float) -> BaseGeometry:
-    return copper.buffer(0.5 * width, **MITRED).buffer(-0.5 * width * 1.0001, **MITRED).difference(copper)
+    return _grown(_grown(copper, 0.5 * width), -0.5 * width * 1.0001).difference(copper)
 
 
 def _smallest(
@@ -80,7 +83,7 @@ def _smallest(
 ) -> tuple[float, str] | None:
     """Smallest width below `limit` that leaves a residue, and where; None when there is none."""
 
-    def worst(width: float) -> Polygon | None:
+    def worst(width: float) -> BaseGeometry | None:
         left = residue(copper, width)
         parts = list(left.geoms) if isinstance(left, MultiPolygon) else [left]
         # slivers at acute corners are smaller than a square of half the width

@@ -47,7 +47,9 @@ def capsule(start: Point, end: Point, width: float) -> Outline:
     nx, ny = -(end[1] - start[1]) * 0.5 * width / length, (end[0] - start[0]) * 0.5 * width / length
     right, left = (start[0] - nx, start[1] - ny), (start[0] + nx, start[1] + ny)
     far_right, far_left = (end[0] - nx, end[1] - ny), (end[0] + nx, end[1] + ny)
-    return Outline.from_edges([Edge(right, far_right), Edge(far_right, far_left, 1.0), Edge(far_left, left), Edge(left, right, 1.0)])
+    return Outline.from_edges(
+        [Edge(right, far_right), Edge(far_right, far_left, 1.0), Edge(far_left, left), Edge(left, right, 1.0)]
+    )
 
 
 def turned_rectangle(centre: Point, along: Point, *, length: float, width: float) -> Outline:

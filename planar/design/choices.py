@@ -81,7 +81,11 @@ def choose(brief: Brief, library: Library) -> Choices:
     laminate = _laminate(brief, library)
     _note_laminate(brief, laminate, reasons)
     reasons.append("thickness is that of the dielectric; finished copper and mask come on top")
-    plated = f"the fab plates {show(fab.plating, 'length', 3)} on top of it" if fab.plating else "the fab plates nothing on it"
+    plated = (
+        f"the fab plates {show(fab.plating, 'length', 3)} on top of it"
+        if fab.plating
+        else "the fab plates nothing on it"
+    )
     reasons.append(f"copper is the base foil; {plated}")
     board = BoardChoice(laminate, brief.board.thickness, brief.board.copper, family.levels, _mask(brief, family))
     around = Surroundings(_cover(brief.surroundings.cover, library), _reflector(brief))
@@ -174,7 +178,9 @@ def _cover(spec: CoverSpec | None, library: Library) -> CoverChoice | None:
         return None
     if isinstance(spec.material, InlineMaterial):
         given = (("eps_r", "given in the brief"), ("tan_d", "given in the brief"))
-        cover = Cover("inline", "cover given in the brief", spec.material.eps_r, 0.05, spec.material.tan_d, 0.3, 1e9, given)
+        cover = Cover(
+            "inline", "cover given in the brief", spec.material.eps_r, 0.05, spec.material.tan_d, 0.3, 1e9, given
+        )
     else:
         cover = library.cover(spec.material)
     return CoverChoice(cover, spec.air_gap, spec.thickness)

@@ -138,7 +138,9 @@ def _cautions(design: Design) -> list[Finding]:
     if not design.given:
         error = show(choices.family.frequency_error, "fraction", 2)
         advice = "treat these dimensions as a start; verify before ordering"
-        findings.append(Finding("first-order sizing", "dimensions", f"frequency within {error}", "field solution", advice))
+        findings.append(
+            Finding("first-order sizing", "dimensions", f"frequency within {error}", "field solution", advice)
+        )
     if choices.family.feed == "coax":
         got = "not predicted by line formulas: the loop trace is a narrow ground and carries antenna current"
         findings.append(Finding("match", "target.match", got, f"{choices.brief.target.match_db:g} dB"))

@@ -180,8 +180,8 @@ def _guided(choices: Choices, dimensions: Dimensions, resistance: float, setting
     if narrow < choices.fab.min_track:
         least = show(choices.fab.min_track, "length")
         raise SynthesisError(
-            f"the transformer of {impedance:.0f} ohm would be {show(narrow, 'length', 3)} wide, the fab etches {least}: "
-            "choose a thicker board, a lower permittivity or a finer fab"
+            f"the transformer of {impedance:.0f} ohm would be {show(narrow, 'length', 3)} wide, the fab etches "
+            f"{least}: choose a thicker board, a lower permittivity or a finer fab"
         )
     section = microstrip(narrow, settings)
     gap = _loop_gap(choices)

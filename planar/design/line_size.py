@@ -62,7 +62,9 @@ def line_settings(choices: Choices) -> LineSettings:
     cover = layers_of(stackup.dielectrics_above("top", frequency))
     substrate = Substrate(slab.thickness, eps.real, -eps.imag / eps.real, cover)
     copper = stackup.conductor
-    return LineSettings(substrate, Conductor(stackup.finished_copper, copper.conductivity, copper.roughness_rq), frequency)
+    return LineSettings(
+        substrate, Conductor(stackup.finished_copper, copper.conductivity, copper.roughness_rq), frequency
+    )
 
 
 def microstrip_width(impedance: float, settings: LineSettings) -> float:
@@ -85,10 +87,14 @@ def strip_width_and_gap(impedance: float, settings: LineSettings, least: tuple[f
     narrowest = max(STRIP_WIDTHS[0], least[0])
     gaps = [gap for gap in sorted(STRIP_GAPS) if gap >= least[1] - _SLACK]
     if not gaps:
-        raise SynthesisError(f"coplanar strips: the fab's smallest gap, {show(least[1], 'length')}, is too wide for any")
+        raise SynthesisError(
+            f"coplanar strips: the fab's smallest gap, {show(least[1], 'length')}, is too wide for any"
+        )
 
     def widest(gap: float) -> float:
-        limits = line_kind("coplanar-strips").width_limits(gap, settings.substrate, settings.conductor, settings.frequency)
+        limits = line_kind("coplanar-strips").width_limits(
+            gap, settings.substrate, settings.conductor, settings.frequency
+        )
         return max(min(STRIP_WIDTHS[1], limits[1]), narrowest)
 
     def lowest(gap: float) -> float:
@@ -100,8 +106,8 @@ def strip_width_and_gap(impedance: float, settings: LineSettings, least: tuple[f
         low, high = lowest(gaps[0]), _strip_impedance(narrowest, gaps[-1], settings)
         raise SynthesisError(
             f"coplanar strips of {impedance:.0f} ohm: with gaps from {show(gaps[0], 'length')} and widths of "
-            f"{show(narrowest, 'length')} to {show(widest(gaps[0]), 'length', 3)} this board gives {low:.0f} to {high:.0f} ohm; "
-            "change target.impedance, the laminate or the fab"
+            f"{show(narrowest, 'length')} to {show(widest(gaps[0]), 'length', 3)} this board gives {low:.0f} to "
+            f"{high:.0f} ohm; change target.impedance, the laminate or the fab"
         )
     line = width_for_impedance(
         "coplanar-strips",
@@ -132,7 +138,9 @@ def design_lines(dimensions: dict[str, float], choices: Choices, settings: LineS
         return (_described("strip_width", line, "the other strip", choices, settings),)
     names = [name for name in ("line_width", "transformer_width", "end_width") if name in dimensions]
     reference = f"loop trace on bottom, {show(dimensions['trace_width'], 'length', 4)} wide"
-    return tuple(_described(name, microstrip(dimensions[name], settings), reference, choices, settings) for name in names)
+    return tuple(
+        _described(name, microstrip(dimensions[name], settings), reference, choices, settings) for name in names
+    )
 
 
 def rounded(length: float) -> float:

@@ -101,9 +101,7 @@ def resonant_loop(frequency: float, trace: float, shape: LoopShape, around: Loop
         if abs(longer - perimeter) < _CLOSE * perimeter:
             break
         perimeter = longer
-    return LoopEstimate(
-        frequency, perimeter, perimeter / wavelength, estimate.resistance, estimate.eps_eff
-    )
+    return LoopEstimate(frequency, perimeter, perimeter / wavelength, estimate.resistance, estimate.eps_eff)
 
 
 def resonant_frequency(perimeter: float, trace: float, shape: LoopShape, around: LoopSurroundings) -> LoopEstimate:
@@ -128,7 +126,11 @@ def _resonance(perimeter: float, trace: float, shape: LoopShape, around: LoopSur
     resistance = shape.corner + (1.0 - shape.corner) * SQUARE_RESISTANCE
     wavelengths = circle.perimeter * length
     return LoopEstimate(
-        wavelengths * SPEED_OF_LIGHT / perimeter, perimeter, wavelengths, circle.resistance * resistance, setting.eps_eff
+        wavelengths * SPEED_OF_LIGHT / perimeter,
+        perimeter,
+        wavelengths,
+        circle.resistance * resistance,
+        setting.eps_eff,
     )
 
 

@@ -23,7 +23,7 @@ def write_stackup_json(sheet: StackupSheet, path: Path) -> None:
 def check_stackup(sheet: StackupSheet, path: Path) -> None:
     """Read the JSON at `path` again. Raises `HandoffError` naming what differs from `sheet`."""
     got, expected = _content(read_stackup_json(path)), _content(sheet)
-    wrong = [f"{path.name}: {key} is {got[key]}, expected {expected[key]}" for key in expected if got[key] != expected[key]]
+    wrong = [f"{path.name}: {k} is {got[k]}, expected {expected[k]}" for k in expected if got[k] != expected[k]]
     if wrong:
         raise HandoffError("\n".join(wrong))
 

@@ -122,7 +122,7 @@ def _row(layer: Layer, stackup: Stackup, frequency: float) -> SheetLayer:
         layer.thickness,
         stackup.base_copper if layer.kind is LayerKind.COPPER else None,
         None if permittivity is None else permittivity.real,
-        None if permittivity is None else -permittivity.imag / permittivity.real,
+        None if permittivity is None else abs(permittivity.imag) / permittivity.real,
         layer.thickness_tolerance or None,
         layer.eps_r_tolerance or None,
         layer.tan_d_tolerance or None,

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from planar.errors import Fault, LibraryError
-from planar.library.reading import Key, Table, choice, count, list_of, measure, nearest, number, read, text
+from planar.library.reading import Key, Rows, Table, choice, count, list_of, measure, nearest, number, read, text
 
 TRAITS = ("corner", "rectangle", "circular", "via", "open")
 """What a design may have that makes a dimension needed."""
@@ -104,7 +104,7 @@ def _sourced(value: Key, *, required: bool = True) -> Table:
 
 
 _SHARE = Key(number(1e-4, 0.5))
-_HEAD = {
+_HEAD: dict[str, Key | Table | Rows] = {
     "title": Key(text),
     "summary": Key(text),
     "levels": Key(count(1, 2)),
@@ -131,8 +131,8 @@ def read_family(key: str, raw: Mapping[str, Any], where: str) -> Family:
     shape = Table(
         {
             **_HEAD,
-            "dimensions": Table({name: _DIMENSION for name in _names(raw, "dimensions")}),
-            "start": Table({name: _START for name in _names(raw, "start")}),
+            "dimensions": Table(dict.fromkeys(_names(raw, "dimensions"), _DIMENSION)),
+            "start": Table(dict.fromkeys(_names(raw, "start"), _START)),
         }
     )
     values = read(raw, shape, where)

@@ -68,7 +68,9 @@ def print_design(design: Design, folder: Path | None = None) -> None:
     console = _console()
     choices, bare = design.choices, design.bare_loop
     polarisation = choices.brief.target.polarisation
-    console.print(f"{design.name}: {choices.family.key}, {choices.brief.antenna.shape}, {polarisation}", highlight=False)
+    console.print(
+        f"{design.name}: {choices.family.key}, {choices.brief.antenna.shape}, {polarisation}", highlight=False
+    )
     width, height = design.layout.size
     console.print(
         f"bare loop {bare.perimeter_wavelengths:.3f} wavelengths round, {bare.resistance:.0f} ohm at "
