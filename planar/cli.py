@@ -7,6 +7,7 @@ imports stand inside the commands, so that `planar --help` answers at once.
 from __future__ import annotations
 
 import functools
+import io
 import json
 import sys
 from collections.abc import Callable
@@ -51,6 +52,8 @@ def main() -> None:
 
     Start with `planar new NAME`, edit the brief, then `planar make NAME.toml`.
     """
+    if isinstance(sys.stdout, io.TextIOWrapper):  # a name the terminal has no letters for must not end the run
+        sys.stdout.reconfigure(errors="backslashreplace")
 
 
 @main.command()
@@ -97,7 +100,7 @@ def make(brief: Path, outputs: Path, library_folder: Path | None, as_json: bool)
 @click.option("--laminate", multiple=True, help="Library key; may be repeated. Default fr4-general.")
 @click.option("--height", multiple=True, help='Dielectric thickness such as "1.6 mm". Default: those sold.')
 @click.option("--eps-r", type=float, help="Relative permittivity, instead of --laminate.")
-@click.option("--tan-d", type=float, default=0.0, show_default=True, help="Loss tangent that goes with --eps-r.")
+@click.option("--tan-d", type=float, help="Loss tangent that goes with --eps-r. Default: none.")
 @click.option("--frequency", default="1 GHz", show_default=True)
 @click.option("--copper", help="Finished copper. Default: 35 um base and the fab's plating; none with --eps-r.")
 @click.option("--gap", help="Gap of coplanar strips. Default: the widest that gives a usable width.")
@@ -110,11 +113,14 @@ def make(brief: Path, outputs: Path, library_folder: Path | None, as_json: bool)
 @refusing
 def lines(library_folder: Path | None, as_json: bool, as_csv: bool, plot: Path | None, **asked: Any) -> None:
     """Trace widths for impedances across laminates and thicknesses."""
+    if as_json and as_csv:
+        raise click.UsageError("--json and --csv are two answers: choose one")
     from planar import pipeline
+    from planar.design.line_question import LineQuestion
     from planar.library import Library
     from planar.report import console
 
-    rows = pipeline.lines(pipeline.LineQuestion(**asked), Library.open(library_folder))
+    rows = pipeline.lines(LineQuestion(**asked), Library.open(library_folder))
     if plot is not None:
         pipeline.plot_lines(rows, plot)
     if as_json:

@@ -9,18 +9,19 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Callable
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import Any
 
 from planar import __version__
-from planar.brief import read_brief, starter_brief, write_brief
+from planar.brief import Brief, read_brief, starter_brief, write_brief
 from planar.copper.layout import Layout
 from planar.design.design import Design, make_design
+from planar.design.line_question import LineQuestion, answer
 from planar.design.line_size import DesignLine
-from planar.design.line_table import LineRequest, LineRow, Material, line_rows
-from planar.errors import BriefError, Fault, HandoffError, UnitError
+from planar.design.line_table import LineRow
+from planar.errors import HandoffError, SynthesisError
 from planar.handoff import (
     ImpedanceLine,
     SheetFacts,
@@ -35,13 +36,8 @@ from planar.handoff import (
 )
 from planar.library import KINDS, Library
 from planar.library.reading import parse
-from planar.units import quantity, show
 
 Progress = Callable[[str], None]
-BASE_COPPER = 35e-6
-"""m, foil of a board whose copper nobody stated (common practice, no source)."""
-IMPEDANCES = (50.0, 75.0, 100.0)
-"""ohm, of `planar lines` where none is asked for."""
 
 
 @dataclass(frozen=True)
@@ -57,7 +53,7 @@ def make(brief_path: Path, library: Library, outputs: Path, progress: Progress =
     progress("reading the brief")
     brief = read_brief(brief_path, library)
     progress("sizing and drawing")
-    design = make_design(brief, library, str(brief_path))
+    design = _designed(brief, library, brief_path)
     folder = outputs / brief.name
     progress("writing files")
     with packed(folder) as fresh:
@@ -69,7 +65,14 @@ def make(brief_path: Path, library: Library, outputs: Path, progress: Progress =
 
 def size(brief_path: Path, library: Library) -> Design:
     """Dimensions and copper of a brief, nothing written."""
-    return make_design(read_brief(brief_path, library), library, str(brief_path))
+    return _designed(read_brief(brief_path, library), library, brief_path)
+
+
+def _designed(brief: Brief, library: Library, path: Path) -> Design:
+    try:
+        return make_design(brief, library, str(path))
+    except SynthesisError as error:  # a refusal names the file, as a fault does
+        raise SynthesisError(f"{path}: {error.reason}", error.findings, error.changes) from error
 
 
 def new_brief(path: Path) -> Path:
@@ -86,52 +89,14 @@ def new_brief(path: Path) -> Path:
     return target
 
 
-@dataclass(frozen=True)
-class LineQuestion:
-    """The options of `planar lines` as they were written; texts carry their units."""
-
-    kind: str
-    impedance: tuple[str, ...]
-    laminate: tuple[str, ...]
-    height: tuple[str, ...]
-    eps_r: float | None
-    tan_d: float
-    frequency: str
-    copper: str | None
-    gap: str | None
-    mask: bool
-    fab: str
-
-
 def lines(question: LineQuestion, library: Library) -> list[LineRow]:
-    """Rows of widths for every laminate, height and impedance asked for. Raises `BriefError` with all faults."""
-    ask = _Options()
-    frequency = ask.read("frequency", question.frequency, "frequency", (1e6, 100e9))
-    impedances = [ask.read("impedance", text, "impedance", (5.0, 1000.0)) for text in question.impedance]
-    heights = [ask.read("height", text, "length", (0.01e-3, 0.02)) for text in question.height]
-    gap = None if question.gap is None else ask.read("gap", question.gap, "length", (1e-6, 0.02))
-    copper = None if question.copper is None else ask.read("copper", question.copper, "length", (0.0, 0.5e-3))
-    if question.gap is not None and question.kind == "microstrip":
-        ask.fault("gap", question.gap, "only --kind coplanar-strips has a gap")
-    if question.eps_r is not None:
-        if not 1.0 <= question.eps_r <= 20.0:
-            ask.fault("eps-r", f"{question.eps_r:g}", "a relative permittivity is 1 to 20")
-        if not 0.0 <= question.tan_d <= 0.2:
-            ask.fault("tan-d", f"{question.tan_d:g}", "a loss tangent is 0 to 0.2")
-        if question.laminate:
-            ask.fault("laminate", question.laminate[0], "give --laminate or --eps-r, not both")
-        if not heights:
-            ask.fault("height", "(missing)", 'needed with --eps-r: --height "1.6 mm"')
-    ask.raise_faults()
-    fab = library.fab(question.fab)
-    thickness = copper if copper is not None else (BASE_COPPER + fab.plating if question.eps_r is None else 0.0)
-    request = LineRequest(question.kind, frequency, thickness, fab, question.mask, gap)
-    return list(line_rows(_materials(question, heights, frequency, library), impedances or IMPEDANCES, request))
+    """Rows of line widths for `question`. Raises `BriefError` with all faults of the options, and `LibraryError`."""
+    return answer(question, library)
 
 
 def plot_lines(rows: list[LineRow], path: Path) -> None:
     """Write width over impedance as an SVG. Raises `HandoffError` when it cannot be written."""
-    from planar.report.line_plot import write_line_plot
+    from planar.report.line_plot import write_line_plot  # noqa: PLC0415  matplotlib is slow to load, few ask for a plot
 
     if path.suffix.lower() != ".svg":
         raise HandoffError(f"{path}: the plot is an SVG, name it with .svg")
@@ -139,45 +104,6 @@ def plot_lines(rows: list[LineRow], path: Path) -> None:
         write_line_plot(rows, path)
     except OSError as error:
         raise HandoffError(f"cannot write {path}: {error.strerror}") from error
-
-
-def _materials(
-    question: LineQuestion, heights: list[float], frequency: float, library: Library
-) -> list[tuple[Material, float]]:
-    if question.eps_r is not None:
-        material = Material("given", question.eps_r, question.tan_d)
-        return [(material, height) for height in heights]
-    laminates = [library.laminate(key) for key in question.laminate or ("fr4-general",)]
-    return [
-        (Material.of(laminate, frequency), height)
-        for laminate in laminates
-        for height in heights or laminate.thicknesses
-    ]
-
-
-class _Options:
-    """Reads command-line texts, collecting the faults of all of them."""
-
-    def __init__(self) -> None:
-        self.faults: list[Fault] = []
-
-    def read(self, option: str, text: str, kind: str, span: tuple[float, float]) -> float:
-        """SI value of `text`; a fault, and the lower end, when it is none or outside `span`."""
-        try:
-            value = quantity(text, kind)
-        except UnitError as error:
-            self.fault(option, text, str(error))
-            return span[0]
-        if not span[0] <= value <= span[1]:
-            self.fault(option, text, f"from {show(span[0], kind)} to {show(span[1], kind)}")
-        return value
-
-    def fault(self, option: str, text: str, expected: str) -> None:
-        self.faults.append(Fault("command line", f"--{option}", text, expected))
-
-    def raise_faults(self) -> None:
-        if self.faults:
-            raise BriefError(self.faults)
 
 
 def library_entries(library: Library, kind: str | None = None) -> dict[str, list[dict[str, str]]]:
@@ -191,12 +117,21 @@ def library_entries(library: Library, kind: str | None = None) -> dict[str, list
 def library_entry(library: Library, kind: str, key: str) -> dict[str, Any]:
     """One entry with every value and the source beside it."""
     raw = parse(library.source(kind, key))
-    values = {}
-    for name, table in raw.items():
-        if isinstance(table, dict) and "source" in table:
-            rest = {k: v for k, v in table.items() if k != "source"}
-            values[name] = {"value": rest.get("value", rest) if len(rest) == 1 else rest, "source": table["source"]}
+    values = {name: value for name, value in _sourced(raw, "") if name != "title"}
     return _entry_head(library, kind, key) | {"values": values}
+
+
+def _sourced(table: Mapping[str, Any], above: str) -> Iterator[tuple[str, dict[str, Any]]]:
+    """Dotted name, value and source of everything in `table`; the source is empty where the entry states none."""
+    for name, value in table.items():
+        path = f"{above}{name}"
+        if not isinstance(value, dict):
+            yield path, {"value": value, "source": ""}
+        elif "source" in value:
+            rest = {k: v for k, v in value.items() if k != "source"}
+            yield path, {"value": rest.get("value", rest) if len(rest) == 1 else rest, "source": value["source"]}
+        else:
+            yield from _sourced(value, f"{path}.")
 
 
 def _entry_head(library: Library, kind: str, key: str) -> dict[str, str]:
@@ -213,9 +148,9 @@ def write_pack(design: Design, folder: Path) -> None:
     sheet = _sheet(design)
     write_stackup_json(sheet, fabrication / "stackup.json")
     write_stackup_markdown(sheet, fabrication / "stackup.md")
-    (folder / "brief.toml").write_text(write_brief(design.choices.brief), encoding="utf-8")
+    (folder / "brief.toml").write_bytes(write_brief(design.choices.brief).encode("utf-8"))
     summary = json.dumps(design_facts(design), indent=2, ensure_ascii=False) + "\n"
-    (folder / "design.json").write_text(summary, encoding="utf-8")
+    (folder / "design.json").write_bytes(summary.encode("utf-8"))
 
 
 def check_pack(design: Design, folder: Path) -> None:

@@ -98,7 +98,7 @@ def _pieces(outline: Outline, other: Outline) -> Iterator[Edge]:
     for edge in outline.edges:
         cuts = {0.0, 1.0}
         for opposite in other.edges:
-            for point in _meeting_points(edge, opposite):
+            for point in meeting_points(edge, opposite):
                 cuts.add(edge.fraction_of(point))
         ordered = [f for f in sorted(cuts) if 0.0 <= f <= 1.0]
         smallest = TOLERANCE / edge.length
@@ -110,7 +110,7 @@ def _pieces(outline: Outline, other: Outline) -> Iterator[Edge]:
             yield edge.part(low, high)
 
 
-def _meeting_points(edge: Edge, other: Edge) -> list[Point]:
+def meeting_points(edge: Edge, other: Edge) -> list[Point]:
     """Points of both edges: crossings, and end points of one that lie on the other."""
     points = [p for p in (other.start, other.end) if _on(edge, p)]
     points += [p for p in (edge.start, edge.end) if _on(other, p)]
@@ -143,19 +143,27 @@ def _line_arc(line: Edge, arc: Edge) -> list[Point]:
     away = math.dist(foot, (cx, cy))
     if away > arc.radius + TOLERANCE:
         return []
-    half = math.sqrt(max(0.0, (arc.radius - away) * (arc.radius + away)))
+    half = _half_chord(arc.radius, away)
     return [(foot[0] + s * half * ux, foot[1] + s * half * uy) for s in (-1.0, 1.0)]
 
 
 def _arc_arc(a: Edge, b: Edge) -> list[Point]:
+    if a.radius > b.radius:  # from the smaller circle the points are exact to rounding of the smaller radius
+        a, b = b, a
     (ax, ay), (bx, by) = a.centre, b.centre
     d = math.dist(a.centre, b.centre)
     if d < TOLERANCE or d > a.radius + b.radius + TOLERANCE or d < abs(a.radius - b.radius) - TOLERANCE:
         return []
     along = (d * d + (a.radius - b.radius) * (a.radius + b.radius)) / (2.0 * d)
-    half = math.sqrt(max(0.0, (a.radius - along) * (a.radius + along)))
+    half = _half_chord(a.radius, along)
     ux, uy = (bx - ax) / d, (by - ay) / d
     return [(ax + along * ux - s * half * uy, ay + along * uy + s * half * ux) for s in (-1.0, 1.0)]
+
+
+def _half_chord(radius: float, away: float) -> float:
+    """Half the chord `away` m from the centre of a circle; 0 where it only touches, which rounding would split."""
+    squared = (radius - away) * (radius + away)
+    return math.sqrt(squared) if squared > 2.0 * TOLERANCE * radius else 0.0
 
 
 _CROSSINGS: dict[tuple[bool, bool], Callable[[Edge, Edge], list[Point]]] = {

@@ -107,11 +107,12 @@ class Outline:
         No chord is further than `chord_error` m from its arc; the first point is not repeated.
         """
         points: list[Point] = []
+        fewest = 2 if len(self) == 2 else 1  # two arcs alone must not collapse onto their common chord
         for edge in self.edges:
             count = 1
             if edge.bulge != 0.0:
                 half_step = math.acos(max(0.0, 1.0 - chord_error / edge.radius))
-                count = max(1, math.ceil(abs(edge.angle) / (2.0 * half_step)))
+                count = max(fewest, math.ceil(abs(edge.angle) / (2.0 * half_step)))
             points += [edge.point(i / count) for i in range(count)]
         return np.array(points)
 

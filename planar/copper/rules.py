@@ -16,12 +16,13 @@ from shapely.geometry.base import BaseGeometry
 from shapely.ops import unary_union
 
 from planar.copper.layout import Hole, Layout
+from planar.copper.outline import CHECK_CHORD
 from planar.errors import Finding, Severity
 from planar.library.records import Fab
 from planar.units import show
 
-SLACK = 1e-8
-"""m, ten grid steps: rounding never makes a finding."""
+SLACK = CHECK_CHORD + 1e-8
+"""m, chord error of the flattened copies and ten grid steps: copper drawn at the rule never makes a finding."""
 
 
 def fab_findings(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None = None) -> tuple[Finding, ...]:
@@ -90,7 +91,7 @@ def _smallest(
         parts = [part for part in parts if part.area > (0.5 * width) ** 2]
         return max(parts, key=lambda part: part.area, default=None)
 
-    found = worst(limit * (1.0 - 1e-4))
+    found = worst(limit - SLACK)
     if found is None:
         return None
     low, high = 0.0, limit
@@ -130,7 +131,7 @@ def _plated(layout: Layout, hole: Hole, fab: Fab, where: str) -> list[Finding]:
     for level in layout.levels:
         around = [shape for outline in layout.copper(level) if (shape := outline.shape()).contains(centre)]
         ring = around[0].exterior.distance(centre) - 0.5 * hole.diameter if around else 0.0
-        if ring < fab.min_annular_ring * (1.0 - 1e-3):  # the pad is flattened to 1 um
+        if ring < fab.min_annular_ring - SLACK:
             advice = f"give the hole a pad of {_mm(hole.diameter + 2.0 * fab.min_annular_ring)}"
             place = f"{where}, {level.value}"
             limit = _mm(fab.min_annular_ring)
@@ -144,7 +145,7 @@ def _edge_distance(layout: Layout, fab: Fab) -> list[Finding]:
     for island in layout.islands:
         copper = island.outline.shape()
         distance = board.exterior.distance(copper) if board.contains(copper) else 0.0
-        if distance < fab.copper_to_routed_edge * (1.0 - 1e-3):
+        if distance < fab.copper_to_routed_edge - SLACK:
             where = f"{island.role.value} on {island.level.value}"
             limit = _mm(fab.copper_to_routed_edge)
             advice = "enlarge the board or make the antenna smaller"
@@ -159,7 +160,7 @@ def _mask_webs(layout: Layout, fab: Fab) -> list[Finding]:
         openings = [m.outline.shape() for m in layout.mask_openings if m.level == level]
         webs = [a.distance(b) for i, a in enumerate(openings) for b in openings[:i]]
         narrow = min((web for web in webs if web > 0.0), default=math.inf)
-        if fab.mask and narrow < fab.mask_web * (1.0 - 1e-3):
+        if fab.mask and narrow < fab.mask_web - SLACK:
             where = f"mask {level.value}"
             advice = "the fab may join the two openings; that is harmless here"
             findings.append(Finding("mask web", where, _mm(narrow), _mm(fab.mask_web), advice, Severity.NOTE))

@@ -18,6 +18,7 @@ from planar.errors import SynthesisError
 from planar.lines.line import Line, analyse, line_kind, wave
 from planar.lines.records import Conductor, Substrate
 from planar.lines.synthesis import Sensitivities, sensitivities, width_for_impedance
+from planar.stackup import loss_tangent
 from planar.units import show
 
 STEP = 1e-5
@@ -60,7 +61,7 @@ def line_settings(choices: Choices) -> LineSettings:
     slab = stackup.substrate
     eps = slab.permittivity(frequency)
     cover = layers_of(stackup.dielectrics_above("top", frequency))
-    substrate = Substrate(slab.thickness, eps.real, -eps.imag / eps.real, cover)
+    substrate = Substrate(slab.thickness, eps.real, loss_tangent(eps), cover)
     copper = stackup.conductor
     return LineSettings(
         substrate, Conductor(stackup.finished_copper, copper.conductivity, copper.roughness_rq), frequency

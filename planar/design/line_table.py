@@ -16,6 +16,7 @@ from planar.lines.line import Line
 from planar.lines.records import Conductor, Substrate
 from planar.lines.static_spectral import DielectricLayer
 from planar.lines.synthesis import sensitivities, width_for_impedance
+from planar.stackup import loss_tangent
 from planar.units import show
 
 
@@ -33,7 +34,7 @@ class Material:
     def of(cls, laminate: Laminate, frequency: float) -> Material:
         """The laminate at `frequency` Hz."""
         eps = laminate.model.permittivity(frequency)
-        return cls(laminate.key, eps.real, -eps.imag / eps.real, laminate.conductivity, laminate.roughness_rq)
+        return cls(laminate.key, eps.real, loss_tangent(eps), laminate.conductivity, laminate.roughness_rq)
 
 
 @dataclass(frozen=True)
@@ -110,7 +111,7 @@ def _settings(material: Material, height: float, request: LineRequest) -> LineSe
     cover: tuple[DielectricLayer, ...] = ()
     if request.masked and fab.mask:
         eps = fab.mask_model.permittivity(request.frequency)
-        cover = (DielectricLayer(fab.mask_thickness, eps.real, -eps.imag / eps.real),)
+        cover = (DielectricLayer(fab.mask_thickness, eps.real, loss_tangent(eps)),)
     substrate = Substrate(height, material.eps_r, material.tan_d, cover)
     return LineSettings(substrate, Conductor(request.thickness, material.conductivity, material.rq), request.frequency)
 

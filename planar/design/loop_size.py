@@ -14,7 +14,7 @@ from planar.copper.layout import Level
 from planar.design.thin_loop import STRIP_TO_WIRE, LoopSetting, resonance, slab_relief, square_perimeter
 from planar.errors import RangeError
 from planar.lines.static_spectral import DielectricLayer
-from planar.stackup import SlabStack, Stackup
+from planar.stackup import SlabStack, Stackup, loss_tangent
 from planar.units import SPEED_OF_LIGHT, show
 
 SQUARE_RESISTANCE = 0.91
@@ -83,7 +83,7 @@ class LoopSurroundings:
 
 def layers_of(stack: SlabStack) -> tuple[DielectricLayer, ...]:
     """Slabs as layers with a real permittivity and a loss tangent, nearest first."""
-    return tuple(DielectricLayer(s.thickness, s.eps_r.real, -s.eps_r.imag / s.eps_r.real) for s in stack.slabs)
+    return tuple(DielectricLayer(s.thickness, s.eps_r.real, loss_tangent(s.eps_r)) for s in stack.slabs)
 
 
 def resonant_loop(frequency: float, trace: float, shape: LoopShape, around: LoopSurroundings) -> LoopEstimate:

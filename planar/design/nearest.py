@@ -6,6 +6,7 @@ designed and passed every rule; what was not tried is not suggested.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterator
 
 from planar.brief import Brief
@@ -88,5 +89,12 @@ def _higher_band(brief: Brief, library: Library, works: Works) -> Iterator[str]:
     while high / low > 1.01:
         middle = (low * high) ** 0.5
         low, high = (low, middle) if works(moved(middle)) else (middle, high)
-    lowest = show(brief.target.band[0] * high, "frequency", 3)
-    yield f"the same brief works for a band from {lowest} up"
+    lowest = _rounded_up(brief.target.band[0] * high)
+    if works(moved(lowest / brief.target.band[0])):
+        yield f"the same brief works for a band from {show(lowest, 'frequency', 3)} up"
+
+
+def _rounded_up(frequency: float) -> float:
+    """`frequency` to three digits, never lower: what is named must work as named."""
+    step = 10.0 ** (math.floor(math.log10(frequency)) - 2)
+    return math.ceil(frequency / step * (1.0 - 1e-12)) * step

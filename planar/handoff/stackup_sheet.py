@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from planar.stackup import Layer, LayerKind, Stackup
+from planar.stackup import Layer, LayerKind, Stackup, loss_tangent
 from planar.units import show
 
 _OF_THE_BOARD = (LayerKind.LEGEND, LayerKind.MASK, LayerKind.COPPER, LayerKind.DIELECTRIC)
@@ -122,7 +122,7 @@ def _row(layer: Layer, stackup: Stackup, frequency: float) -> SheetLayer:
         layer.thickness,
         stackup.base_copper if layer.kind is LayerKind.COPPER else None,
         None if permittivity is None else permittivity.real,
-        None if permittivity is None else abs(permittivity.imag) / permittivity.real,
+        None if permittivity is None else loss_tangent(permittivity),
         layer.thickness_tolerance or None,
         layer.eps_r_tolerance or None,
         layer.tan_d_tolerance or None,
@@ -151,5 +151,5 @@ def _notes(stackup: Stackup, lines: tuple[ImpedanceLine, ...], facts: SheetFacts
         short,
         "Inside the antenna window: no thieving, teardrops, order number, width change or edge clip-back.",
         f"Board outline tolerance: +-{show(facts.outline_tolerance_m, 'length')}.",
-        f"Laminate: {stackup.substrate.material}, sheet {facts.specification or 'not known, class as named'}.",
+        f"Laminate: {stackup.substrate.material}; {facts.specification or 'specification sheet not known, class as named'}.",
     )

@@ -28,17 +28,17 @@ WIDTH = 160
 HEADS = {
     "kind": "kind",
     "laminate": "laminate",
-    "height_mm": "height mm",
+    "height_mm": "height\nmm",
     "frequency_ghz": "GHz",
     "impedance_ohm": "ohm",
-    "width_mm": "width mm",
-    "gap_mm": "gap mm",
-    "eps_eff": "eps eff",
-    "quarter_wave_mm": "quarter wave mm",
-    "loss_db_per_m": "loss dB/m",
-    "ohm_per_25_um_etch": "ohm per 25 um etch",
-    "ohm_per_10_percent_height": "ohm per 10 % height",
-    "ohm_per_1_percent_eps_r": "ohm per 1 % eps",
+    "width_mm": "width\nmm",
+    "gap_mm": "gap\nmm",
+    "eps_eff": "eps\neff",
+    "quarter_wave_mm": "quarter\nwave mm",
+    "loss_db_per_m": "loss\ndB/m",
+    "ohm_per_25_um_etch": "ohm per\n25 um etch",
+    "ohm_per_10_percent_height": "ohm per\n10 % height",
+    "ohm_per_1_percent_eps_r": "ohm per\n1 % eps",
     "makeable": "fab",
     "note": "note",
 }
@@ -59,8 +59,8 @@ def progress() -> Iterator[Callable[[str], None]]:
 
 
 def print_json(data: object) -> None:
-    """Print `data` as indented JSON."""
-    sys.stdout.write(json.dumps(data, indent=2, ensure_ascii=False) + "\n")
+    """Print `data` as indented JSON, in ASCII: a pipe need not be UTF-8."""
+    sys.stdout.write(json.dumps(data, indent=2) + "\n")
 
 
 def print_design(design: Design, folder: Path | None = None) -> None:
@@ -80,7 +80,8 @@ def print_design(design: Design, folder: Path | None = None) -> None:
     console.print(_dimension_table(design))
     if design.lines:
         console.print(_design_line_table(design))
-    console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in design.findings]))
+    if design.findings:
+        console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in design.findings]))
     console.print(_text_table(("assumed",), [(reason,) for reason in choices.reasons]))
     console.print(design.status, highlight=False)
     if choices.brief.target.transmit:
@@ -91,13 +92,14 @@ def print_design(design: Design, folder: Path | None = None) -> None:
 
 CAUTION_TRANSMIT = (
     "Transmitting: keep people at a distance until the exposure figures are worked out; local rules and licensed "
-    "practice decide what may be radiated. Etching and cutting boards: gloves, eye protection, no glass dust in the air."
+    "practice decide what may be radiated. Etching and cutting boards: gloves, eye protection, no glass dust in the "
+    "air."
 )
 
 
 def _dimension_table(design: Design) -> Table:
     family = design.choices.family
-    rows = [(name, f"{value * 1e3:.2f}", family.meaning(name)) for name, value in design.dimensions.items()]
+    rows = [(name, f"{value * 1e3:.3f}", family.meaning(name)) for name, value in design.dimensions.items()]
     return _text_table(("dimension", "mm", "meaning"), rows, right=(1,))
 
 
@@ -154,8 +156,19 @@ def print_entry(entry: Mapping[str, Any]) -> None:
     """Print one library entry: every value with its source."""
     console = _console()
     console.print(f"{entry['key']}: {entry['title']}\n{entry['file']}", highlight=False, soft_wrap=True)
-    rows = [(name, str(value["value"]), value["source"]) for name, value in entry["values"].items()]
+    rows = [(name, _in_words(value["value"]), value["source"]) for name, value in entry["values"].items()]
     console.print(_text_table(("name", "value", "source"), rows))
+
+
+def _in_words(value: object) -> str:
+    if isinstance(value, Mapping):
+        return "; ".join(
+            _in_words(each) if name in {"value", "values"} else f"{name} {_in_words(each)}"
+            for name, each in value.items()
+        )
+    if isinstance(value, list):
+        return ", ".join(_in_words(each) for each in value)
+    return str(value).lower() if isinstance(value, bool) else str(value)
 
 
 def _text_table(heads: Sequence[str], rows: Sequence[Sequence[str]], *, right: Sequence[int] = ()) -> Table:

@@ -38,4 +38,4 @@ def write_line_plot(rows: Iterable[LineRow], path: Path) -> None:
     axes.grid(True, which="both", linewidth=0.4, color="#c8c8c8")
     # a fixed salt and no date: two runs write the same bytes
     with mpl.rc_context({"svg.hashsalt": "planar", "svg.fonttype": "path"}):
-        FigureCanvasSVG(figure).print_svg(os.fspath(path), metadata={"Date": None})
+        FigureCanvasSVG(figure).print_svg(os.fspath(path), metadata={"Date": None})  # type: ignore[no-untyped-call]

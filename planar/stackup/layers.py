@@ -56,6 +56,11 @@ class Layer:
         return self.model.permittivity(frequency)
 
 
+def loss_tangent(permittivity: complex) -> float:
+    """eps''/eps' of a passive `permittivity` eps' - j eps''."""
+    return abs(permittivity.imag) / permittivity.real
+
+
 @dataclass(frozen=True)
 class Slab:
     """Uniform dielectric: `thickness` in m, complex relative permittivity `eps_r` = eps' - j eps''."""

@@ -170,14 +170,34 @@ def test_folder_without_library_layout_is_refused(tmp_path: Path) -> None:
         Library.open(tmp_path)
 
 
-def test_family_comes_back_as_written(tmp_path: Path) -> None:
-    (tmp_path / "families").mkdir()
-    (tmp_path / "families" / "spiral.toml").write_text('title = "x"\n[size]\nlow = 3\n', encoding="utf-8")
+def test_all_faults_of_a_family_at_once(tmp_path: Path) -> None:
+    copy_of(
+        "families",
+        "plain",
+        tmp_path,
+        ("levels = 1", "levels = 3"),
+        ('feed = "balanced"', 'feed = "balancd"'),
+        ('value = "4 %"', 'value = "4"'),
+        ('needs = ["rectangle"]', 'needs = ["rectangel"]'),
+        ("value = 1.0,", "value = 9.0,"),
+        name="spiral",
+    )
     library = Library.open(tmp_path)
-    assert library.family_data("spiral") == {"title": "x", "size": {"low": 3}}
     assert "spiral" in library.keys("families")
+    with pytest.raises(LibraryError) as caught:
+        library.family("spiral")
+    faults = {fault.key: fault.expected for fault in caught.value.faults}
+    assert set(faults) == {
+        "levels",
+        "feed",
+        "frequency_error.value",
+        "dimensions.loop_height.needs",
+        "start.linear.perimeter_ratio.value",
+    }
+    assert {fault.where for fault in caught.value.faults} == {str(tmp_path / "families" / "spiral.toml")}
+    assert 'nearest is "balanced"' in faults["feed"]
     with pytest.raises(LibraryError, match='no such family, nearest is "spiral"'):
-        library.family_data("spirall")
+        library.family("spirall")
 
 
 def test_inline_laminate_states_what_it_assumes() -> None:
