@@ -9,6 +9,7 @@ from __future__ import annotations
 import functools
 import io
 import json
+import shlex
 import sys
 from collections.abc import Callable
 from dataclasses import asdict
@@ -26,7 +27,7 @@ library_option = click.option(
     "--library",
     "library_folder",
     type=click.Path(path_type=Path),
-    help="Folder searched before the shipped laminates, fabs, connectors and families.",
+    help="Folder searched before the shipped laminates, fabs, connectors, covers and families.",
 )
 json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON instead of a table.")
 
@@ -40,6 +41,8 @@ def refusing(command: Command) -> Command:
             return command(*args, **kwargs)
         except PlanarError as error:
             click.echo(f"refused: {error}", err=True)
+            if kwargs.get("as_json"):
+                click.echo(json.dumps({"refused": error.facts()}, indent=2))
             sys.exit(1)
 
     return wrapped  # type: ignore[return-value]
@@ -65,7 +68,8 @@ def new(name: Path, as_json: bool) -> None:
     from planar import pipeline
 
     path = pipeline.new_brief(name)
-    click.echo(json.dumps({"file": str(path)}) if as_json else f"{path} written: edit it, then planar make {path}")
+    advice = f"{path} written: edit it, then planar make {shlex.quote(str(path))}"
+    click.echo(json.dumps({"file": str(path)}) if as_json else advice)
 
 
 @main.command()
@@ -122,7 +126,9 @@ def lines(library_folder: Path | None, as_json: bool, as_csv: bool, plot: Path |
 
     rows = pipeline.lines(LineQuestion(**asked), Library.open(library_folder))
     if plot is not None:
-        pipeline.plot_lines(rows, plot)
+        from planar.report.line_plot import write_line_plot
+
+        write_line_plot(rows, plot)
     if as_json:
         console.print_json([asdict(row) for row in rows])
     else:

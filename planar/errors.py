@@ -7,8 +7,9 @@ Everything raised on purpose derives from `PlanarError`; the command line turns 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
 from enum import StrEnum
+from typing import Any
 
 
 @dataclass(frozen=True)
@@ -59,6 +60,10 @@ class Finding:
 class PlanarError(Exception):
     """Base of every error planar raises on purpose."""
 
+    def facts(self) -> dict[str, Any]:
+        """The error in plain types, as `--json` prints it."""
+        return {"reason": str(self)}
+
 
 class UnitError(PlanarError):
     """A quantity without a unit, with an unknown unit or of the wrong kind."""
@@ -70,6 +75,10 @@ class FaultyInputError(PlanarError):
     def __init__(self, faults: list[Fault]) -> None:
         self.faults = tuple(faults)
         super().__init__("\n".join(str(fault) for fault in faults))
+
+    def facts(self) -> dict[str, Any]:
+        """Every fault with file, key, value and what would be right."""
+        return {"faults": [asdict(fault) for fault in self.faults]}
 
 
 class BriefError(FaultyInputError):
@@ -99,6 +108,11 @@ class SynthesisError(PlanarError):
         if changes:
             lines += ["Nearest changes that work:", *(f"  {change}" for change in changes)]
         super().__init__("\n".join(lines))
+
+    def facts(self) -> dict[str, Any]:
+        """Reason, rules missed and changes that work."""
+        findings = [asdict(finding) for finding in self.findings]
+        return {"reason": self.reason, "findings": findings, "nearest_changes": list(self.changes)}
 
 
 class HandoffError(PlanarError):

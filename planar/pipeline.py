@@ -77,8 +77,8 @@ def _designed(brief: Brief, library: Library, path: Path) -> Design:
 
 def new_brief(path: Path) -> Path:
     """Write a commented brief for `path` (".toml" is added); never over an existing file."""
+    text = starter_brief(path.name.removesuffix(".toml"))
     target = path if path.suffix == ".toml" else path.with_name(path.name + ".toml")
-    text = starter_brief(target.stem)
     try:
         with target.open("x", encoding="utf-8") as file:
             file.write(text)
@@ -92,18 +92,6 @@ def new_brief(path: Path) -> Path:
 def lines(question: LineQuestion, library: Library) -> list[LineRow]:
     """Rows of line widths for `question`. Raises `BriefError` with all faults of the options, and `LibraryError`."""
     return answer(question, library)
-
-
-def plot_lines(rows: list[LineRow], path: Path) -> None:
-    """Write width over impedance as an SVG. Raises `HandoffError` when it cannot be written."""
-    from planar.report.line_plot import write_line_plot  # noqa: PLC0415  matplotlib is slow to load, few ask for a plot
-
-    if path.suffix.lower() != ".svg":
-        raise HandoffError(f"{path}: the plot is an SVG, name it with .svg")
-    try:
-        write_line_plot(rows, path)
-    except OSError as error:
-        raise HandoffError(f"cannot write {path}: {error.strerror}") from error
 
 
 def library_entries(library: Library, kind: str | None = None) -> dict[str, list[dict[str, str]]]:
@@ -161,7 +149,7 @@ def check_pack(design: Design, folder: Path) -> None:
 
 def design_facts(design: Design) -> dict[str, Any]:
     """The design in plain types, units in the names: what `design.json` and `--json` say."""
-    choices, bare = design.choices, design.bare_loop
+    choices = design.choices
     facts: dict[str, Any] = {
         "name": design.name,
         "planar_version": __version__,
@@ -176,14 +164,9 @@ def design_facts(design: Design) -> dict[str, Any]:
         "band_hz": list(choices.brief.target.band),
         "dimensions_mm": {name: round(value * 1e3, 6) for name, value in design.dimensions.items()},
         "board_mm": [round(side * 1e3, 6) for side in design.layout.size],
-        "first_order": {
-            "bare_loop_frequency_hz": bare.frequency,
-            "bare_loop_perimeter_mm": bare.perimeter * 1e3,
-            "bare_loop_perimeter_wavelengths": bare.perimeter_wavelengths,
-            "bare_loop_resistance_ohm": bare.resistance,
-            "trace_eps_eff": bare.eps_eff,
-            "expected_frequency_error": choices.family.frequency_error,
-        },
+        "mean_line_mm": design.perimeter * 1e3,
+        "first_order": _first_order_facts(design),
+        "starting_values": _start_facts(design),
         "lines": [_line_facts(line) for line in design.lines],
         "copper": _copper_facts(design.layout),
         "dc_short": design.layout.dc_short,
@@ -194,6 +177,32 @@ def design_facts(design: Design) -> dict[str, Any]:
     return facts | {"hash": digest}
 
 
+def _first_order_facts(design: Design) -> dict[str, float] | None:
+    """The bare loop by formulas; None where given dimensions are outside them."""
+    bare = design.bare_loop
+    if bare is None:
+        return None
+    return {
+        "bare_loop_frequency_hz": bare.frequency,
+        "bare_loop_perimeter_mm": bare.perimeter * 1e3,
+        "bare_loop_perimeter_wavelengths": bare.perimeter_wavelengths,
+        "bare_loop_resistance_ohm": bare.resistance,
+        "trace_eps_eff": bare.eps_eff,
+        "expected_frequency_error": design.frequency_error,
+    }
+
+
+def _start_facts(design: Design) -> dict[str, Any] | None:
+    """Where sizing started from; None for given dimensions."""
+    if design.given:
+        return None
+    start = design.choices.family.start(design.choices.traits)
+    return {
+        "mean_line_over_resonant_bare_loop": start.perimeter_ratio,
+        "line_load_over_bare_loop_resistance": start.gap_resistance_ratio or 1.0,
+    }
+
+
 def _line_facts(line: DesignLine) -> dict[str, Any]:
     return {
         "name": line.name,
@@ -202,6 +211,7 @@ def _line_facts(line: DesignLine) -> dict[str, Any]:
         "gap_mm": None if line.line.gap is None else line.line.gap * 1e3,
         "impedance_ohm": line.line.impedance,
         "tolerance_ohm": line.tolerance_ohm,
+        "ohm_per_25_um_etch": line.slopes.ohm_per_25_um_etch,
         "eps_eff": line.line.eps_eff,
         "quarter_wave_mm": line.line.quarter_wave * 1e3,
         "loss_db_per_m": line.line.loss_db_per_m,

@@ -194,7 +194,7 @@ def _shape(info: ValidationInfo) -> str:
 
 
 class Board(_Record):
-    """The bare board. Default: 35 um copper, solder mask on both sides."""
+    """The bare board. Default: 35 um copper, solder mask on both sides where the fab prints one."""
 
     laminate: LaminateChoice = Field(
         examples=['laminate = "fr4-general" or { eps_r = 3.5, tan_d = 0.0025, at = "2.5 GHz" }']
@@ -203,7 +203,8 @@ class Board(_Record):
     """Of the dielectric between the copper planes, m."""
     copper: CopperThickness = 35e-6
     """Base foil, m; the fab's plating comes on top."""
-    mask: Literal["none", "top", "bottom", "both"] = "both"
+    mask: Literal["none", "top", "bottom", "both"] | None = None
+    """Sides under solder mask; left out, what the fab offers: both sides, or none."""
     size_limit: tuple[BoardSize, BoardSize] | None = Field(default=None, examples=['size_limit = ["100 mm", "80 mm"]'])
     """Largest extent in x and y, m."""
 

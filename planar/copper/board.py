@@ -14,7 +14,7 @@ from shapely.geometry.base import BaseGeometry
 from shapely.ops import unary_union
 
 from planar.copper.arc import Point
-from planar.copper.boolean import difference
+from planar.copper.boolean import difference, intersection
 from planar.copper.drawing import Drawing, DrawingRequest
 from planar.copper.layout import Hole, Layout, Level, Marking, bounds_of
 from planar.copper.lettering import lettered, text_width
@@ -29,11 +29,14 @@ BOARD_CORNER = 2e-3
 CORRIDOR = 6e-3
 """m, width of the way to the feed left open in the keepout where no connector body is wider."""
 HOLE_SIZES = ((60e-3, 3.2e-3), (0.0, 2.2e-3))
-"""(smallest board side, mounting hole diameter), m: M3 screws on boards of 60 mm, M2 below."""
+"""(smallest board side, mounting hole diameter), m: M3 screws on boards of 60 mm, M2 below, nylon: they stand in the
+keepout."""
 HOLE_CLEARANCE = 1e-3
 """m, from a mounting hole to copper and to the board edge, beyond the fab's own rule."""
-FEED_KEPT_CLEAR = 2e-3
-"""m below a feed inside the loop that the legend leaves to its pads."""
+FEED_CLEARANCE = 1e-3
+"""m, from pads and connector to the keepout."""
+FEED_KEPT_CLEAR = 5e-3
+"""m below a feed inside the loop that the legend leaves to what is soldered there."""
 LETTER_HEIGHTS = (2.5e-3, 2e-3, 1.5e-3, 1.2e-3, 1e-3)
 """m, tried from the largest."""
 
@@ -51,6 +54,8 @@ def plan_board(drawing: Drawing, request: DrawingRequest, levels: tuple[Level, .
     centred = drawing.translated(-drawing.feed[0], -drawing.feed[1])
     loop_centre = (-drawing.feed[0], -drawing.feed[1])
     x0, y0, x1, y1 = edge_box(centred, request)
+    for island in centred.islands:
+        island.outline.check()
     copper = unary_union([island.outline.shape() for island in centred.islands])
     mounting = _mounting_holes((x0, y0, x1, y1), copper, loop_centre, request)
     holes = centred.holes + mounting
@@ -66,7 +71,7 @@ def plan_board(drawing: Drawing, request: DrawingRequest, levels: tuple[Level, .
         mask_openings=tuple(opening for opening in openings if opening.level in request.masked),
         legend=(),
         edge=edge,
-        keepout=_keepout(edge, centred.corridor, request),
+        keepout=_keepout(edge, centred, request),
     ).snapped()
     findings = () if len(mounting) == 4 else (_missing_holes(len(mounting)),)
     legend = _legend(layout, (*loop_centre, *drawing.inner_size), request)
@@ -112,6 +117,7 @@ def _mounting_holes(
             place = (start[0] + share * (centre[0] - start[0]), start[1] + share * (centre[1] - start[1]))
             if taken.distance(ShapelyPoint(place)) >= radius + HOLE_CLEARANCE:
                 holes.append(Hole(place, diameter, False, "mounting"))
+                taken = taken.union(ShapelyPoint(place).buffer(radius))
                 break
     return tuple(holes)
 
@@ -137,13 +143,25 @@ def _body(request: DrawingRequest) -> Outline:
     return rectangle(-cy - 0.5 * width, cx - 0.5 * length, -cy + 0.5 * width, cx + 0.5 * length)
 
 
-def _keepout(edge: Outline, corridor: int, request: DrawingRequest) -> tuple[Outline, ...]:
-    """The whole board on every level, less a corridor from the feed to the nearest edge."""
-    x0, _, x1, _ = _body(request).bounds
-    half = max(0.5 * CORRIDOR, abs(x0), abs(x1))
-    _, low, _, high = edge.bounds
-    end = high + MARGIN if corridor > 0 else low - MARGIN
-    return difference(edge, rectangle(-half, 0.0, half, end))
+def _keepout(edge: Outline, drawing: Drawing, request: DrawingRequest) -> tuple[Outline, ...]:
+    """The whole board on every level, less the way to the feed.
+
+    A feed at the rim has a corridor to the nearest edge. A feed inside the loop has a pocket round
+    its pads; the keepout is then two halves, so that each is one closed outline without a hole.
+    """
+    x0, y0, x1, y1 = bounds_of([_body(request), *(pad.outline for pad in drawing.pads)])
+    half = max(0.5 * CORRIDOR, abs(x0), abs(x1)) + FEED_CLEARANCE
+    left, low, right, high = edge.bounds
+    if drawing.corridor > 0:
+        return difference(edge, rectangle(-half, 0.0, half, high + MARGIN))
+    if drawing.corridor < 0:
+        return difference(edge, rectangle(-half, 0.0, half, low - MARGIN))
+    pocket = rectangle(-half, y0 - FEED_CLEARANCE, half, y1 + FEED_CLEARANCE)
+    sides = (
+        rectangle(left - MARGIN, low - MARGIN, 0.0, high + MARGIN),
+        rectangle(0.0, low - MARGIN, right + MARGIN, high + MARGIN),
+    )
+    return tuple(part for side in sides for piece in intersection(edge, side) for part in difference(piece, pocket))
 
 
 def _hole_openings(holes: tuple[Hole, ...], levels: tuple[Level, ...], request: DrawingRequest) -> tuple[Marking, ...]:
@@ -202,6 +220,7 @@ def _with_legend(layout: Layout, legend: dict[Level, list[list[Outline]]]) -> La
     kept = []
     for level, texts in legend.items():
         openings = [m.outline.shape() for m in layout.mask_openings if m.level == level]
+        openings += [pad.outline.shape() for pad in layout.pads if pad.level == level]
         drills = [ShapelyPoint(hole.centre).buffer(0.5 * hole.diameter) for hole in layout.holes]
         taken = unary_union([*openings, *drills]).buffer(0.1e-3)
         for text in texts:

@@ -32,7 +32,6 @@ class DrawingRequest:
     """
 
     name: str
-    family: str
     end: str | None
     mirrored: bool
     connector: Connector
@@ -45,7 +44,8 @@ class DrawingRequest:
 class Drawing:
     """Copper in loop coordinates. `feed` becomes the board's origin.
 
-    `corridor` is +1 when the feed is reached from above the loop, -1 from below.
+    `corridor` is +1 when the feed is reached from above the loop, -1 from below, 0 when it lies inside
+    the loop and a cable leaves it at right angles to the board.
     """
 
     islands: tuple[Island, ...]

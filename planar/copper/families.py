@@ -18,7 +18,10 @@ from planar.copper.outline import Outline
 from planar.copper.path import Path, stepped_band
 from planar.copper.shapes import circle, rectangle
 from planar.errors import GeometryError
+from planar.library.records import Connector
 
+NECK = 0.6e-3
+"""m, length of the neck with which a line wider than the room between ground lands starts."""
 BEND_WIDTHS = 1.5
 """Radius of the bend onto the loop in line widths: a bend this gentle needs no mitre."""
 
@@ -72,7 +75,7 @@ def coplanar(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
         (Port("feed", "gap", Level.TOP, feed, (1.0, 0.0), gap, pad_length),),
         _pair_openings(gap, 0.5 * gap + pad_width, (end, end + pad_length), request),
         feed,
-        -1,
+        0,
         _inner_size(dimensions),
     )
 
@@ -86,7 +89,8 @@ def ring_guided(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     tab = ground_tab(connector, feed, -half_height)
     bottom = [*_handed(loop_copper(dimensions, dimensions["gap"]), request), *([tab] if tab else [])]
     bottom += [pad.outline for pad in lands if pad.level is Level.BOTTOM and pad.terminal == "return"]
-    line, line_end = _guided_line(dimensions, feed)
+    _check_second_gap(dimensions, connector)
+    line, line_end = _guided_line(dimensions, feed, _room_between_grounds(request))
     top = [*_handed((line,), request), *(p.outline for p in lands if p.level is Level.TOP and p.terminal == "signal")]
     holes = list(land_holes(connector, feed))
     if request.end == "via":
@@ -134,8 +138,34 @@ def _pair_openings(
     return tuple(Marking(Level.TOP, rectangle(s * inner, low, s * (reach + grow), high)) for s in sides)
 
 
-def _guided_line(dimensions: Dimensions, feed: Point) -> tuple[Outline, Point]:
-    """Outline of the guided line from `feed` to past the gap, and the point where it ends."""
+def _check_second_gap(dimensions: Dimensions, connector: Connector) -> None:
+    """The second gap lies on the half without the line, clear of the line's end and of the connector's ground."""
+    if "second_gap" not in dimensions:
+        return
+    half = 0.5 * dimensions["second_gap"]
+    tab = connector.ground_tab.half_width if connector.ground_tab else 0.0
+    low = dimensions["end_length"] + half
+    high = 0.5 * mean_line(dimensions).length - tab - half
+    if not low < dimensions["second_gap_position"] < high:
+        raise GeometryError(
+            f"second_gap_position is {dimensions['second_gap_position'] * 1e3:.2f} mm; on the half without the line it "
+            f"is from {low * 1e3:.2f} to {high * 1e3:.2f} mm"
+        )
+
+
+def _room_between_grounds(request: DrawingRequest) -> float:
+    """Widest line, m, that starts between the connector's ground lands at the fab's smallest gap."""
+    lands = [p for p in request.connector.pads if p.net == "ground" and p.level == Level.TOP.value]
+    if not lands:
+        return math.inf
+    return 2.0 * (min(abs(p.centre[1]) - 0.5 * p.size[1] for p in lands) - request.fab.min_gap)
+
+
+def _guided_line(dimensions: Dimensions, feed: Point, room: float) -> tuple[Outline, Point]:
+    """Outline of the guided line from `feed` to past the gap, and the point where it ends.
+
+    Where the line is wider than the `room` m between the connector's grounds it starts with a neck.
+    """
     loop = mean_line(dimensions)
     width = dimensions["line_width"]
     narrow_from = loop.length - dimensions["transformer_length"]
@@ -145,8 +175,11 @@ def _guided_line(dimensions: Dimensions, feed: Point) -> tuple[Outline, Point]:
             f"the transformer of {dimensions['transformer_length'] * 1e3:.2f} mm is longer than the line on the loop"
         )
     past = loop.between(0.0, dimensions["end_length"])
+    start = lead.followed_by(loop.between(joins_at, narrow_from))
+    neck = [(start.between(0.0, NECK), room)] if room < width else []
     sections = [
-        (lead.followed_by(loop.between(joins_at, narrow_from)), width),
+        *neck,
+        (start.between(NECK, start.length) if neck else start, width),
         (loop.between(narrow_from, loop.length), dimensions["transformer_width"]),
         (past, dimensions["end_width"]),
     ]

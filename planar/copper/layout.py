@@ -1,7 +1,7 @@
 """The board as one record: copper islands by level, holes, pads, ports, mask, legend, edge, keepout.
 
 Everything that is written, checked, meshed or drawn comes from a `Layout`; there is no second
-description of the board. `Layout.of` snaps every outline to the nanometre grid once and names the
+description of the board. `Layout.snapped` snaps every outline to the nanometre grid once and names the
 nets from what touches what. All views are from the top, the origin is the feed, lengths in metres.
 """
 
@@ -14,7 +14,7 @@ from functools import cached_property
 
 from planar.copper.arc import Point
 from planar.copper.boolean import contains
-from planar.copper.outline import GRID, Outline
+from planar.copper.outline import Outline, on_grid
 from planar.errors import GeometryError
 
 
@@ -35,7 +35,7 @@ class Role(StrEnum):
 
 @dataclass(frozen=True)
 class Island:
-    """One connected piece of copper on one level. `net` is filled in by `Layout.of`."""
+    """One connected piece of copper on one level. `net` is filled in by `Layout.snapped`."""
 
     level: Level
     outline: Outline
@@ -112,7 +112,7 @@ class Layout:
     def snapped(self) -> Layout:
         """The layout on the nanometre grid with its nets named. Raises `GeometryError` when copper is invalid."""
         islands = tuple(replace(island, outline=island.outline.normalised()) for island in self.islands)
-        holes = tuple(replace(hole, centre=_on_grid(hole.centre)) for hole in self.holes)
+        holes = tuple(replace(hole, centre=(on_grid(hole.centre[0]), on_grid(hole.centre[1]))) for hole in self.holes)
         pads = tuple(replace(pad, outline=pad.outline.normalised()) for pad in self.pads)
         nets = _net_names(islands, holes, pads)
         return replace(
@@ -162,10 +162,6 @@ def bounds_of(outlines: Iterable[Outline]) -> tuple[float, float, float, float]:
     return x0, y0, x1, y1
 
 
-def _on_grid(point: Point) -> Point:
-    return round(point[0] / GRID) * GRID, round(point[1] / GRID) * GRID
-
-
 def _normalised(markings: tuple[Marking, ...]) -> tuple[Marking, ...]:
     return tuple(replace(marking, outline=marking.outline.normalised()) for marking in markings)
 
@@ -193,11 +189,15 @@ def _net_names(islands: tuple[Island, ...], holes: tuple[Hole, ...], pads: tuple
     """Net of each island: ANT where both terminals meet, SIGNAL, RETURN, else ELEMENT1, ELEMENT2, ..."""
     names = [""] * len(islands)
     floating = 0
+    used: set[str] = set()
     for group in sorted(_connected(islands, holes), key=min):
         terminals = {pad.terminal for pad in pads if _island_under(pad, islands) in group}
         if not terminals:
             floating += 1
         name = {0: f"ELEMENT{floating}", 1: "".join(terminals).upper(), 2: "ANT"}[len(terminals)]
+        if name in used:
+            raise GeometryError(f"the copper of terminal {name} is in two pieces that nothing joins")
+        used.add(name)
         for i in group:
             names[i] = name
     return names

@@ -22,6 +22,8 @@ from planar.errors import GeometryError
 
 GRID = 1e-9
 """m, the grid every shipped outline lies on."""
+NOTHING = 1e-12
+"""m, edges shorter than this are none."""
 SHORTEST_ARC = 2e-6
 """m, arcs shorter than this become chords: fabrication tools stumble over them, nobody sees them."""
 CHECK_CHORD = 1e-6
@@ -42,6 +44,13 @@ class Outline:
             raise GeometryError("an outline has a vertex that is not finite")
         vertices.setflags(write=False)
         object.__setattr__(self, "vertices", vertices)
+
+    @classmethod
+    def closed(cls, rows: Iterable[Sequence[float]]) -> Outline:
+        """Outline of vertex `rows` (x, y, bulge), those that repeat the place of the next one left out."""
+        walk = [tuple(row) for row in rows]
+        following = [*walk[1:], walk[0]]
+        return cls(np.array([a for a, b in zip(walk, following, strict=True) if math.dist(a[:2], b[:2]) > NOTHING]))
 
     @classmethod
     def from_edges(cls, edges: Iterable[Edge]) -> Outline:
@@ -117,7 +126,7 @@ class Outline:
         return np.array(points)
 
     def shape(self, chord_error: float = CHECK_CHORD) -> Polygon:
-        """Flattened copy for checks of validity, distance and containment (mm would do: it is m)."""
+        """Flattened copy, in m, for checks of validity, distance and containment."""
         return Polygon(self.flattened(chord_error))
 
     def normalised(self) -> Outline:
@@ -128,7 +137,7 @@ class Outline:
         `GeometryError` when no area is left or the outline touches itself.
         """
         edges = [half for edge in self.edges for half in _halves(edge)]
-        rows = [[*(round(c / GRID) * GRID for c in edge.start), edge.bulge] for edge in edges]
+        rows = [[*(on_grid(c) for c in edge.start), edge.bulge] for edge in edges]
         rows = [row for row, nxt in zip(rows, [*rows[1:], rows[0]], strict=True) if row[:2] != nxt[:2]]
         if len(rows) < 2:
             raise GeometryError("an outline vanishes on the nanometre grid")
@@ -147,6 +156,11 @@ class Outline:
         flat = self.shape()
         if not flat.is_valid:
             raise GeometryError(f"an outline touches itself (metres): {explain_validity(flat)}")
+
+
+def on_grid(length: float) -> float:
+    """`length` m on the nanometre grid."""
+    return round(length / GRID) * GRID
 
 
 def _halves(edge: Edge) -> tuple[Edge, ...]:

@@ -13,7 +13,8 @@ from dataclasses import dataclass
 from functools import cached_property
 
 from planar.copper.arc import Edge, Point
-from planar.copper.outline import Outline
+from planar.copper.outline import NOTHING, Outline
+from planar.copper.shapes import QUARTER
 from planar.errors import GeometryError
 
 SMOOTH = 1e-7
@@ -65,7 +66,7 @@ class Path:
         """Edges `distance` m to the left of the path. Raises `GeometryError` past an arc's centre."""
         for edge in self.edges:
             # left of a counter-clockwise arc lies its centre
-            if edge.bulge != 0.0 and edge.radius - math.copysign(distance, distance * edge.bulge) < 0.0:
+            if edge.bulge != 0.0 and edge.radius - math.copysign(distance, distance * edge.bulge) < -NOTHING:
                 raise GeometryError(f"a bend of radius {edge.radius * 1e3:.3f} mm is too tight for its copper")
         points = [self._offset_point(i, distance) for i in range(len(self.edges) + 1)]
         return [Edge(a, b, e.bulge) for a, b, e in zip(points, points[1:], self.edges, strict=False)]
@@ -97,8 +98,7 @@ def stepped_band(sections: Sequence[tuple[Path, float]]) -> Outline:
     right = [e for path, width in sections for e in _with_step(path.offset(-0.5 * width))]
     left = [e for path, width in reversed(sections) for e in _with_step(path.reversed().offset(-0.5 * width))]
     walk = right + left
-    rows = [(*edge.start, edge.bulge) for edge in walk]
-    return Outline(rows)  # type: ignore[arg-type]
+    return Outline.closed((*edge.start, edge.bulge) for edge in walk)
 
 
 def _with_step(edges: list[Edge]) -> list[Edge]:
@@ -118,7 +118,6 @@ def loop_path(width: float, height: float, corner_radius: float) -> Path:
         raise GeometryError(
             f"a corner radius of {r * 1e3:.3f} mm does not fit {width * 1e3:.3f} by {height * 1e3:.3f} mm"
         )
-    quarter = math.tan(math.pi / 8.0)
     corners = [(-a, b), (-a, -b), (a, -b), (a, b)]
     along = [(-1.0, 0.0), (0.0, -1.0), (1.0, 0.0), (0.0, 1.0)]
     position: Point = (0.0, b)
@@ -126,7 +125,7 @@ def loop_path(width: float, height: float, corner_radius: float) -> Path:
     for i, (x, y) in enumerate(corners):
         (ux, uy), (vx, vy) = along[i], along[(i + 1) % 4]
         enter, leave = (x - r * ux, y - r * uy), (x + r * vx, y + r * vy)
-        edges += [Edge(position, enter), Edge(enter, leave, quarter)]
+        edges += [Edge(position, enter), Edge(enter, leave, QUARTER)]
         position = leave
     edges.append(Edge(position, (0.0, b)))
     return Path(tuple(edge for edge in edges if edge.chord > 1e-12))

@@ -1,19 +1,20 @@
 """What the fab cannot make of a layout, as a list of findings.
 
-Widths and gaps are measured on the drawn copper (flattened to 1 um), not read from the dimensions:
-copper narrower than the rule disappears when it is shrunk and grown again, a gap narrower than the
-rule fills up when copper is grown and shrunk.
+Everything is measured on the drawn copper (flattened to 1 um), not read from the dimensions. Islands
+are measured against each other. Within an island, copper narrower than the rule disappears when it is
+shrunk and grown again, a slot narrower than the rule fills up when it is grown and shrunk; one whose
+area is below a tenth of the squared rule escapes that test.
 """
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Callable
 
-from shapely.geometry import MultiPolygon
+from shapely import difference
 from shapely.geometry import Point as ShapelyPoint
 from shapely.geometry.base import BaseGeometry
-from shapely.ops import unary_union
 
 from planar.copper.layout import Hole, Layout
 from planar.copper.outline import CHECK_CHORD
@@ -21,6 +22,10 @@ from planar.errors import Finding, Severity
 from planar.library.records import Fab
 from planar.units import show
 
+OVERLAY_GRID = 1e-10
+"""m, grid of the overlays: without one, nearly coincident edges now and then lose a whole piece."""
+SLIVER = 0.1
+"""What disappears or fills counts above this share of the squared rule; less is a sliver at an acute corner."""
 SLACK = CHECK_CHORD + 1e-8
 """m, chord error of the flattened copies and ten grid steps: copper drawn at the rule never makes a finding."""
 
@@ -31,7 +36,9 @@ def fab_findings(layout: Layout, fab: Fab, size_limit: tuple[float, float] | Non
     if too_many_levels:  # the rules below would repeat it hole by hole
         return tuple(too_many_levels)
     findings = [
+        *_between_islands(layout, fab),
         *_tracks_and_gaps(layout, fab),
+        *_between_holes(layout, fab),
         *(finding for hole in layout.holes for finding in _hole(layout, hole, fab)),
         *_edge_distance(layout, fab),
         *_mask_webs(layout, fab),
@@ -51,19 +58,56 @@ def _levels(layout: Layout, fab: Fab) -> list[Finding]:
     return [Finding("copper levels", "board", str(len(layout.levels)), str(fab.levels), advice, Severity.REFUSE)]
 
 
+def _between_islands(layout: Layout, fab: Fab) -> list[Finding]:
+    """Islands of one level that are nearer than the gap rule, or touch."""
+    findings = []
+    for level in layout.levels:
+        islands = [(i, i.outline.shape()) for i in layout.islands if i.level == level]
+        for (one, first), (other, second) in itertools.combinations(islands, 2):
+            distance = first.distance(second)
+            where = f"{one.role.value} ({one.net}) and {other.role.value} ({other.net}) on {level.value}"
+            limit = _mm(fab.min_gap)
+            if distance < SLACK:
+                advice = "narrow the copper there, or choose another connector or laminate"
+                findings.append(Finding("short", where, "they touch", limit, advice, Severity.REFUSE))
+            elif distance < fab.min_gap - SLACK:
+                advice = f"keep {limit} between them"
+                findings.append(Finding("gap", where, _mm(distance), limit, advice, Severity.REFUSE))
+    return findings
+
+
+def _between_holes(layout: Layout, fab: Fab) -> list[Finding]:
+    """Unplated holes with too little board between them."""
+    holes = [hole for hole in layout.holes if not hole.plated]
+    findings = []
+    for one, other in itertools.combinations(holes, 2):
+        web = math.dist(one.centre, other.centre) - 0.5 * (one.diameter + other.diameter)
+        if web < fab.hole_to_edge - SLACK:
+            where = f"holes at ({one.centre[0] * 1e3:.2f}, {one.centre[1] * 1e3:.2f}) mm and beside"
+            advice = "leave one out or enlarge the board"
+            findings.append(Finding("hole to hole", where, _mm(web), _mm(fab.hole_to_edge), advice, Severity.REFUSE))
+    return findings
+
+
 def _tracks_and_gaps(layout: Layout, fab: Fab) -> list[Finding]:
     findings = []
     for level in layout.levels:
-        copper = unary_union([outline.shape() for outline in layout.copper(level)])
         where = f"copper {level.value}"
-        track = _smallest(copper, fab.min_track, _lost_when_opened)
-        if track is not None:
-            advice = f"widen the copper at {track[1]} to {_mm(fab.min_track)}"
-            findings.append(Finding("track", where, _mm(track[0]), _mm(fab.min_track), advice, Severity.REFUSE))
-        gap = _smallest(copper, fab.min_gap, _filled_when_closed)
-        if gap is not None:
-            advice = f"open the gap at {gap[1]} to {_mm(fab.min_gap)}"
-            findings.append(Finding("gap", where, _mm(gap[0]), _mm(fab.min_gap), advice, Severity.REFUSE))
+        for copper in (outline.shape() for outline in layout.copper(level)):
+            findings += _within_island(copper, fab, where)
+    return findings
+
+
+def _within_island(copper: BaseGeometry, fab: Fab, where: str) -> list[Finding]:
+    findings = []
+    track = _smallest(copper, fab.min_track, _lost_when_opened)
+    if track is not None:
+        advice = f"widen the copper at {track[1]} to {_mm(fab.min_track)}"
+        findings.append(Finding("track", where, _mm(track[0]), _mm(fab.min_track), advice, Severity.REFUSE))
+    gap = _smallest(copper, fab.min_gap, _filled_when_closed)
+    if gap is not None:
+        advice = f"open the gap at {gap[1]} to {_mm(fab.min_gap)}"
+        findings.append(Finding("gap", where, _mm(gap[0]), _mm(fab.min_gap), advice, Severity.REFUSE))
     return findings
 
 
@@ -72,11 +116,11 @@ def _grown(copper: BaseGeometry, by: float) -> BaseGeometry:
 
 
 def _lost_when_opened(copper: BaseGeometry, width: float) -> BaseGeometry:
-    return copper.difference(_grown(_grown(copper, -0.5 * width), 0.5 * width * 1.0001))
+    return difference(copper, _grown(_grown(copper, -0.5 * width), 0.5 * width * 1.0001), grid_size=OVERLAY_GRID)
 
 
 def _filled_when_closed(copper: BaseGeometry, width: float) -> BaseGeometry:
-    return _grown(_grown(copper, 0.5 * width), -0.5 * width * 1.0001).difference(copper)
+    return difference(_grown(_grown(copper, 0.5 * width), -0.5 * width * 1.0001), copper, grid_size=OVERLAY_GRID)
 
 
 def _smallest(
@@ -86,9 +130,7 @@ def _smallest(
 
     def worst(width: float) -> BaseGeometry | None:
         left = residue(copper, width)
-        parts = list(left.geoms) if isinstance(left, MultiPolygon) else [left]
-        # slivers at acute corners are smaller than a square of half the width
-        parts = [part for part in parts if part.area > (0.5 * width) ** 2]
+        parts = [part for part in getattr(left, "geoms", [left]) if part.area > SLIVER * width**2]
         return max(parts, key=lambda part: part.area, default=None)
 
     found = worst(limit - SLACK)

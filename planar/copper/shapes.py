@@ -32,7 +32,7 @@ def rounded_rectangle(x0: float, y0: float, x1: float, y1: float, *, radius: flo
         (x0 + r, y0, 0.0), (x1 - r, y0, QUARTER), (x1, y0 + r, 0.0), (x1, y1 - r, QUARTER),
         (x1 - r, y1, 0.0), (x0 + r, y1, QUARTER), (x0, y1 - r, 0.0), (x0, y0 + r, QUARTER),
     ]  # fmt: skip
-    return Outline(rows)  # type: ignore[arg-type]
+    return Outline.closed(rows)
 
 
 def circle(centre: Point, diameter: float) -> Outline:

@@ -10,6 +10,7 @@ from dataclasses import dataclass
 
 from planar.brief import Brief
 from planar.brief.model import CoverSpec, InlineLaminate, InlineMaterial
+from planar.copper.families import FAMILIES
 from planar.copper.layout import Level
 from planar.errors import Finding, Severity, SynthesisError
 from planar.library import Connector, Cover, Fab, Family, Laminate, Library, inline_laminate
@@ -18,6 +19,8 @@ from planar.units import show
 
 COAX_IMPEDANCES = (40.0, 80.0)
 """ohm, port impedances taken to be a coax."""
+COVER_EPS_TOLERANCE, COVER_TAN_TOLERANCE, COVER_FREQUENCY = 0.05, 0.3, 1e9
+"""Of a cover given by its numbers: typical of plastics (common practice, no source); frequency in Hz."""
 STRIP_IMPEDANCES = (45.0, 220.0)
 """ohm, port impedances coplanar strips can be sized for."""
 
@@ -74,11 +77,13 @@ def choose(brief: Brief, library: Library) -> Choices:
     """Records and defaults for `brief`. Raises `LibraryError` or `SynthesisError` where they do not go together."""
     fab = library.fab(brief.make.fab)
     reasons: list[str] = []
-    family = library.family(_family_key(brief, fab, reasons))
+    family = library.family(_family_key(brief, fab, library, reasons))
+    _check_drawn(family)
     end = _end(brief, family, reasons)
     connector = library.connector(_connector_key(brief, family, library, reasons))
     _check_feed(family, connector, brief, fab)
     laminate = _laminate(brief, library)
+    _check_sides(family, laminate)
     _note_laminate(brief, laminate, reasons)
     reasons.append("thickness is that of the dielectric; finished copper and mask come on top")
     plated = (
@@ -87,34 +92,42 @@ def choose(brief: Brief, library: Library) -> Choices:
         else "the fab plates nothing on it"
     )
     reasons.append(f"copper is the base foil; {plated}")
-    board = BoardChoice(laminate, brief.board.thickness, brief.board.copper, family.levels, _mask(brief, family))
+    board = BoardChoice(laminate, brief.board.thickness, brief.board.copper, family.levels, _mask(brief, fab, reasons))
     around = Surroundings(_cover(brief.surroundings.cover, library), _reflector(brief))
     stackup = build_stackup(board, fab, surroundings=around)
     return Choices(brief, family, laminate, fab, connector, stackup, end, tuple(reasons))
 
 
-def _family_key(brief: Brief, fab: Fab, reasons: list[str]) -> str:
+def _check_drawn(family: Family) -> None:
+    if family.key not in FAMILIES:
+        limit = f"one of {', '.join(sorted(FAMILIES))}"
+        advice = "a family file needs a drawing function"
+        finding = Finding("family", "antenna.family", family.key, limit, advice, Severity.REFUSE)
+        raise SynthesisError("this family cannot be drawn:", (finding,))
+
+
+def _family_key(brief: Brief, fab: Fab, library: Library, reasons: list[str]) -> str:
     if brief.antenna.family is not None:
         return brief.antenna.family
     ohm = brief.target.impedance
     low, high = COAX_IMPEDANCES
-    coax = brief.make.connector is None or not brief.make.connector.startswith("bare")
+    coax = brief.make.connector is None or not library.connector(brief.make.connector).balanced
     if fab.levels >= 2 and low <= ohm <= high and coax:
         key, why = "ring-guided", f"{ohm:g} ohm is a coax, and on two copper levels it needs no balun"
     elif brief.target.polarisation == "linear" and STRIP_IMPEDANCES[0] <= ohm <= STRIP_IMPEDANCES[1]:
         key, why = "coplanar", f"{ohm:g} ohm on one copper level: strips transform the loop to the port"
     else:
-        key, why = "plain", f"a port of {ohm:g} ohm on one copper level needs no line on the board"
+        key, why = "plain", f"no line of this board turns its loop into {ohm:g} ohm: bring your own match to the pads"
     reasons.append(f'family "{key}" chosen: {why}')
     return key
 
 
 def _end(brief: Brief, family: Family, reasons: list[str]) -> str | None:
-    if family.key not in ("ring-guided",):
-        return None
-    if brief.antenna.end is None:
-        reasons.append('the line ends "open": no via, and the widest band')
-    return brief.antenna.end or "open"
+    if not family.ends or brief.antenna.end is not None:
+        return brief.antenna.end
+    end = "open" if "open" in family.ends else family.ends[0]
+    reasons.append(f'the line ends "{end}"{": no via, and the widest band" if end == "open" else ""}')
+    return end
 
 
 def _connector_key(brief: Brief, family: Family, library: Library, reasons: list[str]) -> str:
@@ -123,9 +136,8 @@ def _connector_key(brief: Brief, family: Family, library: Library, reasons: list
     if family.feed == "balanced":
         reasons.append("no connector: two pads for a balanced chip, balun or line")
         return "bare-pads"
-    edge = library.connector("edge-coax")
-    low, high = edge.board_thickness or (0.0, 1.0)
-    key = edge.key if low <= brief.board.thickness <= high else "pigtail-pads"
+    fits = _fits_board(library.connector("edge-coax"), brief.board.thickness)
+    key = "edge-coax" if fits else "pigtail-pads"
     reasons.append(f'connector "{key}" chosen for a board of {show(brief.board.thickness, "length")}')
     return key
 
@@ -138,8 +150,8 @@ def _check_feed(family: Family, connector: Connector, brief: Brief, fab: Fab) ->
         limit = f"a {family.feed} feed for {family.key}"
         findings.append(Finding("feed", "make.connector", connector.key, limit, advice, Severity.REFUSE))
     thickness = brief.board.thickness
-    low, high = connector.board_thickness or (0.0, 1.0)
-    if not low <= thickness <= high:
+    if connector.board_thickness is not None and not _fits_board(connector, thickness):
+        low, high = connector.board_thickness
         got, limit = show(thickness, "length"), f"{show(low, 'length')} to {show(high, 'length')}"
         advice = f"{connector.key} does not fit this board: use pigtail-pads, or another thickness"
         findings.append(Finding("connector", "board.thickness", got, limit, advice, Severity.REFUSE))
@@ -151,11 +163,27 @@ def _check_feed(family: Family, connector: Connector, brief: Brief, fab: Fab) ->
         raise SynthesisError("the brief asks for parts that do not go together:", tuple(findings))
 
 
+def _fits_board(connector: Connector, thickness: float) -> bool:
+    if connector.board_thickness is None:
+        return True
+    low, high = connector.board_thickness
+    return low <= thickness <= high
+
+
 def _laminate(brief: Brief, library: Library) -> Laminate:
     choice = brief.board.laminate
     if isinstance(choice, InlineLaminate):
         return inline_laminate(choice.eps_r, choice.tan_d, at=choice.at)
     return library.laminate(choice)
+
+
+def _check_sides(family: Family, laminate: Laminate) -> None:
+    if family.levels > laminate.copper_sides:
+        advice = "use a laminate with copper on both sides, or the family plain or coplanar"
+        got = f"{laminate.key}: {laminate.copper_sides}"
+        limit = f"{family.levels} for {family.key}"
+        finding = Finding("copper sides", "board.laminate", got, limit, advice, Severity.REFUSE)
+        raise SynthesisError("the brief asks for parts that do not go together:", (finding,))
 
 
 def _note_laminate(brief: Brief, laminate: Laminate, reasons: list[str]) -> None:
@@ -166,10 +194,11 @@ def _note_laminate(brief: Brief, laminate: Laminate, reasons: list[str]) -> None
         reasons.append(f"{show(thickness, 'length', 4)} is no usual thickness of {laminate.key} ({sold}): ask the fab")
 
 
-def _mask(brief: Brief, family: Family) -> str:
-    """The mask asked for; a one-level board has copper on top only, and mask there is what matters."""
-    if family.levels == 1 and brief.board.mask == "bottom":
-        return "none"
+def _mask(brief: Brief, fab: Fab, reasons: list[str]) -> str:
+    """The mask asked for, or what the fab offers."""
+    if brief.board.mask is None:
+        reasons.append(f"solder mask {'on both sides' if fab.mask else 'none'}: what {fab.key} offers")
+        return "both" if fab.mask else "none"
     return brief.board.mask
 
 
@@ -177,9 +206,15 @@ def _cover(spec: CoverSpec | None, library: Library) -> CoverChoice | None:
     if spec is None:
         return None
     if isinstance(spec.material, InlineMaterial):
-        given = (("eps_r", "given in the brief"), ("tan_d", "given in the brief"))
         cover = Cover(
-            "inline", "cover given in the brief", spec.material.eps_r, 0.05, spec.material.tan_d, 0.3, 1e9, given
+            "inline",
+            "cover given in the brief",
+            spec.material.eps_r,
+            COVER_EPS_TOLERANCE,
+            spec.material.tan_d,
+            COVER_TAN_TOLERANCE,
+            COVER_FREQUENCY,
+            (("eps_r", "given in the brief"), ("tan_d", "given in the brief")),
         )
     else:
         cover = library.cover(spec.material)

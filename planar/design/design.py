@@ -6,40 +6,49 @@ the nearest change that was tried and works.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
-from planar.brief import Brief
+from planar.brief import Brief, parse_brief, write_brief
 from planar.copper.board import plan_board
 from planar.copper.drawing import DrawingRequest
 from planar.copper.families import FAMILIES
 from planar.copper.layout import Layout
 from planar.copper.rules import fab_findings
 from planar.design.choices import Choices, choose
-from planar.design.first_order import DETAILS, first_dimensions, given_dimensions
+from planar.design.first_order import DETAILS, first_dimensions, given_dimensions, loop_shape, stated_dimensions
 from planar.design.line_size import DesignLine, design_lines, line_settings
-from planar.design.loop_size import LoopEstimate
+from planar.design.loop_size import FORMULA_ERROR, LoopEstimate
 from planar.design.nearest import nearest_changes
 from planar.errors import BriefError, Finding, GeometryError, PlanarError, RangeError, Severity, SynthesisError
 from planar.library import Library
 from planar.units import show
 
-MIRRORED = "circular-left"
-"""Sense of circular polarisation drawn as the mirror image; the field solver confirms which is which."""
+MIRRORED = "circular-right"
+"""Sense toward the top side that is drawn as the mirror image: with the second gap counter-clockwise from the feed gap,
+seen from the top, the current turns clockwise, which is left-handed toward the top (IEEE Std 145)."""
+
+
+_LINE_MATCH = {
+    "coax": "not predicted by line formulas: the loop trace is a narrow ground and carries antenna current",
+    "balanced": "line formulas match the resonant loop at the middle of the band; over the band it is not predicted",
+}
 
 
 @dataclass(frozen=True)
 class Design:
     """A finished first-order design. `given` tells that the dimensions stand in the brief.
 
-    `dimensions` name -> m; `bare_loop` is the first-order resonance of the loop alone.
+    `dimensions` name -> m; `bare_loop` is the first-order resonance of the loop alone, None where
+    given dimensions are outside the formulas.
     """
 
     choices: Choices
     dimensions: Mapping[str, float]
     given: bool
     layout: Layout
-    bare_loop: LoopEstimate
+    bare_loop: LoopEstimate | None
     lines: tuple[DesignLine, ...]
     findings: tuple[Finding, ...]
 
@@ -49,12 +58,24 @@ class Design:
         return self.choices.brief.name
 
     @property
+    def frequency_error(self) -> float:
+        """Fraction by which the first-order frequency may be off."""
+        return FORMULA_ERROR if self.given else self.choices.family.start(self.choices.traits).frequency_error
+
+    @property
+    def perimeter(self) -> float:
+        """Length of the drawn mean line, m."""
+        return loop_shape(self.choices, self.dimensions).perimeter(self.dimensions["loop_width"])
+
+    @property
     def status(self) -> str:
         """One sentence on how far these dimensions can be trusted."""
-        error = show(self.choices.family.frequency_error, "fraction", 2)
+        error = show(self.frequency_error, "fraction", 2)
+        if self.given and self.bare_loop is None:
+            return "Dimensions given, not sized; the loop is outside the formulas, so nothing is predicted."
         if self.given:
             return f"Dimensions given, not sized. Resonance of the bare loop by formulas, expected error {error}."
-        match = " The match is not predicted." if self.choices.family.feed == "coax" or self.choices.circular else ""
+        match = " The match over the band is not predicted."
         return (
             f"First-order dimensions from line and loop formulas, not field-solved: expected frequency error {error}."
             f"{match} Do not order a quantity from them: build one, measure it, then decide."
@@ -71,15 +92,19 @@ def make_design(brief: Brief, library: Library, where: str) -> Design:
         design = _attempt(brief, library, where)
         refused = _refusals(design)
         reason = f"{brief.name}: this board cannot be made as asked:"
-    except (RangeError, SynthesisError) as error:
-        design, refused = None, getattr(error, "findings", ())
-        reason = f"{brief.name}: {getattr(error, 'reason', str(error))}"
+    except RangeError as error:
+        design, refused = None, ()
+        look = "it follows from target.band, board.thickness and board.copper"
+        reason = f"{brief.name}: outside what the formulas cover: {error}; {look}"
+    except SynthesisError as error:
+        design, refused, reason = None, error.findings, f"{brief.name}: {error.reason}"
     if design is not None and not refused:
         return replace(design, findings=(*_cautions(design), *design.findings))
 
     def works(changed: Brief) -> bool:
         try:
-            return not _refusals(_attempt(changed, library, where))
+            valid = parse_brief(write_brief(changed), where, library)
+            return not _refusals(_attempt(valid, library, where))
         except PlanarError:
             return False
 
@@ -99,10 +124,9 @@ def _attempt(brief: Brief, library: Library, where: str) -> Design:
     dimensions, bare = given_dimensions(choices) if given else first_dimensions(choices)
     request = drawing_request(choices)
     try:
-        drawing = FAMILIES[choices.family.key](dimensions, request)
+        planned = plan_board(FAMILIES[choices.family.key](dimensions, request), request, choices.levels)
     except GeometryError as error:
         raise SynthesisError(f"the copper cannot be drawn: {error}") from error
-    planned = plan_board(drawing, request, choices.levels)
     missed = fab_findings(planned.layout, choices.fab, brief.board.size_limit)
     lines = design_lines(dimensions, choices, line_settings(choices))
     return Design(choices, dimensions, given, planned.layout, bare, lines, (*planned.findings, *missed))
@@ -112,7 +136,6 @@ def drawing_request(choices: Choices) -> DrawingRequest:
     """What the drawing functions need of `choices`."""
     return DrawingRequest(
         name=choices.brief.name,
-        family=choices.family.key,
         end=choices.end,
         mirrored=choices.brief.target.polarisation == MIRRORED,
         connector=choices.connector,
@@ -123,10 +146,7 @@ def drawing_request(choices: Choices) -> DrawingRequest:
 
 
 def _check_names(choices: Choices, where: str) -> None:
-    antenna = choices.brief.antenna
-    stated = {"trace_width": antenna.trace_width, "corner_radius": antenna.corner_radius}
-    given = dict(antenna.dimensions) | {name: value for name, value in stated.items() if value is not None}
-    faults = choices.family.dimension_faults(given, choices.traits, DETAILS, where=where)
+    faults = choices.family.dimension_faults(stated_dimensions(choices), choices.traits, DETAILS, where=where)
     if faults:
         raise BriefError(faults)
 
@@ -136,29 +156,62 @@ def _cautions(design: Design) -> list[Finding]:
     choices = design.choices
     findings = []
     if not design.given:
-        error = show(choices.family.frequency_error, "fraction", 2)
+        error = show(design.frequency_error, "fraction", 2)
         advice = "treat these dimensions as a start; verify before ordering"
         findings.append(
             Finding("first-order sizing", "dimensions", f"frequency within {error}", "field solution", advice)
         )
-    if choices.family.feed == "coax":
-        got = "not predicted by line formulas: the loop trace is a narrow ground and carries antenna current"
-        findings.append(Finding("match", "target.match", got, f"{choices.brief.target.match_db:g} dB"))
+    if design.lines:
+        findings.append(
+            Finding("match", "target.match", _LINE_MATCH[choices.family.feed], f"{choices.brief.target.match_db:g} dB")
+        )
+    findings += _gap_match(design)
+    findings += _connector_impedance(choices)
     if choices.circular and choices.family.circular_note:
         findings.append(Finding("axial ratio", choices.family.key, choices.family.circular_note, "3 dB"))
     if choices.circular:
-        got = "sense and axial ratio come from starting values, not computed"
+        got = "axial ratio not computed, the second gap is a starting value; the sense holds toward the top side"
         findings.append(Finding("polarisation", "target.polarisation", got, choices.brief.target.polarisation))
     if design.given:
         findings += _off_band(design)
     return findings
 
 
+def _connector_impedance(choices: Choices) -> list[Finding]:
+    port, connector = choices.brief.target.impedance, choices.connector
+    if connector.impedance in {None, port}:
+        return []
+    limit = f"{connector.impedance:g} ohm of {connector.key}"
+    return [
+        Finding("port impedance", "target.impedance", f"{port:g} ohm", limit, "choose a connector of that impedance")
+    ]
+
+
+def _gap_match(design: Design) -> list[Finding]:
+    """Reflection of a loop that meets its port without a line."""
+    choices, target = design.choices, design.choices.brief.target
+    if design.lines or design.bare_loop is None:
+        return []
+    ratio = None if design.given else choices.family.start(choices.traits).gap_resistance_ratio
+    ohm, port = design.bare_loop.resistance * (ratio or 1.0), target.impedance
+    reflection = abs(ohm - port) / (ohm + port)
+    if reflection <= 10.0 ** (target.match_db / 20.0):
+        return []
+    got = f"about {20.0 * math.log10(reflection):.1f} dB: {ohm:.0f} ohm at the gap, {port:g} ohm at the port"
+    advice = f"match outside the board, ask for {ohm:.0f} ohm, or use a family that carries a line"
+    return [Finding("match", "target.impedance", got, f"{target.match_db:g} dB", advice)]
+
+
 def _off_band(design: Design) -> list[Finding]:
     low, high = design.choices.brief.target.band
-    frequency, error = design.bare_loop.frequency, design.choices.family.frequency_error
+    if design.bare_loop is None:
+        got = "not computed: the loop is outside the formulas"
+        return [Finding("resonance", "antenna.dimensions", got, "the band", "", Severity.NOTE)]
+    frequency, error = design.bare_loop.frequency, design.frequency_error
     if low * (1.0 - error) <= frequency <= high * (1.0 + error):
         return []
     limit = f"{show(low, 'frequency')} to {show(high, 'frequency')}"
     advice = "the bare loop's resonance need not be the best match; the line moves it"
-    return [Finding("resonance", "antenna.dimensions", show(frequency, "frequency", 4), limit, advice, Severity.NOTE)]
+    far = not low * (1.0 - 4.0 * error) <= frequency <= high * (1.0 + 4.0 * error)
+    severity = Severity.WARN if far else Severity.NOTE
+    return [Finding("resonance", "antenna.dimensions", show(frequency, "frequency", 4), limit, advice, severity)]

@@ -11,7 +11,6 @@ import math
 from collections.abc import Callable, Mapping
 
 from planar.copper.families import BEND_WIDTHS
-from planar.copper.layout import Level
 from planar.design.choices import Choices
 from planar.design.line_size import (
     LineSettings,
@@ -19,11 +18,20 @@ from planar.design.line_size import (
     microstrip,
     microstrip_width,
     rounded,
+    rounded_up,
+    strip_reach,
     strip_width_and_gap,
     strips,
 )
-from planar.design.loop_size import LoopEstimate, LoopShape, LoopSurroundings, resonant_frequency, resonant_loop
-from planar.errors import SynthesisError
+from planar.design.loop_size import (
+    LONGEST_ASPECT,
+    LoopEstimate,
+    LoopShape,
+    LoopSurroundings,
+    resonant_frequency,
+    resonant_loop,
+)
+from planar.errors import RangeError, SynthesisError
 from planar.lines.discontinuities import open_end_extension
 from planar.lines.quarter_wave import quarter_wave_section
 from planar.units import SPEED_OF_LIGHT, show
@@ -37,30 +45,24 @@ FEED_CLEARANCE = 1e-3
 """m, from the bend of the line to the connector's land."""
 CORNER_SHARE = 0.12
 """Default corner radius of a square or rectangle, in its smaller side."""
+SHAPE_ROUNDS = 8
+"""Rounds in which size and corner share settle; each divides the error by more than ten."""
 
 Dimensions = dict[str, float]
 
 
-def loop_shape(choices: Choices, dimensions: Mapping[str, float] | None = None) -> LoopShape:
-    """Proportions of the loop: those asked for, or those of given `dimensions`."""
-    antenna = choices.brief.antenna
-    if antenna.shape == "circle":
+def loop_shape(choices: Choices, dimensions: Mapping[str, float]) -> LoopShape:
+    """Proportions of the loop that `dimensions` draw."""
+    if choices.brief.antenna.shape == "circle":
         return LoopShape(1.0, 1.0)
-    if dimensions is not None:
-        width = dimensions["loop_width"]
-        height = dimensions.get("loop_height", width)
-        return LoopShape(width / height, dimensions["corner_radius"] / (0.5 * min(width, height)))
-    return LoopShape(_aspect(choices), 2.0 * CORNER_SHARE)
+    width = dimensions["loop_width"]
+    height = dimensions.get("loop_height", width)
+    return LoopShape(width / height, dimensions["corner_radius"] / (0.5 * min(width, height)))
 
 
 def loop_surroundings(choices: Choices) -> LoopSurroundings:
     """What the loop trace sees: it lies on the lower of the levels."""
     return LoopSurroundings.of(choices.stackup, choices.levels[-1], choices.centre)
-
-
-def loop_level(choices: Choices) -> Level:
-    """Level of the loop trace."""
-    return choices.levels[-1]
 
 
 def first_dimensions(choices: Choices) -> tuple[Dimensions, LoopEstimate]:
@@ -70,10 +72,8 @@ def first_dimensions(choices: Choices) -> tuple[Dimensions, LoopEstimate]:
     """
     settings = line_settings(choices)
     start = choices.family.start(choices.traits)
-    trace = _trace_width(choices, settings)
-    bare = resonant_loop(choices.centre, trace, loop_shape(choices), loop_surroundings(choices))
-    dimensions = _loop_dimensions(choices, bare.perimeter * start.perimeter_ratio, trace)
-    resistance = start.gap_resistance or bare.resistance
+    dimensions, bare = _loop_dimensions(choices, _trace_width(choices, settings), start.perimeter_ratio)
+    resistance = bare.resistance * (start.gap_resistance_ratio or 1.0)
     dimensions |= _LINE_DIMENSIONS[choices.family.key](choices, dimensions, resistance, settings)
     if choices.circular:
         dimensions |= _second_gap(choices, dimensions)
@@ -82,20 +82,28 @@ def first_dimensions(choices: Choices) -> tuple[Dimensions, LoopEstimate]:
     return {name: dimensions[name] for name in ordered}, bare
 
 
-def given_dimensions(choices: Choices) -> tuple[Dimensions, LoopEstimate]:
-    """The brief's own dimensions with the details it leaves out, and the first-order resonance of their bare loop.
-
-    The names have been checked. Raises `RangeError` where the loop is outside the formulas.
-    """
-    dimensions = dict(choices.brief.antenna.dimensions)
+def stated_dimensions(choices: Choices) -> Dimensions:
+    """Dimensions that stand in the brief, under [antenna] or [antenna.dimensions], m."""
     antenna = choices.brief.antenna
     stated = {"trace_width": antenna.trace_width, "corner_radius": antenna.corner_radius}
-    dimensions |= {name: value for name, value in stated.items() if value is not None}
+    return dict(antenna.dimensions) | {name: value for name, value in stated.items() if value is not None}
+
+
+def given_dimensions(choices: Choices) -> tuple[Dimensions, LoopEstimate | None]:
+    """The brief's own dimensions with the details it leaves out, and the first-order resonance of their bare loop.
+
+    The names have been checked. The resonance is None where the loop is outside the formulas.
+    """
+    dimensions = stated_dimensions(choices)
     dimensions |= {k: v for k, v in detail_dimensions(choices, dimensions).items() if k not in dimensions}
     ordered = {name: dimensions[name] for name in choices.family.needed(choices.traits)}
     shape = loop_shape(choices, ordered)
     perimeter = shape.perimeter(ordered["loop_width"])
-    return ordered, resonant_frequency(perimeter, ordered["trace_width"], shape, loop_surroundings(choices))
+    try:
+        bare = resonant_frequency(perimeter, ordered["trace_width"], shape, loop_surroundings(choices))
+    except RangeError:
+        bare = None
+    return ordered, bare
 
 
 def detail_dimensions(choices: Choices, dimensions: Mapping[str, float]) -> Dimensions:
@@ -120,7 +128,8 @@ def _aspect(choices: Choices) -> float:
     if antenna.shape != "rectangle":
         return 1.0
     if antenna.aspect_ratio is None:
-        return 1.0 if limit is None else limit[0] / limit[1]
+        ratio = 1.0 if limit is None else limit[0] / limit[1]
+        return min(LONGEST_ASPECT, max(1.0 / LONGEST_ASPECT, ratio))
     upright = limit is not None and limit[1] > limit[0]
     return 1.0 / antenna.aspect_ratio if upright else antenna.aspect_ratio
 
@@ -130,31 +139,45 @@ def _trace_width(choices: Choices, settings: LineSettings) -> float:
     if given is not None:
         return given
     wavelength = SPEED_OF_LIGHT / choices.centre
-    trace = max(family.trace_wavelengths * wavelength, choices.fab.min_track)
+    trace = family.trace_wavelengths * wavelength
     if family.trace_line_widths:
         trace = max(trace, family.trace_line_widths * microstrip_width(choices.brief.target.impedance, settings))
-    return rounded(trace)
+    return max(rounded(trace), rounded_up(choices.fab.min_track))
 
 
-def _loop_dimensions(choices: Choices, perimeter: float, trace: float) -> Dimensions:
-    shape = loop_shape(choices)
-    radius = choices.brief.antenna.corner_radius
-    if radius is None:
-        width = shape.width(perimeter)
-        radius = 0.5 * shape.corner * min(width, width / shape.aspect)
-    else:  # straight sides and four given quarter circles
-        width = (perimeter + (8.0 - 2.0 * math.pi) * radius) / (2.0 * (1.0 + 1.0 / shape.aspect))
-    dimensions = {"loop_width": rounded(width), "trace_width": trace}
-    if choices.brief.antenna.shape != "circle":
-        dimensions["corner_radius"] = rounded(max(radius, 0.5 * trace))
-    if choices.brief.antenna.shape == "rectangle":
-        dimensions["loop_height"] = rounded(width / shape.aspect)
-    return dimensions
+def _loop_dimensions(choices: Choices, trace: float, ratio: float) -> tuple[Dimensions, LoopEstimate]:
+    """Dimensions of a mean line `ratio` times as long as the resonant bare loop of its shape, and that loop."""
+    antenna, around = choices.brief.antenna, loop_surroundings(choices)
+    if antenna.shape == "circle":
+        bare = resonant_loop(choices.centre, trace, LoopShape(1.0, 1.0), around)
+        return {"loop_width": rounded(bare.perimeter * ratio / math.pi), "trace_width": trace}, bare
+    least = rounded_up(0.5 * trace)
+    if antenna.corner_radius is not None and antenna.corner_radius < 0.5 * trace:
+        raise SynthesisError(
+            f"antenna.corner_radius {show(antenna.corner_radius, 'length')} is that of the mean line: a trace of "
+            f"{show(trace, 'length', 4)} needs at least {show(least, 'length', 4)}"
+        )
+    aspect = _aspect(choices)
+    shape = LoopShape(aspect, 2.0 * CORNER_SHARE)
+    for _ in range(SHAPE_ROUNDS):  # a stated radius is a share of a side that is only now being found
+        bare = resonant_loop(choices.centre, trace, shape, around)
+        side = shape.width(bare.perimeter * ratio) * min(1.0, 1.0 / aspect)
+        radius = antenna.corner_radius if antenna.corner_radius is not None else max(CORNER_SHARE * side, least)
+        shape = LoopShape(aspect, min(1.0, radius / (0.5 * side)))
+    width = rounded(shape.width(bare.perimeter * ratio))
+    dimensions = {"loop_width": width, "corner_radius": _drawn_radius(choices, radius), "trace_width": trace}
+    if antenna.shape == "rectangle":
+        dimensions["loop_height"] = rounded(width / aspect)
+    return dimensions, bare
+
+
+def _drawn_radius(choices: Choices, radius: float) -> float:
+    return radius if choices.brief.antenna.corner_radius is not None else rounded(radius)
 
 
 def _loop_gap(choices: Choices) -> float:
     wavelengths = choices.family.gap_wavelengths * SPEED_OF_LIGHT / choices.centre
-    return rounded(max(wavelengths, 2.0 * choices.fab.min_gap))
+    return max(rounded(wavelengths), rounded_up(2.0 * choices.fab.min_gap))
 
 
 def _no_line(choices: Choices, dimensions: Dimensions, resistance: float, settings: LineSettings) -> Dimensions:
@@ -163,8 +186,17 @@ def _no_line(choices: Choices, dimensions: Dimensions, resistance: float, settin
 
 
 def _strips(choices: Choices, dimensions: Dimensions, resistance: float, settings: LineSettings) -> Dimensions:
-    impedance, length = quarter_wave_section(choices.brief.target.impedance, complex(resistance))
-    width, gap = strip_width_and_gap(impedance, settings, (choices.fab.min_track, choices.fab.min_gap))
+    port = choices.brief.target.impedance
+    impedance, length = quarter_wave_section(port, complex(resistance))
+    least = (choices.fab.min_track, choices.fab.min_gap)
+    low, high = strip_reach(settings, least)
+    if not low <= impedance <= high:
+        raise SynthesisError(
+            f"target.impedance {port:g} ohm needs strips of {impedance:.0f} ohm for a loop of {resistance:.0f} ohm; "
+            f"this board and fab reach {low:.0f} to {high:.0f} ohm, that is a port of {low**2 / resistance:.0f} to "
+            f"{high**2 / resistance:.0f} ohm"
+        )
+    width, gap = strip_width_and_gap(impedance, settings, least)
     line = strips(width, gap, settings)
     return {
         "strip_width": width,
@@ -176,7 +208,14 @@ def _strips(choices: Choices, dimensions: Dimensions, resistance: float, setting
 def _guided(choices: Choices, dimensions: Dimensions, resistance: float, settings: LineSettings) -> Dimensions:
     port = choices.brief.target.impedance
     impedance, length = quarter_wave_section(port, complex(resistance))
-    line_width, narrow = microstrip_width(port, settings), microstrip_width(impedance, settings)
+    line_width = microstrip_width(port, settings)
+    try:
+        narrow = microstrip_width(impedance, settings)
+    except SynthesisError as error:
+        raise SynthesisError(
+            f"target.impedance {port:g} ohm needs a transformer of {impedance:.0f} ohm for the {resistance:.0f} ohm at "
+            f"the gap: {error.reason}"
+        ) from error
     if narrow < choices.fab.min_track:
         least = show(choices.fab.min_track, "length")
         raise SynthesisError(
@@ -192,8 +231,9 @@ def _guided(choices: Choices, dimensions: Dimensions, resistance: float, setting
         "transformer_length": rounded(length / (2.0 * math.pi) * section.wavelength),
     }
     if choices.end == "via":
-        pad = choices.fab.min_hole + 2.0 * max(VIA_RING, choices.fab.min_annular_ring)
-        return sized | {"end_width": rounded(pad), "end_length": rounded(0.5 * gap + pad)}
+        via = detail_dimensions(choices, dimensions)
+        pad = via["via_drill"] + 2.0 * via["via_ring"]
+        return sized | {"end_width": rounded_up(pad), "end_length": rounded(0.5 * gap + pad)}
     end = microstrip(line_width, settings)
     substrate = settings.substrate
     fringe = open_end_extension(line_width, substrate.height, substrate.eps_r, min(end.eps_eff, substrate.eps_r))
@@ -216,6 +256,6 @@ def _second_gap(choices: Choices, dimensions: Dimensions) -> Dimensions:
     perimeter = shape.perimeter(dimensions["loop_width"])
     length = start.second_gap_wavelengths * SPEED_OF_LIGHT / choices.centre
     return {
-        "second_gap": rounded(max(length, choices.fab.min_gap)),
+        "second_gap": max(rounded(length), rounded_up(choices.fab.min_gap)),
         "second_gap_position": rounded(perimeter * start.second_gap_angle / (2.0 * math.pi)),
     }

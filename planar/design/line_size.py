@@ -15,14 +15,15 @@ from planar.copper.layout import Level
 from planar.design.choices import Choices
 from planar.design.loop_size import layers_of
 from planar.errors import SynthesisError
+from planar.lines.coplanar import coplanar_gap_limits
 from planar.lines.line import Line, analyse, line_kind, wave
 from planar.lines.records import Conductor, Substrate
-from planar.lines.synthesis import Sensitivities, sensitivities, width_for_impedance
+from planar.lines.synthesis import Sensitivities, gap_for_impedance, sensitivities, width_for_impedance
 from planar.stackup import loss_tangent
 from planar.units import show
 
-STEP = 1e-5
-"""m, dimensions are rounded to this: drawings in hundredths of a millimetre."""
+STEP, STEP_DIGITS = 1e-5, 5
+"""m and decimal places, dimensions are rounded to this: drawings in hundredths of a millimetre."""
 STRIP_GAPS = (1.0e-3, 0.7e-3, 0.5e-3, 0.4e-3, 0.3e-3, 0.25e-3, 0.2e-3, 0.15e-3, 0.1e-3)
 """m, gaps tried for coplanar strips, widest first: a wide gap is the least sensitive to etching."""
 _SLACK = 1e-9
@@ -81,44 +82,69 @@ def microstrip_width(impedance: float, settings: LineSettings) -> float:
 
 
 def strip_width_and_gap(impedance: float, settings: LineSettings, least: tuple[float, float]) -> tuple[float, float]:
-    """Width and gap m of coplanar strips of `impedance` ohm, the widest gap that gives a usable width.
+    """Width and gap m of coplanar strips of `impedance` ohm, the widest of the usual gaps that gives a usable width.
 
     `least` is the fab's smallest track and gap, m. Raises `SynthesisError` saying what can be reached.
     """
-    narrowest = max(STRIP_WIDTHS[0], least[0])
-    gaps = [gap for gap in sorted(STRIP_GAPS) if gap >= least[1] - _SLACK]
-    if not gaps:
+    gaps = _usable_gaps(settings, least)
+    low, high = strip_reach(settings, least)
+    if not low <= impedance <= high:
         raise SynthesisError(
-            f"coplanar strips: the fab's smallest gap, {show(least[1], 'length')}, is too wide for any"
+            f"coplanar strips of {impedance:.0f} ohm: this board and fab reach {low:.0f} to {high:.0f} ohm"
         )
-
-    def widest(gap: float) -> float:
-        limits = line_kind("coplanar-strips").width_limits(
-            gap, settings.substrate, settings.conductor, settings.frequency
-        )
-        return max(min(STRIP_WIDTHS[1], limits[1]), narrowest)
-
-    def lowest(gap: float) -> float:
-        return _strip_impedance(widest(gap), gap, settings)
-
     # impedance grows with the gap: the widest gap that is low enough with the widest strips
-    count = bisect.bisect_right(gaps, impedance, key=lowest)
-    if count == 0 or impedance > _strip_impedance(narrowest, gaps[count - 1], settings):
-        low, high = lowest(gaps[0]), _strip_impedance(narrowest, gaps[-1], settings)
-        raise SynthesisError(
-            f"coplanar strips of {impedance:.0f} ohm: with gaps from {show(gaps[0], 'length')} and widths of "
-            f"{show(narrowest, 'length')} to {show(widest(gaps[0]), 'length', 3)} this board gives {low:.0f} to "
-            f"{high:.0f} ohm; change target.impedance, the laminate or the fab"
+    gap = gaps[bisect.bisect_right(gaps, impedance, key=lambda each: _span(each, settings, least)[0]) - 1]
+    if (
+        impedance > _span(gap, settings, least)[1]
+    ):  # between two usual gaps: the narrowest strips and a gap of their own
+        line = gap_for_impedance(
+            "coplanar-strips",
+            impedance,
+            width=_narrowest(least),
+            substrate=settings.substrate,
+            conductor=settings.conductor,
+            frequency=settings.frequency,
         )
-    line = width_for_impedance(
-        "coplanar-strips",
-        impedance,
-        gap=gaps[count - 1],
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-    )
-    return rounded(line.width), gaps[count - 1]
+    else:
+        line = width_for_impedance(
+            "coplanar-strips",
+            impedance,
+            gap=gap,
+            substrate=settings.substrate,
+            conductor=settings.conductor,
+            frequency=settings.frequency,
+        )
+    return max(rounded(line.width), rounded_up(least[0])), max(rounded(line.gap or gap), rounded_up(least[1]))
+
+
+def strip_reach(settings: LineSettings, least: tuple[float, float]) -> tuple[float, float]:
+    """Lowest and highest impedance, ohm, of coplanar strips of usable widths and gaps; `least` track and gap m."""
+    gaps = _usable_gaps(settings, least)
+    return _span(gaps[0], settings, least)[0], _span(gaps[-1], settings, least)[1]
+
+
+def _narrowest(least: tuple[float, float]) -> float:
+    return max(STRIP_WIDTHS[0], rounded_up(least[0]))
+
+
+def _usable_gaps(settings: LineSettings, least: tuple[float, float]) -> list[float]:
+    """The usual gaps the fab etches and for which the formulas hold with the narrowest strips."""
+    narrowest, where = _narrowest(least), (settings.substrate, settings.conductor, settings.frequency)
+    low, high = coplanar_gap_limits(narrowest, *where)
+    usable = [gap for gap in sorted(STRIP_GAPS) if max(least[1] - _SLACK, low) <= gap <= high]
+    if not usable:
+        raise SynthesisError(
+            f"coplanar strips: no gap from {show(least[1], 'length')} suits this copper of "
+            f"{show(settings.conductor.thickness, 'length', 3)} and frequency; thinner copper or a lower band would"
+        )
+    return usable
+
+
+def _span(gap: float, settings: LineSettings, least: tuple[float, float]) -> tuple[float, float]:
+    """Impedance, ohm, of the widest and the narrowest usable strips `gap` m apart."""
+    limits = line_kind("coplanar-strips").width_limits(gap, settings.substrate, settings.conductor, settings.frequency)
+    widest = min(STRIP_WIDTHS[1], limits[1])
+    return _strip_impedance(widest, gap, settings), _strip_impedance(_narrowest(least), gap, settings)
 
 
 def _strip_impedance(width: float, gap: float, settings: LineSettings) -> float:
@@ -134,7 +160,7 @@ def _strip_impedance(width: float, gap: float, settings: LineSettings) -> float:
 
 def design_lines(dimensions: dict[str, float], choices: Choices, settings: LineSettings) -> tuple[DesignLine, ...]:
     """The lines drawn by `dimensions`, analysed as drawn."""
-    if choices.family.key == "coplanar":
+    if "strip_width" in dimensions:
         line = strips(dimensions["strip_width"], dimensions["strip_gap"], settings)
         return (_described("strip_width", line, "the other strip", choices, settings),)
     names = [name for name in ("line_width", "transformer_width", "end_width") if name in dimensions]
@@ -146,7 +172,12 @@ def design_lines(dimensions: dict[str, float], choices: Choices, settings: LineS
 
 def rounded(length: float) -> float:
     """`length` m to the drawing step."""
-    return round(length / STEP) * STEP
+    return round(length, STEP_DIGITS)
+
+
+def rounded_up(length: float) -> float:
+    """`length` m to the drawing step, never less: for what a fab rule bounds from below."""
+    return round(math.ceil(length / STEP - 1e-6) * STEP, STEP_DIGITS)
 
 
 def microstrip(width: float, settings: LineSettings) -> Line:

@@ -14,8 +14,8 @@ from planar.library import Library
 from planar.units import show
 
 Works = Callable[[Brief], bool]
-HIGHEST_SCALE = 4.0
-"""Bands up to this many times the asked one are tried."""
+SCALES = (1.1, 1.25, 1.4, 1.6, 1.8, 2.0, 2.3, 2.7, 3.2, 4.0)
+"""Multiples the band is tried at, lowest first; the step to the first that works is then bisected."""
 LAMINATES_TRIED = 6
 SHAPES = ("square", "circle", "rectangle")
 
@@ -50,7 +50,9 @@ def _other_shape(brief: Brief, library: Library, works: Works) -> Iterator[str]:
             values |= {"family": "ring-guided", "end": end}
         if values and works(_changed(brief, "antenna", values)):
             named = ", ".join(f'{key} = "{value}"' for key, value in values.items() if value is not None)
-            yield f"antenna: {named} works"
+            dropped = [key for key in ("aspect_ratio", "corner_radius") if getattr(brief.antenna, key) is not None]
+            without = f" without {' and '.join(dropped)}" if dropped and "shape" in values else ""
+            yield f"antenna: {named}{without} works"
 
 
 def _other_laminate(brief: Brief, library: Library, works: Works) -> Iterator[str]:
@@ -81,17 +83,16 @@ def _higher_band(brief: Brief, library: Library, works: Works) -> Iterator[str]:
         low, high = brief.target.band
         return _changed(brief, "target", {"band": (low * scale, high * scale)})
 
-    low, high = 1.0, HIGHEST_SCALE
-    if not works(moved(high)):
-        high = 2.0
-        if not works(moved(high)):
-            return
+    high = next((scale for scale in SCALES if works(moved(scale))), math.inf)
+    if math.isinf(high):
+        return
+    low = max((scale for scale in SCALES if scale < high), default=1.0)
     while high / low > 1.01:
         middle = (low * high) ** 0.5
         low, high = (low, middle) if works(moved(middle)) else (middle, high)
     lowest = _rounded_up(brief.target.band[0] * high)
     if works(moved(lowest / brief.target.band[0])):
-        yield f"the same brief works for a band from {show(lowest, 'frequency', 3)} up"
+        yield f"the same brief works with its band moved up to start at {show(lowest, 'frequency', 3)}"
 
 
 def _rounded_up(frequency: float) -> float:

@@ -110,6 +110,11 @@ def _image_part(order: int, ka: float, height_ratio: float) -> complex:
     return complex(np.sum(weights * np.exp(-1j * ka * r) / r * np.cos(order * phi)))
 
 
+def widest_trace(radius: float) -> float:
+    """Widest strip, m, on a loop of mean `radius` m that the series is used for."""
+    return 2.0 * math.pi * radius / math.exp(0.5 * THICKEST) / STRIP_TO_WIRE
+
+
 def series_kernel(order: int, ka: float, setting: LoopSetting) -> complex:
     """N_n of King & Smith, of the current: the n-th Fourier coefficient of a exp(-jkR)/R round the loop."""
     n = abs(order)
@@ -137,11 +142,7 @@ def resonance(setting: LoopSetting) -> LoopResonance:
     """First resonance of mode 1. Raises `RangeError` when the loop is too thick to have one."""
     omega = 2.0 * math.log(2.0 * math.pi * setting.slenderness)
     if omega < THICKEST:
-        widest = 2.0 * math.pi / math.exp(0.5 * THICKEST) / STRIP_TO_WIRE
-        raise RangeError(
-            f"the trace is too wide for the thin-loop formula: {1.0 / (STRIP_TO_WIRE * setting.slenderness):.2f} of "
-            f"the mean radius, at most {widest:.2f}"
-        )
+        raise RangeError(f"thickness parameter {omega:.2f} of the loop is below {THICKEST:g}: too thick to resonate")
 
     def reactance(ka: float) -> float:
         return mode_impedance(1, ka, setting).imag

@@ -12,7 +12,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from shapely import affinity
+from shapely import affinity, symmetric_difference
 from shapely.geometry.base import BaseGeometry
 from shapely.ops import unary_union
 
@@ -26,6 +26,8 @@ from planar.handoff.layers import LAYERS, read_layers_csv
 
 ARC_AREA = 1e-9
 """Relative difference in area allowed where arcs stay arcs."""
+OVERLAY_GRID = 0.1 * GRID
+"""m, grid of the overlays: without one, nearly coincident edges now and then lose a whole piece."""
 GRID_SLACK = 2.0 * GRID
 """m, allowed on positions, diameters and extents for rounding to the grid."""
 
@@ -128,7 +130,7 @@ def _shape_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord
         return ["an outline that crosses itself, expected none"]
     shape, right_shape = (unary_union([o.shape() for o in outlines]) for outlines in (got, expected))
     allowed = _chord_budget(expected, chord_error + CHECK_CHORD)
-    apart = shape.symmetric_difference(right_shape).area
+    apart = symmetric_difference(shape, right_shape, grid_size=OVERLAY_GRID).area
     if apart <= allowed:
         return []
     return [
@@ -140,7 +142,7 @@ def _mistake(shape: BaseGeometry, right_shape: BaseGeometry, allowed: float) -> 
     """Name of the common mistake that explains `shape`, if one does."""
     for name, x_factor, y_factor in _MISTAKES:
         righted = affinity.scale(shape, x_factor, y_factor, origin=(0.0, 0.0))
-        if righted.symmetric_difference(right_shape).area <= allowed * max(1.0, abs(x_factor)):
+        if symmetric_difference(righted, right_shape, grid_size=OVERLAY_GRID).area <= allowed * max(1.0, abs(x_factor)):
             return name
     return "another shape"
 

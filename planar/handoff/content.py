@@ -14,7 +14,7 @@ import numpy as np
 
 from planar.copper.arc import Point
 from planar.copper.layout import Layout, Level, bounds_of
-from planar.copper.outline import GRID, Outline
+from planar.copper.outline import GRID, Outline, on_grid
 from planar.copper.shapes import rectangle
 from planar.handoff.layers import LAYERS
 
@@ -102,7 +102,7 @@ def _terminals(layout: Layout) -> tuple[Label, ...]:
     for pad in layout.pads:
         x, y = pad.outline.shape().representative_point().coords[0]
         name = pad.name.encode("ascii", "replace").decode("ascii")  # the formats know no other letters
-        labels.append(Label(f"COPPER_{pad.level.name}", name, (_on_grid(x), _on_grid(y))))
+        labels.append(Label(f"COPPER_{pad.level.name}", name, (on_grid(x), on_grid(y))))
     return tuple(labels)
 
 
@@ -110,20 +110,16 @@ def _scale(layout: Layout) -> tuple[tuple[Outline, ...], tuple[Label, ...]]:
     """Scale bar and square below everything else, and the texts beside them."""
     everything = [layout.edge, *layout.keepout, *(island.outline for island in layout.islands)]
     x0, y0, _, _ = bounds_of(everything)
-    x, bar_top = _on_grid(x0), _on_grid(y0 - _CLEAR)
+    x, bar_top = on_grid(x0), on_grid(y0 - _CLEAR)
     length = scale_bar_length(layout)
     square_top = bar_top - _BAR_HEIGHT - _CLEAR
     boxes = (
         (x, bar_top - _BAR_HEIGHT, x + length, bar_top),
         (x, square_top - SQUARE, x + SQUARE, square_top),
     )
-    outlines = tuple(rectangle(*(_on_grid(c) for c in box)) for box in boxes)
+    outlines = tuple(rectangle(*(on_grid(c) for c in box)) for box in boxes)
     labels = tuple(
-        Label("DIMENSIONS", f"{1e3 * side:.0f} mm", (_on_grid(right + 2e-3), _on_grid(bottom)))
+        Label("DIMENSIONS", f"{1e3 * side:.0f} mm", (on_grid(right + 2e-3), on_grid(bottom)))
         for side, (_, bottom, right, _) in zip((length, SQUARE), boxes, strict=True)
     )
     return outlines, labels
-
-
-def _on_grid(length: float) -> float:
-    return round(length / GRID) * GRID

@@ -151,5 +151,5 @@ def _notes(stackup: Stackup, lines: tuple[ImpedanceLine, ...], facts: SheetFacts
         short,
         "Inside the antenna window: no thieving, teardrops, order number, width change or edge clip-back.",
         f"Board outline tolerance: +-{show(facts.outline_tolerance_m, 'length')}.",
-        f"Laminate: {stackup.substrate.material}; {facts.specification or 'specification sheet not known, class as named'}.",
+        f"Laminate: {stackup.substrate.material}; {facts.specification or 'no specification sheet known'}.",
     )

@@ -57,6 +57,7 @@ LAMINATE = Table(
         "title": Key(text),
         "class": Key(text),
         "specification": Key(text, required=False),
+        "copper_sides": _sourced(count(1, 2), required=False),
         **_PERMITTIVITY,
         "thickness": Table({"values": Key(list_of(_SHEET)), "tolerance": Key(_FRACTION), "source": Key(text)}),
         "copper": Table(
@@ -166,6 +167,7 @@ def read_laminate(key: str, raw: Mapping[str, Any], where: str) -> Laminate:
         title=found["title"],
         material_class=found["class"],
         specification=found["specification"],
+        copper_sides=(found["copper_sides"] or {"value": 2})["value"],
         eps_r=found["eps_r"]["value"],
         eps_r_tolerance=found["eps_r"]["tolerance"],
         tan_d=found["tan_d"]["value"],
@@ -270,7 +272,7 @@ def _offer_faults(raw: Mapping[str, Any], found: dict[str, Any], where: str) -> 
         offered = found[offer]["value"]
         for name in keys:
             if offered and name not in raw:
-                faults.append(Fault(where, name, "(absent)", f"this key is needed, since {offer} is offered"))
+                faults.append(Fault(where, name, "(not given)", f"this key is needed, since {offer} is offered"))
             if not offered and name in raw:
                 faults.append(Fault(where, name, str(raw[name]), f"leave it out, since {offer} is not offered"))
     if found["max_hole"]["value"] < found["min_hole"]["value"]:
@@ -285,9 +287,9 @@ def _land_faults(found: dict[str, Any], where: str) -> list[Fault]:
     if found["pads"] and not any(pad["net"] == "signal" for pad in found["pads"]):
         faults.append(Fault(where, "pads", f"{len(found['pads'])} rows", "one pad of the net signal is needed"))
     if not found["balanced"]["value"] and not found["pads"]:
-        faults.append(Fault(where, "pads", "(absent)", "an unbalanced connector needs its pads"))
+        faults.append(Fault(where, "pads", "(not given)", "an unbalanced connector needs its pads"))
     if not found["balanced"]["value"] and found["impedance"] is None:
-        faults.append(Fault(where, "impedance", "(absent)", "an unbalanced connector needs its impedance"))
+        faults.append(Fault(where, "impedance", "(not given)", "an unbalanced connector needs its impedance"))
     for index, pad in enumerate(found["pads"], start=1):
         if pad["shape"] == "round" and pad["size"][0] != pad["size"][1]:
             faults.append(Fault(where, f"pads[{index}].size", str(pad["size"]), "both sizes of a round pad are equal"))

@@ -30,20 +30,22 @@ class DimensionRule:
 class Start:
     """Where the first sizing starts.
 
-    `perimeter_ratio` is the mean line over that of the bare loop at resonance. `gap_resistance`
-    (ohm) replaces the formula's where it is given. The second gap lies `second_gap_angle` rad
-    round the loop and is `second_gap_wavelengths` free-space wavelengths long.
+    `frequency_error` is the fraction by which the sized frequency may be off. `perimeter_ratio` is
+    the mean line over that of the bare loop at resonance, `gap_resistance_ratio` the resistance the
+    line meets over that of the bare loop. The second gap lies `second_gap_angle` rad round the loop
+    and is `second_gap_wavelengths` free-space wavelengths long.
     """
 
+    frequency_error: float
     perimeter_ratio: float
-    gap_resistance: float | None
+    gap_resistance_ratio: float | None
     second_gap_angle: float | None
     second_gap_wavelengths: float | None
 
 
 @dataclass(frozen=True)
 class Family:
-    """One antenna family. `feed` is "coax" or "balanced"; `frequency_error` a fraction, first-order.
+    """One antenna family. `feed` is "coax" or "balanced".
 
     `trace_wavelengths` and `gap_wavelengths` are default widths in free-space wavelengths,
     `trace_line_widths` the least trace in widths of the line it guides (0 where it guides none).
@@ -55,7 +57,6 @@ class Family:
     summary: str
     levels: int
     feed: str
-    frequency_error: float
     trace_wavelengths: float
     trace_line_widths: float
     gap_wavelengths: float
@@ -72,10 +73,20 @@ class Family:
         return next(rule.meaning for rule in self.dimensions if rule.name == name)
 
     def start(self, traits: frozenset[str]) -> Start:
-        """Starting values of a design with `traits`."""
+        """Starting values of a design with `traits`. Raises `LibraryError` where the family has none."""
         polarisation = "circular" if "circular" in traits else "linear"
         ends = traits & {"via", "open"}
-        return self.starts["-".join([polarisation, *ends])]
+        name = "-".join([polarisation, *ends])
+        if name not in self.starts:
+            raise LibraryError(
+                [Fault(f"family {self.key}", f"start.{name}", "(not given)", "starting values are needed")]
+            )
+        return self.starts[name]
+
+    @property
+    def ends(self) -> tuple[str, ...]:
+        """How the line may end past the gap; empty where there is no such line."""
+        return tuple(sorted({name.partition("-")[2] for name in self.starts} - {""}))
 
     def dimension_faults(
         self, given: Mapping[str, float], traits: frozenset[str], defaulted: frozenset[str], *, where: str
@@ -94,7 +105,8 @@ class Family:
         ]
         missing = [name for name in needed if name not in given and name not in defaulted]
         faults += [
-            Fault(where, f"antenna.dimensions.{name}", "(missing)", f"needed: {self.meaning(name)}") for name in missing
+            Fault(where, f"antenna.dimensions.{name}", "(not given)", f"needed: {self.meaning(name)}")
+            for name in missing
         ]
         return faults
 
@@ -109,7 +121,6 @@ _HEAD: dict[str, Key | Table | Rows] = {
     "summary": Key(text),
     "levels": Key(count(1, 2)),
     "feed": Key(choice("coax", "balanced")),
-    "frequency_error": _sourced(Key(measure("fraction", 0.0, 0.5))),
     "trace_wavelengths": _sourced(_SHARE),
     "trace_line_widths": _sourced(Key(number(1.0, 20.0)), required=False),
     "gap_wavelengths": _sourced(_SHARE, required=False),
@@ -118,8 +129,9 @@ _HEAD: dict[str, Key | Table | Rows] = {
 _DIMENSION = Table({"meaning": Key(text), "needs": Key(list_of(choice(*TRAITS)), required=False)})
 _START = Table(
     {
+        "frequency_error": _sourced(Key(measure("fraction", 0.0, 0.5))),
         "perimeter_ratio": _sourced(Key(number(0.5, 2.0))),
-        "gap_resistance": _sourced(Key(measure("impedance", 5.0, 2000.0)), required=False),
+        "gap_resistance_ratio": _sourced(Key(number(0.2, 10.0)), required=False),
         "second_gap_angle": _sourced(Key(measure("angle", 0.1, 3.1)), required=False),
         "second_gap_wavelengths": _sourced(_SHARE, required=False),
     }
@@ -150,7 +162,6 @@ def read_family(key: str, raw: Mapping[str, Any], where: str) -> Family:
         summary=values["summary"],
         levels=values["levels"],
         feed=values["feed"],
-        frequency_error=_value(values["frequency_error"]),
         trace_wavelengths=_value(values["trace_wavelengths"]),
         trace_line_widths=_value(values["trace_line_widths"]) or 0.0,
         gap_wavelengths=_value(values["gap_wavelengths"]) or 0.0,

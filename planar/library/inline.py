@@ -30,6 +30,7 @@ def inline_laminate(
         title=f"laminate of permittivity {eps_r:g} and loss tangent {tan_d:g}, given in the brief",
         material_class="given in the brief",
         specification=None,
+        copper_sides=2,
         eps_r=eps_r,
         eps_r_tolerance=eps_r_tolerance,
         tan_d=tan_d,

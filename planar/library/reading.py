@@ -224,4 +224,4 @@ def _rows(name: str, value: object, node: Rows, place: _Place) -> list[dict[str,
 
 
 def _as_written(value: object) -> str:
-    return "(absent)" if value is _ABSENT else json.dumps(value, ensure_ascii=False, default=str)
+    return "(not given)" if value is _ABSENT else json.dumps(value, ensure_ascii=False, default=str)

@@ -18,7 +18,8 @@ Sources = tuple[tuple[str, str], ...]
 class Laminate:
     """A class of board material with its copper foil.
 
-    `eps_r` and `tan_d` hold at the frequency `at` (Hz). `thicknesses` (m) and `base_coppers` (m) are the usual
+    `copper_sides` is 2 unless it is sold with copper on one side only. `eps_r` and `tan_d` hold at the
+    frequency `at` (Hz). `thicknesses` (m) and `base_coppers` (m) are the usual
     ones; empty means that none are listed. `roughness_rq` is the rms roughness of the foil (m), `conductivity` its
     bulk conductivity (S/m).
     """
@@ -27,6 +28,7 @@ class Laminate:
     title: str
     material_class: str
     specification: str | None
+    copper_sides: int
     eps_r: float
     eps_r_tolerance: float
     tan_d: float

@@ -66,17 +66,13 @@ def print_json(data: object) -> None:
 def print_design(design: Design, folder: Path | None = None) -> None:
     """Print dimensions, lines, findings and where the pack is."""
     console = _console()
-    choices, bare = design.choices, design.bare_loop
+    choices = design.choices
     polarisation = choices.brief.target.polarisation
     console.print(
         f"{design.name}: {choices.family.key}, {choices.brief.antenna.shape}, {polarisation}", highlight=False
     )
     width, height = design.layout.size
-    console.print(
-        f"bare loop {bare.perimeter_wavelengths:.3f} wavelengths round, {bare.resistance:.0f} ohm at "
-        f"{show(bare.frequency, 'frequency', 4)}; board {width * 1e3:.1f} x {height * 1e3:.1f} mm",
-        highlight=False,
-    )
+    console.print(f"{_bare_loop(design)}board {width * 1e3:.1f} x {height * 1e3:.1f} mm", highlight=False)
     console.print(_dimension_table(design))
     if design.lines:
         console.print(_design_line_table(design))
@@ -95,6 +91,21 @@ CAUTION_TRANSMIT = (
     "practice decide what may be radiated. Etching and cutting boards: gloves, eye protection, no glass dust in the "
     "air."
 )
+
+
+def _bare_loop(design: Design) -> str:
+    """Mean line as drawn, and the bare loop it rests on."""
+    bare, drawn = design.bare_loop, f"mean line {design.perimeter * 1e3:.2f} mm; "
+    if bare is None:
+        return drawn
+    resonance = f"{bare.resistance:.0f} ohm at {show(bare.frequency, 'frequency', 4)} by formulas"
+    if design.given:
+        return f"{drawn}the bare loop resonates with {resonance}; "
+    start = design.choices.family.start(design.choices.traits)
+    return (
+        f"{drawn}{start.perimeter_ratio:g} times that of the bare loop with {resonance}, which is "
+        f"{bare.perimeter_wavelengths:.3f} wavelengths round; "
+    )
 
 
 def _dimension_table(design: Design) -> Table:

@@ -57,6 +57,7 @@ def build_stackup(board: BoardChoice, fab: Fab, *, surroundings: Surroundings | 
         raise SynthesisError("this stackup cannot be made:", findings)
     layers = (
         *_reflector(around.reflector),
+        *([Layer("legend-bottom", LayerKind.LEGEND, "legend ink", 0.0)] if fab.legend and board.levels == 2 else []),
         *_mask(board, fab, "bottom"),
         *_board(board, fab),
         *_mask(board, fab, "top"),

@@ -299,7 +299,7 @@ def test_refused_with_reason_and_a_change_that_works(brief: Path, tmp_path: Path
     assert "Nearest changes that work:" in done.stderr
     assert list(tmp_path.iterdir()) == []
     # the change is tried: a promise that does not hold is worse than none
-    nearest = re.search(r"works for a band from ([\d.]+) MHz up", done.stderr)
+    nearest = re.search(r"works with its band moved up to start at ([\d.]+) MHz", done.stderr)
     assert nearest is not None
     text, low = brief.read_text(encoding="utf-8"), float(nearest[1])
     changed = tmp_path / "changed.toml"

@@ -132,7 +132,7 @@ DESIGNED: dict[str, tuple[Changes, tuple[str, ...]]] = {
     ),
     "impedance strips cannot have": (
         {ANTENNA: f'impedance = "20 ohm"\n{ANTENNA}family = "coplanar"\n'},
-        ("target.impedance", "20 ohm", "this board gives", "change target.impedance, the laminate or the fab"),
+        ("target.impedance", "20 ohm", "this board and fab reach", "that is a port of"),
     ),
 }
 

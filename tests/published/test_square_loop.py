@@ -57,8 +57,8 @@ def test_rounded_corners_lie_between_circle_and_square() -> None:
 @pytest.mark.parametrize(
     ("shape", "around", "message"),
     [
-        (LoopShape(1.61, 0.2), AIR, "aspect ratio 1.61 is outside"),
-        (LoopShape(1 / 1.61, 0.2), AIR, "aspect ratio 1.61 is outside"),
+        (LoopShape(1.61, 0.2), AIR, "aspect_ratio 1.61 is outside"),
+        (LoopShape(1 / 1.61, 0.2), AIR, "aspect_ratio 1.61 is outside"),
         (SQUARE, LoopSurroundings((), (), 0.039 * SPEED_OF_LIGHT / 868e6), "too near"),
     ],
 )

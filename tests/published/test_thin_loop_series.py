@@ -67,7 +67,7 @@ def test_resonance_of_mode_one(omega: float, perimeter: float, resistance: float
 
 def test_thick_loops_are_refused() -> None:
     """Thick loops (Omega 8) have no reactance zero."""
-    with pytest.raises(RangeError, match="too wide for the thin-loop formula"):
+    with pytest.raises(RangeError, match="too thick to resonate"):
         resonance(wire(7.99))
 
 

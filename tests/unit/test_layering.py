@@ -29,7 +29,7 @@ BESIDE = {("units", "errors"), ("__main__", "cli")}
 """The two imports along a line: units raises the tree's own error, and __main__ is only a way into cli."""
 ONLY_IN = {
     "pint": ("units",),
-    "shapely": ("copper", "handoff"),
+    "shapely": ("copper", "field", "handoff"),
     "click": ("cli",),
     "pydantic": ("brief",),
     "pydantic_core": ("brief",),

@@ -58,7 +58,7 @@ def test_defaults_are_the_stated_ones(library):
     assert (brief.target.impedance, brief.target.match_db, brief.target.polarisation) == (50.0, -10.0, "linear")
     assert (brief.target.transmit, brief.target.power) == (False, None)
     assert (brief.antenna.family, brief.antenna.shape, brief.antenna.dimensions) == (None, "circle", {})
-    assert (brief.board.copper, brief.board.mask, brief.board.size_limit) == (35e-6, "both", None)
+    assert (brief.board.copper, brief.board.mask, brief.board.size_limit) == (35e-6, None, None)
     assert (brief.surroundings.cover, brief.surroundings.reflector) == (None, None)
     assert (brief.make.fab, brief.make.connector, brief.make.quantity) == ("pool-two-layer", None, 5)
 

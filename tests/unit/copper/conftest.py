@@ -65,6 +65,11 @@ def case(request: pytest.FixtureRequest) -> Case:
 
 
 @pytest.fixture(scope="session")
+def family(case: Case) -> str:
+    return case[0]
+
+
+@pytest.fixture(scope="session")
 def dimensions(case: Case) -> dict[str, float]:
     family, shape, polarisation, end, _ = case
     second = SECOND_GAP if polarisation == "circular" else {}
@@ -76,12 +81,12 @@ def asked(case: Case) -> DrawingRequest:
     family, _, _, end, mirrored = case
     levels = (Level.TOP, Level.BOTTOM) if family == "ring-guided" else (Level.TOP,)
     connector = LIBRARY.connector(CONNECTORS[family])
-    return DrawingRequest("test loop", family, end, mirrored, connector, LIBRARY.fab("pool-two-layer"), levels)
+    return DrawingRequest("test loop", end, mirrored, connector, LIBRARY.fab("pool-two-layer"), levels)
 
 
 @pytest.fixture(scope="session")
-def drawing(dimensions: dict[str, float], asked: DrawingRequest) -> Drawing:
-    return FAMILIES[asked.family](dimensions, asked)
+def drawing(family: str, dimensions: dict[str, float], asked: DrawingRequest) -> Drawing:
+    return FAMILIES[family](dimensions, asked)
 
 
 @pytest.fixture(scope="session")

@@ -9,11 +9,11 @@ from __future__ import annotations
 from dataclasses import replace
 
 import pytest
-from shapely import LineString
+from shapely import LineString, box, symmetric_difference
 from shapely.geometry import Point
 from shapely.ops import unary_union
 
-from planar.copper.board import CORRIDOR, MARGIN, PlannedBoard, edge_box, plan_board
+from planar.copper.board import CORRIDOR, FEED_CLEARANCE, MARGIN, PlannedBoard, edge_box, plan_board
 from planar.copper.drawing import Drawing, DrawingRequest
 from planar.copper.layout import Layout, Level, Role, bounds_of
 from planar.copper.rules import fab_findings
@@ -53,11 +53,11 @@ def test_holes_and_pads_carry_the_net_of_their_copper(layout: Layout) -> None:
         assert under == [pad.net]
 
 
-def test_origin_is_the_feed(layout: Layout, asked: DrawingRequest) -> None:
+def test_origin_is_the_feed(layout: Layout, family: str) -> None:
     """Balanced: the pads lie evenly about it. Coax: the signal land begins there, symmetric to the axis."""
     assert layout.ports[0].centre == (0.0, 0.0)
     boxes = {pad.terminal: pad.outline.bounds for pad in layout.pads if pad.level is Level.TOP}
-    if asked.family == "ring-guided":
+    if family == "ring-guided":
         x0, _, x1, y1 = boxes["signal"]
         assert (x0 + x1, y1) == pytest.approx((0.0, 0.0), abs=2e-9)
     else:
@@ -68,26 +68,30 @@ def test_origin_is_the_feed(layout: Layout, asked: DrawingRequest) -> None:
         assert a1 < 0.0 < a3
 
 
-def test_edge_lies_where_margin_and_connector_put_it(layout: Layout, asked: DrawingRequest) -> None:
+def test_edge_lies_where_margin_and_connector_put_it(layout: Layout, family: str, asked: DrawingRequest) -> None:
     x0, y0, x1, y1 = layout.copper_bounds
     bottom = y0 - MARGIN if asked.connector.edge_distance is None else -asked.connector.edge_distance
     assert layout.edge.bounds == pytest.approx((x0 - MARGIN, bottom, x1 + MARGIN, y1 + MARGIN), abs=2e-9)
-    if asked.family == "ring-guided":
+    if family == "ring-guided":
         assert layout.edge.bounds[1] == pytest.approx(-4.5 * MM, abs=1e-9)
 
 
-def test_keepout_is_the_board_less_a_corridor_to_the_feed(layout: Layout, asked: DrawingRequest) -> None:
-    """From the feed straight out to the nearest edge, at least as wide as the connector's body."""
-    keepout, board = unary_union([k.shape() for k in layout.keepout]), layout.edge.shape()
+def test_keepout_is_the_board_less_the_way_to_the_feed(layout: Layout, family: str, asked: DrawingRequest) -> None:
+    """At the rim a corridor to the nearest edge, inside the loop a pocket; both clear of pads and connector body."""
+    keepout, board = unary_union([outline.shape() for outline in layout.keepout]), layout.edge.shape()
     body = asked.connector.body
-    width = CORRIDOR if body is None else max(CORRIDOR, body.size[1])
-    way = 1.0 if asked.family == "plain" else -1.0
+    boxes = [pad.outline.bounds for pad in layout.pads]
+    reach = max(abs(x) for x0, _, x1, _ in boxes for x in (x0, x1))
+    half = max(0.5 * CORRIDOR, reach, 0.5 * body.size[1] if body else 0.0) + FEED_CLEARANCE
     low, high = layout.edge.bounds[1], layout.edge.bounds[3]
-    end = high if way > 0.0 else low
-    path = LineString([(0.0, 0.0), (0.0, end)]).buffer(0.5 * width * 0.999, cap_style="flat")
-    assert keepout.intersection(path).area < 1e-12
-    assert board.difference(keepout).area == pytest.approx(width * abs(end), rel=1e-3)
-    assert board.buffer(1e-6).contains(keepout)
+    if family == "coplanar":
+        lowest, highest = min(y for _, y, _, _ in boxes), max(y for *_, y in boxes)
+        tall = max(highest - lowest, CORRIDOR) + 2.0 * FEED_CLEARANCE
+        free = box(-half, -0.5 * tall, half, 0.5 * tall)
+    else:
+        free = box(-half, 0.0, half, high) if family == "plain" else box(-half, low, half, 0.0)
+    assert symmetric_difference(keepout, board.difference(free), grid_size=1e-9).area < 2e-6 * board.length
+    assert all(outline.shape().is_valid for outline in layout.keepout)
 
 
 def test_legend_is_on_the_board_and_clear_of_openings_and_holes(layout: Layout) -> None:
@@ -145,6 +149,6 @@ def test_the_margin_gives_way_to_the_size_limit_but_not_to_the_rules(drawing: Dr
     lower = asked.connector.edge_distance
     for spare, margin in ((4 * MM, 2 * MM), (0.2 * MM, 0.45 * MM), (40 * MM, MARGIN)):
         height = y1 - y0 + spare if lower is None else y1 + lower + 0.5 * spare
-        box = edge_box(moved, replace(asked, size_limit=(x1 - x0 + spare, height)))
-        assert (box[2] - x1, x0 - box[0], box[3] - y1) == pytest.approx((margin, margin, margin), abs=1e-12)
-        assert box[1] == pytest.approx(y0 - margin if lower is None else -lower, abs=1e-12)
+        left, bottom, right, top = edge_box(moved, replace(asked, size_limit=(x1 - x0 + spare, height)))
+        assert (right - x1, x0 - left, top - y1) == pytest.approx((margin, margin, margin), abs=1e-12)
+        assert bottom == pytest.approx(y0 - margin if lower is None else -lower, abs=1e-12)

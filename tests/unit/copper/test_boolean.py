@@ -12,7 +12,9 @@ from collections.abc import Callable
 import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
+from shapely import symmetric_difference
 from shapely.geometry import Point
+from shapely.geometry.base import BaseGeometry
 from shapely.ops import unary_union
 
 from planar.copper.boolean import contains, difference, intersection, union, united
@@ -50,6 +52,11 @@ def circles(draw: st.DrawFn) -> Outline:
 OUTLINES = st.one_of(rectangles(), circles(), open_rings())
 
 
+def apart(first: BaseGeometry, second: BaseGeometry) -> float:
+    """Area of the symmetric difference, m2; snapped to 0.1 nm, since shapely slips on edges that nearly coincide."""
+    return float(symmetric_difference(first, second, grid_size=1e-10).area)
+
+
 def agrees_with_shapely(name: str, first: Outline, second: Outline) -> None:
     """The result as shapely has it, or a refusal where shapely finds a hole or mere touching."""
     a, b = first.shape(CHORD), second.shape(CHORD)
@@ -64,7 +71,7 @@ def agrees_with_shapely(name: str, first: Outline, second: Outline) -> None:
         assert holed or touching
         return
     shape = unary_union([outline.shape(CHORD) for outline in found])
-    assert shape.symmetric_difference(expected).area <= budget
+    assert apart(shape, expected) <= budget
     assert all(outline.area > 0.0 for outline in found)
 
 
@@ -120,7 +127,7 @@ def test_arcs_that_share_a_circle() -> None:
         )
         (joined,) = union(one, two)
         assert joined.area == pytest.approx(3 * MM * (high - low), rel=1e-12)
-        assert joined.shape(CHORD).symmetric_difference(whole.shape(CHORD)).area < 2 * CHORD * whole.perimeter
+        assert apart(joined.shape(CHORD), whole.shape(CHORD)) < 2 * CHORD * whole.perimeter
 
 
 @pytest.mark.parametrize("end", [0.9 * MM, 3 * MM])

@@ -12,7 +12,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from scipy.optimize import brentq
-from shapely import LinearRing, LineString, Polygon, box
+from shapely import LinearRing, LineString, Polygon, box, symmetric_difference
 from shapely.affinity import rotate, scale, translate
 from shapely.geometry import Point
 from shapely.geometry.base import BaseGeometry
@@ -119,12 +119,12 @@ def lands(asked: DrawingRequest, feed: tuple[float, float], level: str, net: str
     return [translate(shape, *feed) for shape in shapes]
 
 
-def expected_copper(dimensions: dict[str, float], asked: DrawingRequest) -> dict[Level, BaseGeometry]:
+def expected_copper(family: str, dimensions: dict[str, float], asked: DrawingRequest) -> dict[Level, BaseGeometry]:
     """Copper by level, in loop coordinates, of the drawing that is not mirrored."""
     _, b, _ = half_sides(dimensions)
-    if asked.family == "plain":
+    if family == "plain":
         return {Level.TOP: loop(dimensions, dimensions["gap"])}
-    if asked.family == "coplanar":
+    if family == "coplanar":
         gap, half = dimensions["strip_gap"], 0.5 * dimensions["strip_gap"]
         end = b - dimensions["strip_length"]
         long = 0.5 * dimensions["pad_length"]
@@ -150,14 +150,19 @@ def copper(drawing: Drawing, level: Level) -> BaseGeometry:
     return unary_union([i.outline.shape(FINE) for i in drawing.islands if i.level is level])
 
 
+def apart(first: BaseGeometry, second: BaseGeometry) -> float:
+    """Area of the symmetric difference, m2; snapped to 0.1 nm, since shapely slips on edges that nearly coincide."""
+    return float(symmetric_difference(first, second, grid_size=1e-10).area)
+
+
 def test_copper_is_that_of_mean_line_and_width(
-    drawing: Drawing, dimensions: dict[str, float], asked: DrawingRequest
+    drawing: Drawing, family: str, dimensions: dict[str, float], asked: DrawingRequest
 ) -> None:
-    for level, expected in expected_copper(dimensions, asked).items():
+    for level, expected in expected_copper(family, dimensions, asked).items():
         wanted = scale(expected, -1.0, 1.0, origin=(0.0, 0.0)) if asked.mirrored else expected
         area = math.fsum(i.outline.area for i in drawing.islands if i.level is level)
         budget = 4.0 * FINE * wanted.length
-        assert copper(drawing, level).symmetric_difference(wanted).area < budget
+        assert apart(copper(drawing, level), wanted) < budget
         assert area == pytest.approx(wanted.area, abs=budget)
 
 
@@ -200,14 +205,14 @@ def test_pads_lie_on_copper_of_their_level(drawing: Drawing) -> None:
 
 
 def test_handedness_mirrors_the_copper_about_the_axis(
-    drawing: Drawing, dimensions: dict[str, float], asked: DrawingRequest
+    drawing: Drawing, family: str, dimensions: dict[str, float], asked: DrawingRequest
 ) -> None:
     """The lands are not mirrored, they are symmetric themselves; nor are pads, whose polarity stays."""
-    other = FAMILIES[asked.family](dimensions, replace(asked, mirrored=not asked.mirrored))
+    other = FAMILIES[family](dimensions, replace(asked, mirrored=not asked.mirrored))
     for level in Level:
         image = scale(copper(other, level), -1.0, 1.0, origin=(0.0, 0.0))
         here = copper(drawing, level)
-        assert image.symmetric_difference(here).area <= 4.0 * FINE * here.length
+        assert apart(image, here) <= 4.0 * FINE * here.length
     places = [[(abs(hole.centre[0]), hole.centre[1]) for hole in each.holes] for each in (drawing, other)]
     assert places[0] == places[1]
     for pad, same in zip(drawing.pads, other.pads, strict=True):
@@ -216,10 +221,10 @@ def test_handedness_mirrors_the_copper_about_the_axis(
 
 
 def test_the_line_ends_over_the_far_side_of_the_gap(
-    drawing: Drawing, dimensions: dict[str, float], asked: DrawingRequest
+    drawing: Drawing, family: str, dimensions: dict[str, float], asked: DrawingRequest
 ) -> None:
     """Both levels have copper where the line ends; a via joins them there and nowhere else on the loop."""
-    if asked.family != "ring-guided":
+    if family != "ring-guided":
         assert drawing.holes == ()
         return
     end = mean_line(dimensions).interpolate(dimensions["end_length"])
@@ -232,15 +237,15 @@ def test_the_line_ends_over_the_far_side_of_the_gap(
 
 
 def test_port_spans_the_gap_or_stands_at_the_start_of_the_line(
-    drawing: Drawing, dimensions: dict[str, float], asked: DrawingRequest
+    drawing: Drawing, family: str, dimensions: dict[str, float], asked: DrawingRequest
 ) -> None:
     (port,) = drawing.ports
     assert port.centre == drawing.feed
-    if asked.family == "ring-guided":
+    if family == "ring-guided":
         assert (port.kind, port.length, port.width) == ("vertical", 0.0, dimensions["line_width"])
         assert port.direction == (0.0, -1.0)
     else:
-        gap = dimensions["strip_gap" if asked.family == "coplanar" else "gap"]
+        gap = dimensions["strip_gap" if family == "coplanar" else "gap"]
         assert (port.kind, port.length, port.direction) == ("gap", gap, (1.0, 0.0))
         sides = {pad.terminal: pad.outline.shape().centroid.x for pad in drawing.pads}
         assert sides["return"] < 0.0 < sides["signal"]
@@ -276,6 +281,6 @@ def test_copper_that_cannot_be_drawn_is_refused(
 ) -> None:
     connector = library.connector("edge-coax" if family == "ring-guided" else "bare-pads")
     end = "open" if family == "ring-guided" else None
-    asked = DrawingRequest("refused", family, end, False, connector, library.fab("pool-two-layer"), ())
+    asked = DrawingRequest("refused", end, False, connector, library.fab("pool-two-layer"), ())
     with pytest.raises(GeometryError, match=message):
         FAMILIES[family](dimensions, asked)

@@ -97,6 +97,7 @@ MISSES = {
     "hole, too small": ("hole", holes(replace(VIA, centre=(18 * MM, 8 * MM), diameter=0.2 * MM)), 0.2 * MM),
     "hole, too large": ("hole", holes(Hole((50 * MM, 10 * MM), 7 * MM, False, "mounting")), 7 * MM),
     "hole to edge": ("hole to edge", holes(Hole((58 * MM, 20 * MM), 3.2 * MM, False, "mounting")), 0.4 * MM),
+    "hole to hole": ("hole to hole", holes(Hole((43.6 * MM, 5 * MM), 3.2 * MM, False, "mounting")), 0.4 * MM),
     "annular ring": ("annular ring", holes(replace(VIA, centre=(5.3 * MM, 10 * MM))), 0.1 * MM),
     "copper to edge": ("copper to edge", islands(top(box(40, 30, 50, 39.8))), 0.2 * MM),
     "mask web": (
@@ -122,6 +123,13 @@ def test_a_via_missing_copper_on_one_level_has_no_ring(fab: Fab) -> None:
     missed = only(fab_findings(layout, fab), "annular ring")
     assert missed.where.endswith("bottom")
     assert quantity(missed.got, "length") == 0.0
+
+
+def test_islands_that_touch_are_a_short(fab: Fab) -> None:
+    """Flush sides and overlap alike: two islands are two nets or one island drawn twice."""
+    for low in (20.0, 19.0):
+        finding = only(fab_findings(islands(top(box(5, low, 25, 22))), fab), "short")
+        assert finding.severity is Severity.REFUSE
 
 
 def test_copper_beyond_the_edge(fab: Fab) -> None:

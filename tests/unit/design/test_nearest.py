@@ -8,7 +8,7 @@ from collections.abc import Callable
 import pytest
 
 from planar.brief import Brief
-from planar.design.nearest import HIGHEST_SCALE, LAMINATES_TRIED, nearest_changes
+from planar.design.nearest import LAMINATES_TRIED, SCALES, nearest_changes
 from planar.library import Library
 from planar.units import quantity
 
@@ -46,7 +46,7 @@ def test_another_shape_drops_what_belongs_to_the_old_one(brief: MakeBrief, libra
         tried.append(changed)
         return changed.antenna.shape == "circle" and changed.antenna.corner_radius is None
 
-    assert nearest_changes(asked, library, works)[0] == 'antenna: shape = "circle" works'
+    assert nearest_changes(asked, library, works)[0] == 'antenna: shape = "circle" without corner_radius works'
     assert all(b.antenna.corner_radius is None for b in tried if b.antenna.shape != "square")
 
 
@@ -84,13 +84,13 @@ def test_another_fab(brief: MakeBrief, library: Library) -> None:
 def test_the_band_named_works_and_is_near_the_lowest(lowest: float, brief: MakeBrief, library: Library) -> None:
     """What is named must hold after rounding, and be within 2 % of the true limit."""
     (change,) = nearest_changes(brief(), library, lambda b: b.target.band[0] >= lowest)
-    match = re.search(r"band from (.+) up", change)
+    match = re.search(r"band moved up to start at (.+)", change)
     assert match is not None
     assert lowest <= quantity(match[1], "frequency") <= 1.02 * lowest
 
 
 def test_bands_out_of_reach_are_not_suggested(brief: MakeBrief, library: Library) -> None:
-    assert nearest_changes(brief(), library, lambda b: b.target.band[0] > 1.01 * HIGHEST_SCALE * 880e6) == ()
+    assert nearest_changes(brief(), library, lambda b: b.target.band[0] > 1.01 * SCALES[-1] * 880e6) == ()
 
 
 def test_given_dimensions_are_not_changed(brief: MakeBrief, library: Library) -> None:

@@ -93,7 +93,7 @@ def test_notes_follow_the_facts(stackup: Stackup) -> None:
     assert "mask over the antenna: none" in text
     assert "not connected at DC" in text
     assert "0 ohm" not in text
-    assert "not known" in text
+    assert "no specification sheet known" in text
     assert "Impedance-controlled: none" in text
 
 

@@ -22,7 +22,8 @@ def test_shipped_families_are_those_of_the_notes() -> None:
     assert SHIPPED.keys("families") == ["coplanar", "plain", "ring-guided"]
     families = [SHIPPED.family(key) for key in SHIPPED.keys("families")]
     assert [(f.levels, f.feed) for f in families] == [(1, "balanced"), (1, "balanced"), (2, "coax")]
-    assert all(0.0 < family.frequency_error <= 0.06 for family in families)
+    assert [family.ends for family in families] == [(), (), ("open", "via")]
+    assert all(0.0 < start.frequency_error <= 0.10 for family in families for start in family.starts.values())
 
 
 def test_starting_values_are_those_of_the_searches() -> None:
@@ -71,14 +72,15 @@ def test_names_given_are_checked_all_at_once() -> None:
 
 
 SLIPS = {
-    "frequency_error.value": ('frequency_error = { value = "4 %"', 'frequency_error = { value = "4 mm"'),
+    "start.linear.frequency_error.value": ('{ value = "4 %"', '{ value = "4 mm"'),
     "gap_wavelengths.source": ('value = 0.006, source = "2 mm at 0.9 GHz in the search below"', "value = 0.006"),
     "levels": ("levels = 1", "levels = 3"),
     "feed": ('feed = "balanced"', 'feed = "balancd"'),
     "dimensions.loop_height.needs": ('needs = ["rectangle"]', 'needs = ["rectangel"]'),
     "dimensions.gap.meaning": ("[dimensions.gap]\nmeaning", "[dimensions.gap]\nmeanin"),
     "start.linear.perimeter_ratio.value": ("value = 1.0,", "value = 9.0,"),
-    "start.circular.gap_resistance.value": ('"330 ohm"', '"330"'),
+    "start.circular.gap_resistance_ratio.value": ("value = 2.86", 'value = "2.86"'),
+    "start.circular.second_gap_angle.value": ('"87 deg"', '"87"'),
 }
 
 
@@ -108,3 +110,10 @@ def test_a_family_without_dimensions_or_start_is_refused(table: str, tmp_path: P
         read_family("plain", raw, "f.toml")
     with pytest.raises(LibraryError, match="at least one"):
         read_family("plain", raw | {table: {}}, "f.toml")
+
+
+def test_a_start_that_is_not_given_is_named(tmp_path: Path) -> None:
+    raw = parse(written(tmp_path))
+    family = read_family("plain", raw | {"start": {"linear": raw["start"]["linear"]}}, "f.toml")
+    with pytest.raises(LibraryError, match=r"start\.circular"):
+        family.start(frozenset({"circular"}))

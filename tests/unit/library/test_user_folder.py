@@ -70,7 +70,7 @@ def test_all_faults_of_a_laminate_at_once(tmp_path: Path) -> None:
     assert faults["eps_r.value"] == ('"4.3"', "a number from 1 to 100 is needed, without unit and quotes")
     assert faults["eps_r.at"][1] == 'the unit is missing, write "868.3 MHz"'
     assert 'nearest is "roughness_rq"' in faults["copper.roughnes_rq"][1]
-    assert faults["copper.conductivity"] == ("(absent)", "this key is needed")
+    assert faults["copper.conductivity"] == ("(not given)", "this key is needed")
 
 
 @pytest.mark.parametrize(
@@ -190,7 +190,7 @@ def test_all_faults_of_a_family_at_once(tmp_path: Path) -> None:
     assert set(faults) == {
         "levels",
         "feed",
-        "frequency_error.value",
+        "start.linear.frequency_error.value",
         "dimensions.loop_height.needs",
         "start.linear.perimeter_ratio.value",
     }

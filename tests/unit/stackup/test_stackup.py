@@ -29,6 +29,7 @@ def test_layers_lie_bottom_to_top() -> None:
     assert [layer.name for layer in boxed().layers] == [
         "reflector",
         "reflector-gap",
+        "legend-bottom",
         "mask-bottom",
         "copper-bottom",
         "dielectric",

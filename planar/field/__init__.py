@@ -1,0 +1,1 @@
+"""The field solver: mesh, layered-medium kernels, moments, far field."""
