@@ -55,7 +55,8 @@ class Mesh:
     @cached_property
     def corners(self) -> Points:
         """Corner points, (m, 3, 2) m."""
-        return self.points[self.triangles]
+        corners: Points = self.points[self.triangles]
+        return corners
 
     @cached_property
     def areas(self) -> Points:
@@ -65,7 +66,8 @@ class Mesh:
     @cached_property
     def centroids(self) -> Points:
         """Centroids, (m, 2) m."""
-        return self.corners.mean(axis=1)
+        centroids: Points = self.corners.mean(axis=1)
+        return centroids
 
 
 def triangle_areas(corners: Points) -> Points:
