@@ -127,13 +127,14 @@ def _cut_island(
     """The island's boundary, cut along every row that crosses it."""
     rows = []
     for cut in drops:
+        if _on_boundary(island.outline, cut.centre):
+            marks = [*marks, *_row_points(cut, (-0.5 * cut.width, 0.5 * cut.width), settings)]
+            continue
         ends = _crossings(island.outline, cut.centre, cut.direction)
         if ends is not None:
             row = _row_points(cut, ends, settings)
             rows.append(row)
             marks = [*marks, row[0], row[-1]]
-        elif _on_boundary(island.outline, cut.centre):
-            marks = [*marks, *_row_points(cut, (-0.5 * cut.width, 0.5 * cut.width), settings)]
     loops = [sampled(island.outline, settings, marks)]
     for row in rows:
         loops = [part for loop in loops for part in _split(loop, row)]
