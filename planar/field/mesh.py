@@ -25,7 +25,7 @@ from planar.errors import GeometryError
 
 Points = NDArray[np.float64]
 Indices = NDArray[np.int64]
-STEEPEST = math.pi / 4.0
+STEEPEST = math.pi / 8.0
 """rad, an arc turns no further than this between two points."""
 MERGE = 1e-10
 """m, points closer than this are one."""
@@ -33,10 +33,11 @@ MERGE = 1e-10
 
 @dataclass(frozen=True)
 class MeshSettings:
-    """`step` m along edges, `across` cells across a strip."""
+    """`step` m along edges, at least `across` cells across a strip, none wider than `widest` m."""
 
     step: float
     across: int = 3
+    widest: float = math.inf
 
 
 @dataclass(frozen=True, eq=False)
@@ -183,7 +184,10 @@ def _key(point: Sequence[float]) -> tuple[int, int]:
 
 def _cells(corners: Sequence[Point], side: int, settings: MeshSettings) -> int:
     length = math.dist(corners[side], corners[(side + 1) % 3])
-    return max(settings.across, math.ceil(length / settings.step) + settings.across - 2)
+    cells = settings.across
+    while length * math.sin(0.5 * math.pi / cells) > min(settings.step, settings.widest):  # the widest cell
+        cells += 1
+    return cells
 
 
 def _divided(start: Point, end: Point, cells: int) -> list[Point]:

@@ -25,16 +25,23 @@ def moment_matrix(basis: Basis, moments: TriangleMatrices, frequency: float) -> 
     omega = 2.0 * math.pi * frequency
     density, x, y = basis.density, basis.anchor_x, basis.anchor_y
     # the divergence is 2 c, so charges weigh like r . r' and join that term
-    product = 1j * omega * moments.product + 4.0 / (1j * omega) * moments.scalar
-    zero, first_x, first_y = (1j * omega * m for m in (moments.zero, moments.first_x, moments.first_y))
-    on_density = density @ product - x @ first_x.T - y @ first_y.T
-    on_x = x @ zero - density @ first_x
-    on_y = y @ zero - density @ first_y
-    matrix = (density @ on_density.T + x @ on_x.T + y @ on_y.T).T
+    product = moments.product - 4.0 / omega**2 * moments.scalar
+    # half of each symmetric term and one of the two mixed ones: the transpose adds the rest
+    on_density = _times(density, 0.5 * product) - _times(x, moments.first_x.T) - _times(y, moments.first_y.T)
+    half = _times(density, on_density.T)
+    half += 0.5 * _times(x, _times(x, moments.zero).T)
+    half += 0.5 * _times(y, _times(y, moments.zero).T)
+    matrix = 1j * omega * (half + half.T)
     for i, inductance in enumerate(basis.inductances, start=basis.count - len(basis.inductances)):
         matrix[i, i] += 1j * omega * inductance
-    symmetric: Complex = 0.5 * (matrix + matrix.T)
-    return symmetric
+    return matrix
+
+
+def _times(sparse_matrix: sparse.csr_array, dense: Complex) -> Complex:
+    """Product of a real sparse and a complex dense matrix, real and imaginary parts side by side."""
+    columns = np.ascontiguousarray(dense).view(np.float64)
+    product: Complex = (sparse_matrix @ columns).view(np.complex128)
+    return product
 
 
 def overlap_matrix(basis: Basis, mesh: Mesh) -> sparse.csr_array:

@@ -23,7 +23,7 @@ Indices = NDArray[np.int64]
 
 NEAR = 1.5
 """Pairs with centroids closer than this many sums of triangle radii are near."""
-MIDDLE = 4.0
+MIDDLE = 3.0
 """Up to this many sums the 3 by 3 rule is used."""
 
 
@@ -42,11 +42,16 @@ class Samples:
     second: Array
     share: Array
 
+    def values(self, tables: Array) -> tuple[Complex, Complex]:
+        """Vector and scalar kernel at the points, (n, s) each, times the areas, from `tables` (count, 4)."""
+        values = np.einsum("nsq,nsqk->nsk", self.weights, tables[self.indices]) * self.share[:, None, None]
+        pairs = values.view(np.complex128)
+        return pairs[..., 0], pairs[..., 1]
+
     def moments(self, tables: Array) -> tuple[PairMoments, Complex]:
         """Moments of the vector kernel and `zero` of the scalar kernel from `tables` (count, 4)."""
-        values = np.einsum("nsq,nsqk->nsk", self.weights, tables[self.indices])
-        vector = (values[..., 0] + 1j * values[..., 1]) * self.share[:, None]
-        scalar = (values[..., 2] + 1j * values[..., 3]).sum(axis=1) * self.share
+        vector, charges = self.values(tables)
+        scalar = charges.sum(axis=1)
         zero = vector.sum(axis=1)
         first = np.einsum("ns,nsk->nk", vector, self.first)
         second = np.einsum("ns,nsk->nk", vector, self.second)
@@ -118,10 +123,11 @@ class TriangleMatrices:
 
 
 def triangle_matrices(
-    count: int, pairs: Sequence[LevelPairs], kernels: Sequence[SpatialKernel], grid: RhoGrid
+    centroids: Array, pairs: Sequence[LevelPairs], kernels: Sequence[SpatialKernel], grid: RhoGrid
 ) -> TriangleMatrices:
-    """Moments between all `count` triangles from the geometry `pairs` and their `kernels` at one frequency."""
-    zero, first_x, first_y, product, scalar = (np.zeros((count, count), dtype=np.complex128) for _ in range(5))
+    """Moments between all triangles, with `centroids` (t, 2), from the `pairs` and their `kernels` at one frequency."""
+    count = len(centroids)
+    zero, scalar = (np.zeros((count, count), dtype=np.complex128) for _ in range(2))
 
     def put(samples: Samples, moments: PairMoments, charges: Complex) -> None:
         p, q = samples.p, samples.q
@@ -135,11 +141,19 @@ def triangle_matrices(
             matrix[p, q] = moments.first[:, axis]
             matrix[q, p] = moments.second[:, axis]
 
+    # far pairs are one point each: their moments follow from the kernel between centroids
+    for each, kernel in zip(pairs, kernels, strict=True):
+        vector, charges = each.far.values(_tables(kernel, grid)[1])
+        for matrix, values in ((zero, vector[:, 0]), (scalar, charges[:, 0])):
+            matrix[each.far.p, each.far.q] = values
+            matrix[each.far.q, each.far.p] = values
+    x, y = centroids.T
+    first_x, first_y = zero * x[:, None], zero * y[:, None]
+    product = first_x * x + first_y * y
     for each, kernel in zip(pairs, kernels, strict=True):
         smooth, whole = _tables(kernel, grid)
         put(each.near, *_with_images(each, kernel, each.near.moments(smooth)))
         put(each.middle, *each.middle.moments(whole))
-        put(each.far, *each.far.moments(whole))
     return TriangleMatrices(zero, first_x, first_y, product, scalar)
 
 

@@ -13,7 +13,7 @@ from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import linalg, sparse
+from scipy import sparse
 
 from planar.copper.layout import Layout
 from planar.errors import GeometryError
@@ -32,8 +32,10 @@ from planar.units import SPEED_OF_LIGHT
 
 Complex = NDArray[np.complex128]
 
-STEPS_PER_WAVELENGTH = 60.0
+STEPS_PER_WAVELENGTH = 40.0
 """Mesh steps along the copper in a free-space wavelength."""
+CELL_HEIGHTS = 1.6
+"""Widest cell across copper over another level, in the distance between them: return current gathers below a line."""
 LARGEST = 6000
 """Unknowns beyond which a problem is refused: its matrix would take more than half a gigabyte."""
 LARGEST_EXTENT = 4.0
@@ -74,7 +76,7 @@ class FieldProblem:
         medium, named = medium_of(stackup, highest)
         numbers = {level: number for number, level in enumerate(layout.levels)}
         interfaces = {number: named[level.value] for level, number in numbers.items()}
-        settings = settings or MeshSettings(SPEED_OF_LIGHT / highest / STEPS_PER_WAVELENGTH)
+        settings = settings or default_settings(layout, stackup, highest)
         pieces = pieces_of(layout, numbers, settings, stackup.substrate.thickness)
         mesh = mesh_regions(pieces.regions, settings)
         basis = build_basis(mesh, pieces.verticals)
@@ -108,7 +110,7 @@ class FieldProblem:
             )
             for each in self.pairs
         ]
-        moments = triangle_matrices(len(self.mesh.triangles), self.pairs, kernels, self.grid)
+        moments = triangle_matrices(self.mesh.centroids, self.pairs, kernels, self.grid)
         return moment_matrix(self.basis, moments, frequency)
 
     def sheet_impedance(self, frequency: float) -> complex:
@@ -132,7 +134,7 @@ class FieldProblem:
             medium = without_loss(medium)
         field = self.matrix(frequency, medium)
         matrix = field + (sheet * self.overlap).toarray()
-        currents = linalg.solve(matrix, self.excitations.T, assume_a="sym", check_finite=False)
+        currents = np.linalg.solve(matrix, self.excitations.T)
         return FieldSolution(self, frequency, medium, currents, sheet)
 
 
@@ -190,6 +192,14 @@ class FieldSolution:
     def radiated(self) -> float:
         """Power through the far sphere at 1 V, W."""
         return radiated_power(self.radiator)
+
+
+def default_settings(layout: Layout, stackup: Stackup, frequency: float, *, coarser: float = 1.0) -> MeshSettings:
+    """Mesh for `layout` at `frequency` Hz, `coarser` times the default size."""
+    step = coarser * SPEED_OF_LIGHT / frequency / STEPS_PER_WAVELENGTH
+    if len(layout.levels) == 1:
+        return MeshSettings(step)
+    return MeshSettings(step, widest=coarser * CELL_HEIGHTS * stackup.substrate.thickness)
 
 
 def without_loss(medium: LayeredMedium) -> LayeredMedium:
