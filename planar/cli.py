@@ -99,6 +99,40 @@ def make(brief: Path, outputs: Path, library_folder: Path | None, as_json: bool)
 
 
 @main.command()
+@click.argument("brief", type=click.Path(path_type=Path))
+@click.option(
+    "--at", multiple=True, help='Frequency such as "868 MHz"; may be repeated. Default: edges and middle of the band.'
+)
+@click.option(
+    "--sweep", type=(str, str, int), metavar="LOW HIGH N", help="Reflection at N frequencies from LOW to HIGH."
+)
+@click.option("--s1p", type=click.Path(path_type=Path), help="Write the sweep as a Touchstone file.")
+@library_option
+@json_option
+@refusing
+def solve(
+    brief: Path,
+    at: tuple[str, ...],
+    sweep: tuple[str, str, int] | None,
+    s1p: Path | None,
+    library_folder: Path | None,
+    as_json: bool,
+) -> None:
+    """Field solution of BRIEF's copper: impedance, gain, losses, polarisation."""
+    from planar import pipeline
+    from planar.design.solve_question import SolveQuestion
+    from planar.library import Library
+    from planar.report import console
+
+    with console.progress() as step:
+        solved = pipeline.solve(brief, Library.open(library_folder), SolveQuestion(at, sweep, s1p), step)
+    if as_json:
+        console.print_json(pipeline.solution_facts(solved))
+    else:
+        console.print_solution(solved.design, solved.solution)
+
+
+@main.command()
 @click.option("--kind", type=click.Choice(["microstrip", "coplanar-strips"]), default="microstrip", show_default=True)
 @click.option("--impedance", multiple=True, help='Such as "50 ohm"; may be repeated. Default 50, 75 and 100 ohm.')
 @click.option("--laminate", multiple=True, help="Library key; may be repeated. Default fr4-general.")

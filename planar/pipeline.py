@@ -18,10 +18,13 @@ from planar import __version__
 from planar.brief import Brief, read_brief, starter_brief, write_brief
 from planar.copper.layout import Layout
 from planar.design.design import Design, make_design
+from planar.design.field_solution import Solution, solve_design
 from planar.design.line_question import LineQuestion, answer
 from planar.design.line_size import DesignLine
 from planar.design.line_table import LineRow
-from planar.errors import HandoffError, SynthesisError
+from planar.design.solve_question import SolveQuestion, read_question
+from planar.errors import GeometryError, HandoffError, SynthesisError
+from planar.field.result import PointResult
 from planar.handoff import (
     ImpedanceLine,
     SheetFacts,
@@ -36,6 +39,7 @@ from planar.handoff import (
 )
 from planar.library import KINDS, Library
 from planar.library.reading import parse
+from planar.network.touchstone import write_touchstone
 
 Progress = Callable[[str], None]
 
@@ -46,6 +50,14 @@ class Made:
 
     design: Design
     folder: Path
+
+
+@dataclass(frozen=True)
+class Solved:
+    """A design and its field solution."""
+
+    design: Design
+    solution: Solution
 
 
 def make(brief_path: Path, library: Library, outputs: Path, progress: Progress = lambda stage: None) -> Made:
@@ -66,6 +78,67 @@ def make(brief_path: Path, library: Library, outputs: Path, progress: Progress =
 def size(brief_path: Path, library: Library) -> Design:
     """Dimensions and copper of a brief, nothing written."""
     return _designed(read_brief(brief_path, library), library, brief_path)
+
+
+def solve(
+    brief_path: Path, library: Library, question: SolveQuestion, progress: Progress = lambda stage: None
+) -> Solved:
+    """Field solution of a brief's design. Raises `PlanarError`; nothing is then written."""
+    progress("sizing and drawing")
+    design = size(brief_path, library)
+    frequencies, sweep = read_question(question, design)
+    try:
+        solution = solve_design(design, frequencies, sweep=sweep, progress=progress)
+    except GeometryError as error:
+        raise SynthesisError(f"{brief_path}: the field solver cannot take this copper: {error}") from error
+    if question.s1p is not None:
+        if solution.sweep is None:
+            raise HandoffError("a Touchstone file needs a sweep: --sweep LOW HIGH N")
+        try:
+            write_touchstone(solution.sweep, question.s1p, comments=(design.name, design.status))
+        except OSError as error:
+            raise HandoffError(f"cannot write {question.s1p}: {error.strerror}") from error
+    return Solved(design, solution)
+
+
+def solution_facts(solved: Solved) -> dict[str, Any]:
+    """A field solution in plain types, units in the names: what `planar solve --json` says."""
+    solution, reference = solved.solution, solved.design.choices.brief.target.impedance
+    facts: dict[str, Any] = {
+        "name": solved.design.name,
+        "planar_version": __version__,
+        "reference_ohm": reference,
+        "unknowns": solution.unknowns,
+        "convergence": solution.convergence,
+        "power_balance": solution.points[len(solution.points) // 2].power_balance,
+        "points": [
+            _point_facts(point, gap, reference)
+            for point, gap in zip(solution.points, solution.gap_impedance_ohm, strict=True)
+        ],
+        "findings": [asdict(finding) for finding in solution.findings],
+    }
+    if solution.sweep is not None:
+        z = solution.sweep.z[:, 0, 0]
+        facts["sweep"] = {
+            "frequency_hz": solution.sweep.frequency.tolist(),
+            "input_impedance_ohm": [[value.real, value.imag] for value in z.tolist()],
+            "reflection_db": solution.sweep.reflection_db.tolist(),
+            "best_match_hz": solution.sweep.best_match,
+        }
+    return facts
+
+
+def _point_facts(point: PointResult, gap: complex, reference: float) -> dict[str, Any]:
+    facts = asdict(point)
+    z = point.input_impedance_ohm
+    linear = point.sense == "linear"
+    return facts | {
+        "input_impedance_ohm": [z.real, z.imag],
+        "gap_impedance_ohm": [gap.real, gap.imag],
+        "reflection_db": point.reflection_db(reference),
+        "axial_ratio_db": None if linear else point.axial_ratio_db,
+        "power_balance": point.power_balance,
+    }
 
 
 def _designed(brief: Brief, library: Library, path: Path) -> Design:

@@ -9,9 +9,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from planar.design.line_table import LineRequest, LineRow, Material, line_rows
-from planar.errors import BriefError, Fault, UnitError
+from planar.design.option_reader import OptionReader
 from planar.library import Library
-from planar.units import quantity, show
 
 BASE_COPPER = 35e-6
 """m, foil of a board whose copper nobody stated (common practice, no source)."""
@@ -43,7 +42,7 @@ def answer(question: LineQuestion, library: Library) -> list[LineRow]:
     Raises `BriefError` with all faults of the options, and `LibraryError` for an unknown laminate or fab.
     """
     fab = library.fab(question.fab)
-    ask = _Options()
+    ask = OptionReader()
     frequency = ask.read("frequency", question.frequency, "frequency", (1e6, 100e9))
     impedances = [ask.read("impedance", text, "impedance", (5.0, 1000.0)) for text in question.impedance]
     heights = [ask.read("height", text, "length", (0.01e-3, 0.02)) for text in question.height]
@@ -60,34 +59,7 @@ def answer(question: LineQuestion, library: Library) -> list[LineRow]:
     return list(line_rows(_materials(question, heights, frequency, library), impedances or IMPEDANCES, request))
 
 
-class _Options:
-    """Reads command-line texts, collecting the faults of all of them."""
-
-    def __init__(self) -> None:
-        self.faults: list[Fault] = []
-
-    def read(self, option: str, text: str, kind: str, span: tuple[float, float]) -> float:
-        """SI value of `text`; a fault, and the lower end, when it is none or outside `span`."""
-        try:
-            value = quantity(text, kind)
-        except UnitError as error:
-            self.fault(option, text, str(error))
-            return span[0]
-        if not span[0] <= value <= span[1]:
-            self.fault(option, text, f"from {show(span[0], kind)} to {show(span[1], kind)}")
-        return value
-
-    def fault(self, option: str, text: str, expected: str) -> None:
-        """Note that `option` says `text` and what would be right."""
-        self.faults.append(Fault("command line", f"--{option}", text, expected))
-
-    def raise_faults(self) -> None:
-        """Raise `BriefError` when there are any."""
-        if self.faults:
-            raise BriefError(self.faults)
-
-
-def _check_material(question: LineQuestion, ask: _Options) -> None:
+def _check_material(question: LineQuestion, ask: OptionReader) -> None:
     """Faults of a substrate given by its numbers, or of numbers given beside a laminate."""
     if question.eps_r is None:
         if question.tan_d is not None:

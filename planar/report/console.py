@@ -19,6 +19,7 @@ from rich.console import Console
 from rich.table import Table
 
 from planar.design.design import Design
+from planar.design.field_solution import Solution
 from planar.design.line_table import LineRow
 from planar.errors import Severity
 from planar.units import show
@@ -130,6 +131,44 @@ def _design_line_table(design: Design) -> Table:
     ]
     heads = ("line", "kind", "ohm", "+-ohm", "eps eff", "quarter wave mm", "loss dB/m", "against")
     return _text_table(heads, rows, right=(2, 3, 4, 5, 6))
+
+
+def print_solution(design: Design, solution: Solution) -> None:
+    """Print a field solution: a row a frequency, the sweep in one line, what limits the numbers."""
+    console, port = _console(), design.choices.brief.target.impedance
+    rows = []
+    for point, gap in zip(solution.points, solution.gap_impedance_ohm, strict=True):
+        ratio = "linear" if point.sense == "linear" else f"{point.axial_ratio_db:.2f} {point.sense}"
+        rows.append(
+            (
+                show(point.frequency_hz, "frequency", 6),
+                _ohm(gap),
+                _ohm(point.input_impedance_ohm),
+                f"{point.reflection_db(port):.1f}",
+                f"{point.gain_dbi:.2f}",
+                f"{100.0 * point.efficiency:.0f}",
+                ratio,
+                f"{100.0 * point.copper_share:.1f} / {100.0 * point.dielectric_share:.1f}",
+            )
+        )
+    heads = ("at", "bare loop's gap ohm", "input ohm", "reflection dB", "gain dBi", "efficiency %", "axial ratio dB")
+    console.print(_text_table((*heads, "copper / dielectric %"), rows, right=(1, 2, 3, 4, 5)))
+    if solution.sweep is not None:
+        best = show(solution.sweep.best_match, "frequency", 5)
+        bands = solution.sweep.band(design.choices.brief.target.match_db)
+        texts = [f"{show(low, 'frequency', 5)} to {show(high, 'frequency', 5)}" for low, high in bands]
+        level = f"{design.choices.brief.target.match_db:g} dB"
+        console.print(f"best match at {best}; below {level}: {', '.join(texts) or 'nowhere'}", highlight=False)
+    console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in solution.findings]))
+    console.print(
+        f"{solution.unknowns} unknowns; the input impedance moves by {100.0 * solution.convergence:.1f} % from a coarser "
+        "mesh; gain and axial ratio toward the top",
+        highlight=False,
+    )
+
+
+def _ohm(value: complex) -> str:
+    return f"{value.real:.1f}{value.imag:+.1f}j"
 
 
 def print_lines(rows: Sequence[LineRow]) -> None:

@@ -1,0 +1,136 @@
+"""A design solved: its copper as it ships, and its bare loop, at given frequencies and over a sweep.
+
+Every solution carries how much it still moves with the mesh: the middle frequency is solved again on
+a mesh half again as coarse. What moves too much is refused, not shown.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from planar.copper.drawing import loop_copper, loop_height
+from planar.copper.layout import Island, Layout, Port, Role
+from planar.copper.shapes import rectangle
+from planar.design.design import Design
+from planar.errors import Finding, RangeError, Severity
+from planar.field.result import PointResult, point_result
+from planar.field.solver import FieldProblem, default_settings
+from planar.field.sweep import port_model
+from planar.network.response import Response
+from planar.units import show
+
+COARSER = 1.5
+"""Step of the comparison mesh over that of the solution."""
+LEAST_CONVERGENCE = 0.15
+"""Change of the input impedance between the two meshes, of its magnitude, above which nothing is shown."""
+LOW_EFFICIENCY = 0.5
+"""Efficiency below which a finding says so."""
+Progress = Callable[[str], None]
+
+
+@dataclass(frozen=True)
+class Solution:
+    """What the field solver says of a design.
+
+    `points` at the frequencies asked for, `gap_impedance_ohm` of the bare loop at each (line and strips
+    removed, an ideal source across the gap), `sweep` over the band asked for or None. `convergence` is the
+    change of the input impedance from the coarser mesh, of its magnitude, at the middle frequency.
+    """
+
+    points: tuple[PointResult, ...]
+    gap_impedance_ohm: tuple[complex, ...]
+    unknowns: int
+    convergence: float
+    sweep: Response | None
+    findings: tuple[Finding, ...]
+
+
+def solve_design(
+    design: Design,
+    frequencies: Sequence[float],
+    *,
+    sweep: tuple[float, float, int] | None = None,
+    progress: Progress = lambda stage: None,
+) -> Solution:
+    """Solve `design` at `frequencies` Hz and, where asked, over a `sweep` (low Hz, high Hz, points).
+
+    Raises `GeometryError` for copper the solver does not take and `RangeError` where the result is not
+    accurate enough.
+    """
+    stackup, layout = design.choices.stackup, design.layout
+    highest = max([*frequencies, *(sweep[:2] if sweep else ())])
+    progress("meshing")
+    problem = FieldProblem.prepare(layout, stackup, highest)
+    progress(f"solving {len(frequencies)} frequencies, {problem.basis.count} unknowns")
+    points = tuple(point_result(problem.solve(frequency)) for frequency in frequencies)
+    progress("solving the bare loop and the coarser mesh")
+    bare = FieldProblem.prepare(bare_loop_layout(design), stackup, highest)
+    gap = tuple(bare.solve(frequency).impedance for frequency in frequencies)
+    convergence = _convergence(design, points[len(points) // 2], highest)
+    response = None
+    if sweep is not None:
+        progress("sweeping")
+        response = _sweep(problem, sweep, design.choices.brief.target.impedance)
+    findings = tuple(_findings(design, points))
+    return Solution(points, gap, problem.basis.count, convergence, response, findings)
+
+
+def bare_loop_layout(design: Design) -> Layout:
+    """The loop alone with a port across its gap: no line, no strips, no connector."""
+    dimensions, level = design.dimensions, design.choices.levels[-1]
+    gap = dimensions["gap"] if "gap" in dimensions else dimensions["strip_gap"]
+    top = 0.5 * loop_height(dimensions)
+    islands = tuple(Island(level, outline, Role.RADIATOR) for outline in loop_copper(dimensions, gap))
+    reach = dimensions["loop_width"] + top
+    bare = replace(
+        design.layout,
+        levels=(level,),
+        islands=islands,
+        holes=(),
+        pads=(),
+        ports=(Port("gap", "gap", level, (0.0, top), (1.0, 0.0), gap, dimensions["trace_width"]),),
+        mask_openings=(),
+        legend=(),
+        edge=rectangle(-reach, -reach, reach, reach),
+        keepout=(),
+    )
+    return bare.snapped()
+
+
+def _convergence(design: Design, middle: PointResult, highest: float) -> float:
+    stackup = design.choices.stackup
+    coarse = default_settings(design.layout, stackup, highest, coarser=COARSER)
+    other = FieldProblem.prepare(design.layout, stackup, highest, coarse).solve(middle.frequency_hz).impedance
+    here = middle.input_impedance_ohm
+    convergence = abs(other - here) / abs(here)
+    if convergence > LEAST_CONVERGENCE:
+        raise RangeError(
+            f"the input impedance moves by {100 * convergence:.0f} % from a mesh {COARSER:g} times as coarse, at most "
+            f"{100 * LEAST_CONVERGENCE:.0f} % is accepted: this copper needs a finer mesh than the default"
+        )
+    return convergence
+
+
+def _sweep(problem: FieldProblem, sweep: tuple[float, float, int], reference: float) -> Response:
+    low, high, count = sweep
+    frequency = np.linspace(low, high, count)
+    model = port_model(problem, low, high, reference=reference)
+    return Response.from_impedance(frequency, model.impedance(frequency), z0=reference)
+
+
+def _findings(design: Design, points: Sequence[PointResult]) -> list[Finding]:
+    findings = []
+    worst = min(points, key=lambda point: point.efficiency)
+    if worst.efficiency < LOW_EFFICIENCY:
+        where = f"at {show(worst.frequency_hz, 'frequency', 4)}"
+        got = f"about {100.0 * worst.efficiency:.0f} %"
+        advice = "a metal plane close behind the loop or a lossy laminate takes the rest: move it away or change it"
+        findings.append(Finding("efficiency", where, got, f"{100.0 * LOW_EFFICIENCY:.0f} %", advice))
+    share = max(point.surface_wave_share for point in points)
+    advice = "the slab is taken as endless; on the board this part leaves at the edge and fills in the pattern"
+    got = f"up to {100.0 * share:.0f} % of the power is guided in the slab"
+    findings.append(Finding("board edge", "board", got, "endless slab", advice, Severity.NOTE))
+    return findings
