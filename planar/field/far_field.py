@@ -62,11 +62,12 @@ class FarField:
 
     @cached_property
     def axial_ratio_db(self) -> Array:
-        """Axial ratio, (n,) dB; infinite where linear."""
+        """Axial ratio, (n,) dB; infinite where linear and where there is no field."""
         right, left = (np.abs(part) for part in self.circular)
-        with np.errstate(divide="ignore"):
-            ratio: Array = 20.0 * np.log10((right + left) / np.abs(right - left))
-        return ratio
+        ratio = np.full(right.shape, np.inf)
+        np.divide(right + left, np.abs(right - left), out=ratio, where=right != left)
+        decibels: Array = 20.0 * np.log10(ratio)
+        return decibels
 
     def sense(self, index: int) -> str:
         """ "right", "left" or "linear" (axial ratio above 40 dB) at one direction."""

@@ -134,7 +134,7 @@ class FieldProblem:
             medium = without_loss(medium)
         field = self.matrix(frequency, medium)
         matrix = field + (sheet * self.overlap).toarray()
-        currents = np.linalg.solve(matrix, self.excitations.T)
+        currents: Complex = np.linalg.solve(matrix, self.excitations.T)
         return FieldSolution(self, frequency, medium, currents, sheet)
 
 

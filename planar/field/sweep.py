@@ -7,6 +7,7 @@ fill checks. A frequency then costs one factorisation, and a rational model of t
 
 from __future__ import annotations
 
+import itertools
 import math
 from dataclasses import dataclass
 
@@ -61,11 +62,12 @@ class MatrixSegment:
         """Field part of the moment matrix at `frequency` Hz, (n, n) ohm, by barycentric interpolation."""
         apart = frequency - self.nodes
         if np.any(apart == 0.0):
-            return self.matrices[int(np.argmin(np.abs(apart)))] / frequency
+            at_node: Complex = self.matrices[int(np.argmin(np.abs(apart)))] / frequency
+            return at_node
         angles = np.pi * (np.arange(NODES) + 0.5) / NODES
         weights = (-1.0) ** np.arange(NODES) * np.sin(angles) / apart
-        mixed: Complex = np.tensordot(weights / weights.sum(), self.matrices, axes=1)
-        return mixed / frequency
+        mixed: Complex = np.tensordot(weights / weights.sum(), self.matrices, axes=1) / frequency
+        return mixed
 
     def admittance(self, frequency: float) -> complex:
         """Admittance of the first port at `frequency` Hz, S."""
@@ -100,7 +102,7 @@ def port_model(problem: FieldProblem, low: float, high: float, *, reference: flo
     """
     count = max(1, math.ceil(math.log(high / low) / math.log(SEGMENT) - 1e-9))
     ends = low * (high / low) ** (np.arange(count + 1) / count)
-    segments = [MatrixSegment.between(problem, float(a), float(b)) for a, b in zip(ends, ends[1:], strict=False)]
+    segments = [MatrixSegment.between(problem, float(a), float(b)) for a, b in itertools.pairwise(ends)]
 
     def admittance(frequency: float) -> complex:
         number = min(count - 1, int(np.searchsorted(ends[1:-1], frequency)))

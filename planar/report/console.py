@@ -161,8 +161,8 @@ def print_solution(design: Design, solution: Solution) -> None:
         console.print(f"best match at {best}; below {level}: {', '.join(texts) or 'nowhere'}", highlight=False)
     console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in solution.findings]))
     console.print(
-        f"{solution.unknowns} unknowns; the input impedance moves by {100.0 * solution.convergence:.1f} % from a coarser "
-        "mesh; gain and axial ratio toward the top",
+        f"{solution.unknowns} unknowns; the input impedance moves by {100.0 * solution.convergence:.1f} % from a "
+        "coarser mesh; gain and axial ratio toward the top",
         highlight=False,
     )
 
