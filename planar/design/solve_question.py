@@ -44,6 +44,8 @@ def read_question(question: SolveQuestion, design: Design) -> tuple[tuple[float,
             ask.fault("sweep", f"{first} {last}", "the lower frequency comes first")
         if not 2 <= count <= MOST_POINTS:
             ask.fault("sweep", str(count), f"2 to {MOST_POINTS} points")
+    if question.s1p is not None and sweep is None:
+        ask.fault("s1p", str(question.s1p), "a Touchstone file holds a sweep: --sweep LOW HIGH N")
     if not ask.faults:
         asked = [*frequencies, *(sweep[:2] if sweep else ())]
         if max(asked) > WIDEST * min(asked) * (1.0 - 1e-9):

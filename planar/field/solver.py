@@ -134,7 +134,7 @@ class FieldProblem:
             medium = without_loss(medium)
         field = self.matrix(frequency, medium)
         matrix = field + (sheet * self.overlap).toarray()
-        currents: Complex = np.linalg.solve(matrix, self.excitations.T)
+        currents = np.asarray(np.linalg.solve(matrix, self.excitations.T), dtype=np.complex128)
         return FieldSolution(self, frequency, medium, currents, sheet)
 
 

@@ -66,8 +66,8 @@ class MatrixSegment:
             return at_node
         angles = np.pi * (np.arange(NODES) + 0.5) / NODES
         weights = (-1.0) ** np.arange(NODES) * np.sin(angles) / apart
-        mixed: Complex = np.tensordot(weights / weights.sum(), self.matrices, axes=1) / frequency
-        return mixed
+        mixed = np.tensordot(weights / weights.sum(), self.matrices, axes=1)
+        return np.asarray(mixed / frequency, dtype=np.complex128)
 
     def admittance(self, frequency: float) -> complex:
         """Admittance of the first port at `frequency` Hz, S."""

@@ -56,7 +56,11 @@ AIR = Slab(1e-3, 1.0)
 
 
 def stackup(
-    *below: Slab, above: Sequence[Slab] = (), metal: bool = False, two_sided: bool = False, mask_below: Slab | None = None
+    *below: Slab,
+    above: Sequence[Slab] = (),
+    metal: bool = False,
+    two_sided: bool = False,
+    mask_below: Slab | None = None,
 ) -> Stackup:
     """Copper on the slabs `below` (bottom to top), then those `above`; with a metal plane under all of it.
 
@@ -111,7 +115,9 @@ def guided_ring(radius: float = 46e-3, width: float = 6e-3, gap: float = 2e-3, l
     islands = [Island(Level.BOTTOM, outline, Role.RADIATOR) for outline in loop_copper(dimensions, gap)]
     islands.append(Island(Level.TOP, band(path, line), Role.LINE))
     (start, backward), (end, forward) = circle.at(half), circle.at(past)
-    return layout(islands, [drop("feed", start, (-backward[0], -backward[1]), line), drop("end", end, forward, line)], BOTH)
+    return layout(
+        islands, [drop("feed", start, (-backward[0], -backward[1]), line), drop("end", end, forward, line)], BOTH
+    )
 
 
 def straight_line(length: float, width: float, *, ground: float, margin: float) -> Layout:
@@ -150,8 +156,7 @@ def enlarged(original: Layout, factor: float) -> Layout:
         for p in original.ports
     )
     islands = tuple(
-        replace(island, outline=Outline(island.outline.vertices * (factor, factor, 1.0)))
-        for island in original.islands
+        replace(island, outline=Outline(island.outline.vertices * (factor, factor, 1.0))) for island in original.islands
     )
     return replace(original, islands=islands, ports=tuple(ports))
 
