@@ -3,7 +3,8 @@
 The outline of an island is sampled along its length and triangulated without inner points
 (constrained Delaunay): on strips that gives a ladder of rungs from edge to edge. Every rung is then
 divided by the cosine rule, so that cells are thin at both edges, where current crowds, whatever the
-width. Rungs are shared by the triangles beside them, so the mesh conforms by construction.
+width. Rungs are shared by the triangles beside them, so the mesh conforms by construction. Copper
+much wider than the step is halved along chords first.
 """
 
 from __future__ import annotations
@@ -17,7 +18,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 from shapely import constrained_delaunay_triangles, get_coordinates
-from shapely.geometry import Polygon
+from shapely.geometry import LineString, Polygon
 
 from planar.copper.arc import Edge, Point
 from planar.copper.outline import Outline
@@ -25,6 +26,8 @@ from planar.errors import GeometryError
 
 Points = NDArray[np.float64]
 Indices = NDArray[np.int64]
+FATTEST = 1.25
+"""Half-width of copper in steps above which a region is halved before it is meshed as ladders."""
 STEEPEST = math.pi / 8.0
 """rad, an arc turns no further than this between two points."""
 MERGE = 1e-10
@@ -162,6 +165,9 @@ def _region_triangles(boundary: Sequence[Point], settings: MeshSettings) -> list
     polygon = Polygon(boundary)
     if not polygon.is_valid:
         raise GeometryError("a sampled outline touches itself: the mesh step is too coarse for this copper")
+    if not polygon.buffer(-FATTEST * settings.step).is_empty:
+        halves = _halved(boundary, polygon, settings.step)
+        return [corners for half in halves for corners in _region_triangles(half, settings)]
     coarse = get_coordinates(list(constrained_delaunay_triangles(polygon).geoms)).reshape(-1, 4, 2)[:, :3]
     place = {_key(point): i for i, point in enumerate(boundary)}
     count = len(boundary)
@@ -176,6 +182,37 @@ def _region_triangles(boundary: Sequence[Point], settings: MeshSettings) -> list
             sides.append(_divided(corners[i], corners[(i + 1) % 3], 1 if on_boundary else _cells(corners, i, settings)))
         cells += _divided_triangle(corners, sides)
     return cells
+
+
+def _halved(boundary: Sequence[Point], polygon: Polygon, step: float) -> tuple[list[Point], list[Point]]:
+    """Two parts of a region too wide for a ladder, along the chord that best halves it.
+
+    The chord joins two boundary points, so that neighbours of the region see no new point.
+    """
+    points = np.array(boundary)
+    count = len(points)
+    following = np.roll(points, -1, axis=0)
+    swept = np.concatenate([[0.0], np.cumsum(0.5 * (points[:, 0] * following[:, 1] - following[:, 0] * points[:, 1]))])
+    i, j = np.triu_indices(count, 2)
+    closing = 0.5 * (points[j, 0] * points[i, 1] - points[i, 0] * points[j, 1])
+    part = swept[j] - swept[i] + closing
+    smaller = np.minimum(part, polygon.area - part)
+    length = np.linalg.norm(points[i] - points[j], axis=1)
+    with np.errstate(divide="ignore"):
+        score = np.where(smaller > 0.0, length**2 / smaller, np.inf)
+    inside = polygon.buffer(MERGE)
+    for best in np.argsort(score):
+        a, b = int(i[best]), int(j[best])
+        middle = LineString([points[a], points[b]])
+        if not np.isfinite(score[best]):
+            break
+        if inside.contains(middle) and middle.interpolate(0.5, normalized=True).distance(polygon.exterior) > 0.1 * step:
+            pieces = max(1, math.ceil(float(length[best]) / step - 1e-9))
+            chord = [tuple(points[a] + k / pieces * (points[b] - points[a])) for k in range(1, pieces)]
+            one = [*boundary[a : b + 1], *reversed(chord)]
+            other = [*boundary[b:], *boundary[: a + 1], *chord]
+            return one, other
+    raise GeometryError("a wide piece of copper cannot be divided for the mesh")
 
 
 def _key(point: Sequence[float]) -> tuple[int, int]:

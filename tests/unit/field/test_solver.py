@@ -1,0 +1,212 @@
+"""The field solver: invariants, losses, convergence and refusals.
+
+Authorities: reciprocity, mirror symmetry, scaling of Maxwell's equations and conservation of energy, all exact; for
+convergence the aims set for the solver (Z within 1 %, resonance within 0.2 % on a mesh twice as fine); for the mask
+the modal solution of tests/published/modal_ring.py and, as common practice, -0.2 to -0.4 % for 25 um on the copper.
+"""
+
+from types import ModuleType
+
+import numpy as np
+import pytest
+
+from planar.copper.layout import Island, Level, Role
+from planar.copper.shapes import rectangle
+from planar.errors import GeometryError
+from planar.field.solver import STEPS_PER_WAVELENGTH, FieldProblem
+from planar.units import SPEED_OF_LIGHT
+
+HEIGHT = 1.6e-3
+
+
+@pytest.fixture(scope="module")
+def two_level(field_cases: ModuleType) -> FieldProblem:
+    """The ring with its guided line: two ports, 862 unknowns."""
+    slab = field_cases.stackup(field_cases.Slab(HEIGHT, field_cases.FR4), two_sided=True)
+    problem: FieldProblem = field_cases.prepared(field_cases.guided_ring(), slab, 0.9e9, step=9e-3)
+    return problem
+
+
+def test_reciprocity(two_level: FieldProblem) -> None:
+    """The matrix is symmetric and both transfer admittances are one, 1e-10."""
+    solution = two_level.solve(0.9e9)
+    matrix = two_level.matrix(0.9e9, solution.medium)
+    assert np.max(np.abs(matrix - matrix.T)) < 1e-10 * np.max(np.abs(matrix))
+    forward, backward = solution.admittance[0, 1], solution.admittance[1, 0]
+    assert abs(forward - backward) < 1e-10 * abs(forward)
+
+
+def test_passivity(two_level: FieldProblem) -> None:
+    """The real part of the port admittances has no negative eigenvalue: no excitation gets power out."""
+    assert np.linalg.eigvalsh(two_level.solve(0.9e9).admittance.real).min() > 0.0
+
+
+@pytest.mark.parametrize("corner_radius", [None, 0.0, 6e-3])
+def test_mirror_symmetry(corner_radius: float | None, field_cases: ModuleType) -> None:
+    """A loop that is its own mirror image has the same impedance when mirrored, 1e-6."""
+    board = field_cases.loop(40e-3, 4e-3, 2e-3, corner_radius=corner_radius)
+    found = []
+    for each in (board, field_cases.mirrored(board)):
+        found.append(field_cases.prepared(each, field_cases.stackup(field_cases.AIR), 1e9, step=8e-3).solve(1e9).impedance)
+    assert abs(found[1] - found[0]) < 1e-6 * abs(found[0])
+
+
+def test_mirror_symmetry_of_the_mesh_limit(field_cases: ModuleType, two_level: FieldProblem) -> None:
+    """The ring with its line is no mirror image of itself, so its mirrored board is meshed otherwise: the Delaunay
+    triangulation of points on one circle is not unique, and which diagonal it takes depends on the order of points.
+    1e-6 is therefore not reached. What two such meshes may differ is what the mesh itself is worth: less than between
+    this mesh and the next finer one (step 6 mm).
+    """
+    board = field_cases.guided_ring()
+    slab = two_level.stackup
+    mirror = field_cases.prepared(field_cases.mirrored(board), slab, 0.9e9, step=9e-3).solve(0.9e9).impedance
+    finer = field_cases.prepared(board, slab, 0.9e9, step=6e-3).solve(0.9e9).impedance
+    original = two_level.solve(0.9e9).impedance
+    assert abs(mirror - original) < 5e-3 * abs(original)
+    assert abs(mirror - original) < abs(finer - original)
+
+
+def test_all_lengths_doubled(field_cases: ModuleType) -> None:
+    """Half the frequency gives the same impedance, 1e-9."""
+    board = field_cases.loop(23e-3, 3e-3, 2e-3)
+    small, large = (field_cases.stackup(field_cases.Slab(height, 4.4)) for height in (HEIGHT, 2.0 * HEIGHT))
+    first = field_cases.prepared(board, small, 2e9, step=6e-3).solve(2e9, lossless=True).impedance
+    doubled = field_cases.enlarged(board, 2.0)
+    second = field_cases.prepared(doubled, large, 1e9, step=12e-3).solve(1e9, lossless=True).impedance
+    assert abs(second - first) < 1e-9 * abs(first)
+
+
+def test_power_balance_in_free_space(field_cases: ModuleType) -> None:
+    """Accepted = radiated within 0.2 % without loss; with copper loss added within 1 %."""
+    copper = field_cases.stackup(field_cases.AIR, conductor=field_cases.SMOOTH_COPPER)
+    problem = field_cases.prepared(field_cases.loop(46e-3, 5e-3, 2e-3), copper, 1e9, step=6e-3)
+    quiet, lossy = problem.solve(1e9, lossless=True), problem.solve(1e9)
+    assert quiet.copper_loss == 0.0
+    assert quiet.dielectric_loss == 0.0
+    assert quiet.radiated == pytest.approx(quiet.accepted_power, rel=2e-3)
+    assert lossy.copper_loss > 0.0
+    assert lossy.radiated + lossy.copper_loss + lossy.dielectric_loss == pytest.approx(lossy.accepted_power, rel=1e-2)
+
+
+def test_nothing_leaves_downward_through_a_metal_plane(field_cases: ModuleType) -> None:
+    """Air over a plane carries no surface wave, so without loss all power is radiated upward: 0.2 %."""
+    stack = field_cases.stackup(field_cases.Slab(25e-3, 1.0), metal=True)
+    solution = field_cases.prepared(field_cases.loop(16e-3, 1e-3, 0.5e-3), stack, 3e9, step=2e-3).solve(3e9, lossless=True)
+    assert solution.radiated == pytest.approx(solution.accepted_power, rel=2e-3)
+
+
+def test_surface_wave_is_what_is_left_on_a_slab(field_cases: ModuleType) -> None:
+    """Without loss a slab keeps a share of the power, more of it the thicker it is; none comes from nowhere."""
+    shares = []
+    for height in (0.4e-3, 1.6e-3):
+        stack = field_cases.stackup(field_cases.Slab(height, 4.4))
+        solution = field_cases.prepared(field_cases.loop(16e-3, 1e-3, 0.5e-3), stack, 2.4e9, step=2e-3)
+        solution = solution.solve(2.4e9, lossless=True)
+        shares.append(1.0 - solution.radiated / solution.accepted_power)
+    assert 0.0 < shares[0] < shares[1] < 0.25
+
+
+@pytest.mark.parametrize("width", [3e-3, 6e-3])
+def test_twice_as_fine(width: float, field_cases: ModuleType) -> None:
+    """Half the default step, a loop for about 0.86 GHz on a bare slab: Z changes by < 1 %, resonance by < 0.2 %."""
+    board, frequency = field_cases.loop(50e-3, width, 2e-3), 0.8e9
+    stack = field_cases.stackup(field_cases.Slab(HEIGHT, field_cases.FR4), conductor=field_cases.SMOOTH_COPPER)
+    step = SPEED_OF_LIGHT / frequency / STEPS_PER_WAVELENGTH
+    coarse, fine = (field_cases.prepared(board, stack, 0.96e9, step=each) for each in (step, 0.5 * step))
+    first, second = (problem.solve(frequency).impedance for problem in (coarse, fine))
+    assert abs(second - first) < 0.01 * abs(second)
+    lower, upper = (field_cases.mode_resonance(problem, 0.04, 0.87e9) for problem in (coarse, fine))
+    assert abs(upper - lower) < 2e-3 * upper
+
+
+def mask_shifts(field_cases: ModuleType, width: float, mesh: tuple[float, int]) -> tuple[float, float]:
+    """Relative shift of mode 1 of a ring of 50 mm by 25 um of mask on the copper, and by more of it on the far side."""
+    board = field_cases.loop(50e-3, width, 1e-3)
+    mask, slab = field_cases.Slab(25e-6, field_cases.MASK), field_cases.Slab(HEIGHT, field_cases.FR4)
+    stacks = (
+        field_cases.stackup(slab),
+        field_cases.stackup(slab, above=(mask,)),
+        field_cases.stackup(mask, slab, above=(mask,)),
+    )
+    found = [
+        field_cases.mode_resonance(
+            field_cases.prepared(board, stack, 0.9e9, step=mesh[0], across=mesh[1]), 0.02, 0.85e9
+        )
+        for stack in stacks
+    ]
+    return found[1] / found[0] - 1.0, found[2] / found[1] - 1.0
+
+
+def test_mask(field_cases: ModuleType) -> None:
+    """25 um of mask on the copper of an 868 MHz type loop, trace 2 mm: -0.2 to -0.4 %, and a finer mesh changes that by
+    less than 5 %. The far side is further from the copper: its mask weighs half as much (see the next test).
+    """
+    coarse, fine = (mask_shifts(field_cases, 2e-3, mesh) for mesh in ((10e-3, 3), (6e-3, 4)))
+    for near, far in (coarse, fine):
+        assert -0.004 < near < -0.002
+        assert near < far < 0.0
+    assert abs(fine[0] - coarse[0]) < 0.05 * abs(fine[0])
+    assert abs(fine[1] - coarse[1]) < 0.05 * abs(fine[1])
+
+
+def test_mask_on_the_far_side(field_cases: ModuleType) -> None:
+    """Trace 3 mm: the modal solution goes from 860.898 to 859.976 MHz, -0.107 %, when the far side is masked too.
+
+    Recipe: modal_ring.resonance(Ring(50e-3, 3e-3), Stack(((1.6e-3, 4.4 - 0.088j), (25e-6, 3.5 - 0.0875j)), False, 1)),
+    the same with (25e-6, 3.5 - 0.0875j) in front and interface 2, bracket 0.8 to 0.9 GHz; it takes a minute. 15 % of a
+    shift that is a thousandth.
+    """
+    _, far = mask_shifts(field_cases, 3e-3, (6e-3, 3))
+    assert far == pytest.approx(859.975514 / 860.897703 - 1.0, rel=0.15)
+
+
+def test_overlapping_copper_is_refused(field_cases: ModuleType) -> None:
+    """Two islands of one level that cover each other are no board."""
+    board = field_cases.loop(46e-3, 5e-3, 2e-3)
+    patch = Island(Level.TOP, rectangle(-3e-3, -50e-3, 4e-3, -40e-3), Role.RADIATOR)
+    overlapping = field_cases.layout((*board.islands, patch), board.ports)
+    with pytest.raises(GeometryError, match="overlap"):
+        field_cases.prepared(overlapping, field_cases.stackup(field_cases.AIR), 1e9, step=8e-3)
+
+
+def test_port_without_copper_on_both_sides_is_refused(field_cases: ModuleType) -> None:
+    strip = Island(Level.TOP, rectangle(1e-3, -1e-3, 30e-3, 1e-3), Role.RADIATOR)
+    board = field_cases.loop(0.0 + 46e-3, 2e-3, 2e-3)
+    port = board.ports[0]
+    lonely = field_cases.layout([strip], [type(port)("feed", "gap", Level.TOP, (0.0, 0.0), (1.0, 0.0), 2e-3, 2e-3)])
+    with pytest.raises(GeometryError, match="no copper on both sides"):
+        field_cases.prepared(lonely, field_cases.stackup(field_cases.AIR), 1e9, step=8e-3)
+
+
+def test_vertical_port_without_copper_below_is_refused(field_cases: ModuleType) -> None:
+    strip = Island(Level.TOP, rectangle(0.0, -1e-3, 30e-3, 1e-3), Role.LINE)
+    below = Island(Level.BOTTOM, rectangle(10e-3, -5e-3, 40e-3, 5e-3), Role.RADIATOR)
+    board = field_cases.layout([strip, below], [field_cases.drop("feed", (0.0, 0.0), (-1.0, 0.0), 2e-3)], field_cases.BOTH)
+    slab = field_cases.stackup(field_cases.Slab(HEIGHT, field_cases.FR4), two_sided=True)
+    with pytest.raises(GeometryError, match="copper"):
+        field_cases.prepared(board, slab, 1e9, step=8e-3)
+
+
+def test_loop_larger_than_four_wavelengths_is_refused(field_cases: ModuleType) -> None:
+    """A square of 8 x 45 mm mean and 8 x 46 mm outer side is 4 wavelengths round at 3.26 GHz."""
+    board = field_cases.loop(45e-3, 2e-3, 1e-3, corner_radius=0.0)
+    with pytest.raises(GeometryError, match="wavelengths round"):
+        field_cases.prepared(board, field_cases.stackup(field_cases.AIR), 3.27e9, step=5e-3)
+    field_cases.prepared(board, field_cases.stackup(field_cases.AIR), 3.25e9, step=20e-3)
+
+
+def test_too_many_unknowns_are_refused(field_cases: ModuleType) -> None:
+    board = field_cases.loop(46e-3, 5e-3, 2e-3)
+    with pytest.raises(GeometryError, match="unknowns, at most"):
+        field_cases.prepared(board, field_cases.stackup(field_cases.AIR), 1e9, step=1e-3)
+
+
+def test_layout_without_port_is_refused(field_cases: ModuleType) -> None:
+    board = field_cases.loop(46e-3, 5e-3, 2e-3)
+    with pytest.raises(GeometryError, match="no port"):
+        field_cases.prepared(field_cases.layout(board.islands, ()), field_cases.stackup(field_cases.AIR), 1e9, step=8e-3)
+
+
+def test_frequency_above_the_prepared_range_is_refused(two_level: FieldProblem) -> None:
+    with pytest.raises(GeometryError, match="prepared for up to 900 MHz"):
+        two_level.solve(0.91e9)
