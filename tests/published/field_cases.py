@@ -179,9 +179,11 @@ def enlarged(original: Layout, factor: float) -> Layout:
     return replace(original, islands=islands, ports=tuple(ports))
 
 
-def prepared(board: Layout, stack: Stackup, highest: float, *, step: float, across: int = 3) -> FieldProblem:
-    """`FieldProblem.prepare` with a mesh `step` in m; `highest` frequency in Hz."""
-    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across))
+def prepared(
+    board: Layout, stack: Stackup, highest: float, *, step: float, across: int = 3, widest: float = math.inf
+) -> FieldProblem:
+    """`FieldProblem.prepare` with a mesh `step` in m, its widest cell `widest` m; `highest` frequency in Hz."""
+    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across, widest))
 
 
 def mode_current(solution: FieldSolution, order: int = 1) -> complex:

@@ -6,7 +6,7 @@ Butler 1982; C: 0.2 % at w/a 0.06, 1 % at 0.17)". Printed rings: "modal solution
 C means computed independently of this project from published equations, M from memory of the cited source.
 
 Mode 1 of a mesh solution: its current is the Fourier component I_1 of the current through the strip, its impedance
-sinc(gamma/2) V/I_1 because a source spread evenly over the gap angle gamma drives mode 1 with that share of its voltage.
+sinc(gamma/2) V/I_1: a source spread evenly over the gap angle gamma drives mode 1 with that share of its voltage.
 """
 
 import math
