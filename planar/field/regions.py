@@ -7,6 +7,7 @@ along it, so that the mesh has that line exactly.
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -19,11 +20,11 @@ from planar.copper.layout import Hole, Island, Layout, Level, Port, Role
 from planar.copper.outline import Outline
 from planar.errors import GeometryError
 from planar.field.basis import Row, Vertical
-from planar.field.mesh import MeshSettings, Region, cosine_fractions, sampled
+from planar.field.mesh import ON_EDGE, MeshSettings, Region, cosine_fractions, sampled
 from planar.units import VACUUM_PERMEABILITY
 
-ON_EDGE = 5e-9
-"""m, a few grid steps."""
+OVERLAP = 1e-11
+"""m2, more than the chord error of flattened outlines that only touch."""
 
 
 @dataclass(frozen=True)
@@ -55,6 +56,7 @@ def pieces_of(layout: Layout, numbers: dict[Level, int], settings: MeshSettings,
     their own vias. Raises `GeometryError` for a port or via without copper.
     """
     islands = [i for i in layout.islands if not (i.role is Role.GROUND and len(numbers) > 1)]
+    _check_apart(islands)
     vias = [h for h in layout.holes if h.plated and all(_around(islands, level, h.centre) for level in numbers)]
     drops = [_via_cut(hole, islands) for hole in vias]
     ports = [port for port in layout.ports if port.kind == "vertical"]
@@ -69,6 +71,13 @@ def pieces_of(layout: Layout, numbers: dict[Level, int], settings: MeshSettings,
     inductances = [via_inductance(hole.diameter, height) for hole in vias] + [0.0] * len(ports)
     verticals = [_vertical(cut, value, islands, numbers) for cut, value in zip(drops, inductances, strict=True)]
     return Pieces(tuple(regions), tuple(verticals), gaps, len(ports))
+
+
+def _check_apart(islands: Sequence[Island]) -> None:
+    """Raise `GeometryError` where two islands of one level overlap."""
+    for one, other in itertools.combinations(islands, 2):
+        if one.level == other.level and one.outline.shape().intersection(other.outline.shape()).area > OVERLAP:
+            raise GeometryError(f"two pieces of copper overlap on the {one.level.value} level: unite them first")
 
 
 def via_inductance(diameter: float, height: float) -> float:

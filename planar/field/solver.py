@@ -33,7 +33,7 @@ from planar.units import SPEED_OF_LIGHT
 Complex = NDArray[np.complex128]
 
 STEPS_PER_WAVELENGTH = 40.0
-"""Mesh steps along the copper in a free-space wavelength."""
+"""Mesh steps along the copper in a free-space wavelength; on one level cells are crossed."""
 CELL_HEIGHTS = 1.6
 """Widest cell across copper over another level, in the distance between them: return current gathers below a line."""
 LARGEST = 6000
@@ -198,7 +198,7 @@ def default_settings(layout: Layout, stackup: Stackup, frequency: float, *, coar
     """Mesh for `layout` at `frequency` Hz, `coarser` times the default size."""
     step = coarser * SPEED_OF_LIGHT / frequency / STEPS_PER_WAVELENGTH
     if len(layout.levels) == 1:
-        return MeshSettings(step)
+        return MeshSettings(step, crossed=True)
     return MeshSettings(step, widest=coarser * CELL_HEIGHTS * stackup.substrate.thickness)
 
 

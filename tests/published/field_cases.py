@@ -180,10 +180,17 @@ def enlarged(original: Layout, factor: float) -> Layout:
 
 
 def prepared(
-    board: Layout, stack: Stackup, highest: float, *, step: float, across: int = 3, widest: float = math.inf
+    board: Layout,
+    stack: Stackup,
+    highest: float,
+    *,
+    step: float,
+    across: int = 3,
+    widest: float = math.inf,
+    crossed: bool = False,
 ) -> FieldProblem:
     """`FieldProblem.prepare` with a mesh `step` in m, its widest cell `widest` m; `highest` frequency in Hz."""
-    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across, widest))
+    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across, widest, crossed))
 
 
 def mode_current(solution: FieldSolution, order: int = 1) -> complex:

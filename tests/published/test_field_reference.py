@@ -27,7 +27,7 @@ from planar.stackup import Conductor, Layer, LayerKind, Stackup
 
 FREQUENCY = 1.0e9
 RADIUS, TRACE, GAP = 46e-3, 5e-3, 2e-3
-SETTINGS = MeshSettings(14e-3, 2)
+SETTINGS = MeshSettings(14e-3, 2, crossed=True)
 STORED = 99.3663 - 129.6073j
 """Impedance in ohm that the library gave for the mesh described by `UNKNOWNS` and `SIDES`."""
 UNKNOWNS = 188

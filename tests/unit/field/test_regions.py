@@ -54,11 +54,6 @@ def test_gap_port_fills_the_gap(field_cases: ModuleType) -> None:
     assert points - sides + triangles == 0  # Euler's number of a ring; 1 if the source were not joined
 
 
-@pytest.mark.xfail(
-    strict=True,
-    raises=AssertionError,
-    reason="a row that ends within nanometres of a corner leaves a second point there, a sliver and doubled sides",
-)
 def test_vertical_rows_exist_on_both_levels(field_cases: ModuleType) -> None:
     """The mesh has sides exactly along both rows, together as long as the row."""
     result = pieces(field_cases.guided_ring())

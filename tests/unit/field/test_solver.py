@@ -11,7 +11,7 @@ from types import ModuleType
 import numpy as np
 import pytest
 
-from planar.copper.layout import Island, Level, Role
+from planar.copper.layout import Island, Layout, Level, Role
 from planar.copper.shapes import rectangle
 from planar.errors import GeometryError
 from planar.field.solver import STEPS_PER_WAVELENGTH, FieldProblem
@@ -42,16 +42,30 @@ def test_passivity(two_level: FieldProblem) -> None:
     assert np.linalg.eigvalsh(two_level.solve(0.9e9).admittance.real).min() > 0.0
 
 
-@pytest.mark.parametrize("corner_radius", [None, 0.0])
-def test_mirror_symmetry(corner_radius: float | None, field_cases: ModuleType) -> None:
-    """A loop that is its own mirror image has the same impedance when mirrored, 1e-6."""
+def test_mirror_symmetry(field_cases: ModuleType) -> None:
+    """A round loop is its own mirror image and has the same impedance when mirrored, 1e-6."""
+    board = field_cases.loop(40e-3, 4e-3, 2e-3)
+    original, mirror = mirror_pair(board, field_cases)
+    assert abs(mirror - original) < 1e-6 * abs(original)
+
+
+@pytest.mark.parametrize("corner_radius", [0.0, 6e-3])
+def test_mirror_symmetry_of_corners(corner_radius: float, field_cases: ModuleType) -> None:
+    """Corners are meshed from one end on, so 1e-6 is not reached (measured 3e-6 sharp, 4e-5 rounded). Bound: a tenth
+    of the 1 % that a mesh twice as fine may change.
+    """
     board = field_cases.loop(40e-3, 4e-3, 2e-3, corner_radius=corner_radius)
-    found = []
-    for each in (board, field_cases.mirrored(board)):
-        found.append(
-            field_cases.prepared(each, field_cases.stackup(field_cases.AIR), 1e9, step=8e-3).solve(1e9).impedance
-        )
-    assert abs(found[1] - found[0]) < 1e-6 * abs(found[0])
+    original, mirror = mirror_pair(board, field_cases)
+    assert abs(mirror - original) < 1e-3 * abs(original)
+
+
+def mirror_pair(board: Layout, field_cases: ModuleType) -> list[complex]:
+    """Impedance of a board and of its mirror image, in air."""
+    air = field_cases.stackup(field_cases.AIR)
+    return [
+        field_cases.prepared(each, air, 1e9, step=8e-3, crossed=True).solve(1e9).impedance
+        for each in (board, field_cases.mirrored(board))
+    ]
 
 
 def test_mirror_symmetry_where_the_mesh_differs(field_cases: ModuleType, two_level: FieldProblem) -> None:
@@ -67,18 +81,6 @@ def test_mirror_symmetry_where_the_mesh_differs(field_cases: ModuleType, two_lev
     )
     assert abs(mirror - original) < 5e-3 * abs(original)
     assert abs(mirror - original) < abs(finer - original)
-
-
-def test_mirror_symmetry_of_rounded_corners(field_cases: ModuleType) -> None:
-    """Rounded corners are meshed from one end on, so 1e-6 is not reached (measured 4e-5). Bound: a tenth of
-    the 1 % that a mesh twice as fine may change.
-    """
-    board = field_cases.loop(40e-3, 4e-3, 2e-3, corner_radius=6e-3)
-    original, mirror = (
-        field_cases.prepared(each, field_cases.stackup(field_cases.AIR), 1e9, step=8e-3).solve(1e9).impedance
-        for each in (board, field_cases.mirrored(board))
-    )
-    assert abs(mirror - original) < 1e-3 * abs(original)
 
 
 def test_all_lengths_doubled(field_cases: ModuleType) -> None:
@@ -123,22 +125,13 @@ def test_surface_wave_is_what_is_left_on_a_slab(field_cases: ModuleType) -> None
     assert 0.0 < shares[0] < shares[1] < 0.25
 
 
-NARROW = pytest.mark.xfail(
-    strict=True,
-    raises=AssertionError,
-    reason="40 steps a wavelength: Z changes by 1.8 % (2 mm trace) and 1.4 % (3 mm), resonance by 0.21 and 0.19 %",
-)
-
-
-@pytest.mark.parametrize(
-    "width", [pytest.param(2e-3, marks=NARROW), pytest.param(3e-3, marks=NARROW), 6e-3], ids=["2 mm", "3 mm", "6 mm"]
-)
+@pytest.mark.parametrize("width", [2e-3, 3e-3, 6e-3], ids=["2 mm", "3 mm", "6 mm"])
 def test_twice_as_fine(width: float, field_cases: ModuleType) -> None:
     """Half the default step, a loop for about 0.86 GHz on a bare slab: Z changes by < 1 %, resonance by < 0.2 %."""
     board, frequency = field_cases.loop(50e-3, width, 2e-3), 0.8e9
     stack = field_cases.stackup(field_cases.Slab(HEIGHT, field_cases.FR4), conductor=field_cases.SMOOTH_COPPER)
     step = SPEED_OF_LIGHT / frequency / STEPS_PER_WAVELENGTH
-    coarse, fine = (field_cases.prepared(board, stack, 0.96e9, step=each) for each in (step, 0.5 * step))
+    coarse, fine = (field_cases.prepared(board, stack, 0.96e9, step=each, crossed=True) for each in (step, 0.5 * step))
     first, second = (problem.solve(frequency).impedance for problem in (coarse, fine))
     assert abs(second - first) < 0.01 * abs(second)
     lower, upper = (field_cases.mode_resonance(problem, 0.04, 0.87e9) for problem in (coarse, fine))
@@ -186,9 +179,6 @@ def test_mask_on_the_far_side(field_cases: ModuleType) -> None:
     assert far == pytest.approx(859.975514 / 860.897703 - 1.0, rel=0.15)
 
 
-@pytest.mark.xfail(
-    strict=True, raises=pytest.fail.Exception, reason="only copper with common triangle sides is noticed"
-)
 def test_overlapping_copper_is_refused(field_cases: ModuleType) -> None:
     """Two islands of one level that cover each other are no board."""
     board = field_cases.loop(46e-3, 5e-3, 2e-3)
