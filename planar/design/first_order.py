@@ -15,13 +15,11 @@ from planar.design.choices import Choices
 from planar.design.line_size import (
     LineSettings,
     line_settings,
-    microstrip,
     microstrip_width,
     rounded,
     rounded_up,
     strip_reach,
     strip_width_and_gap,
-    strips,
 )
 from planar.design.loop_size import (
     LONGEST_ASPECT,
@@ -197,7 +195,7 @@ def _strips(choices: Choices, dimensions: Dimensions, resistance: float, setting
             f"{high**2 / resistance:.0f} ohm"
         )
     width, gap = strip_width_and_gap(impedance, settings, least)
-    line = strips(width, gap, settings)
+    line = settings.analysed("coplanar-strips", width, gap=gap)
     return {
         "strip_width": width,
         "strip_gap": gap,
@@ -222,7 +220,7 @@ def _guided(choices: Choices, dimensions: Dimensions, resistance: float, setting
             f"the transformer of {impedance:.0f} ohm would be {show(narrow, 'length', 3)} wide, the fab etches "
             f"{least}: choose a thicker board, a lower permittivity or a finer fab"
         )
-    section = microstrip(narrow, settings)
+    section = settings.analysed("microstrip", narrow)
     gap = _loop_gap(choices)
     sized = {
         "gap": gap,
@@ -234,7 +232,7 @@ def _guided(choices: Choices, dimensions: Dimensions, resistance: float, setting
         via = detail_dimensions(choices, dimensions)
         pad = via["via_drill"] + 2.0 * via["via_ring"]
         return sized | {"end_width": rounded_up(pad), "end_length": rounded(0.5 * gap + pad)}
-    end = microstrip(line_width, settings)
+    end = settings.analysed("microstrip", line_width)
     substrate = settings.substrate
     fringe = open_end_extension(line_width, substrate.height, substrate.eps_r, min(end.eps_eff, substrate.eps_r))
     return sized | {"end_width": line_width, "end_length": rounded(end.quarter_wave - fringe)}

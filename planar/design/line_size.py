@@ -16,7 +16,7 @@ from planar.design.choices import Choices
 from planar.design.loop_size import layers_of
 from planar.errors import SynthesisError
 from planar.lines.coplanar import coplanar_gap_limits
-from planar.lines.line import Line, analyse, line_kind, wave
+from planar.lines.line import Line, analyse, line_kind
 from planar.lines.records import Conductor, Substrate
 from planar.lines.synthesis import Sensitivities, gap_for_impedance, sensitivities, width_for_impedance
 from planar.stackup import loss_tangent
@@ -49,11 +49,41 @@ class DesignLine:
 
 @dataclass(frozen=True)
 class LineSettings:
-    """What every line of a design is worked out on, at the middle of the band."""
+    """What every line of a design is worked out on, and the line formulas on it; `frequency` in Hz.
+
+    Widths, gaps in m, impedances in ohm. Errors are those of `planar.lines`.
+    """
 
     substrate: Substrate
     conductor: Conductor
     frequency: float
+
+    def analysed(self, kind: str, width: float, *, gap: float | None = None) -> Line:
+        """The line of a `kind`, with losses."""
+        return analyse(
+            kind, width, gap=gap, substrate=self.substrate, conductor=self.conductor, frequency=self.frequency
+        )
+
+    def impedance(self, kind: str, width: float, *, gap: float | None = None) -> float:
+        """Its impedance alone, which is quicker."""
+        place = (self.substrate, self.conductor, self.frequency)
+        return line_kind(kind).wave(width, gap, *place)[0]
+
+    def of_impedance(self, kind: str, impedance: float, *, gap: float | None = None) -> Line:
+        """The line whose width gives `impedance`."""
+        return width_for_impedance(
+            kind, impedance, gap=gap, substrate=self.substrate, conductor=self.conductor, frequency=self.frequency
+        )
+
+    def of_width(self, kind: str, impedance: float, *, width: float) -> Line:
+        """The line whose gap gives `impedance` at a `width`."""
+        return gap_for_impedance(
+            kind, impedance, width=width, substrate=self.substrate, conductor=self.conductor, frequency=self.frequency
+        )
+
+    def sensitivities(self, line: Line) -> Sensitivities:
+        """Slopes of the impedance of `line`."""
+        return sensitivities(line, substrate=self.substrate, conductor=self.conductor)
 
 
 def line_settings(choices: Choices) -> LineSettings:
@@ -71,13 +101,7 @@ def line_settings(choices: Choices) -> LineSettings:
 
 def microstrip_width(impedance: float, settings: LineSettings) -> float:
     """Width m of a microstrip of `impedance` ohm, rounded. Raises `SynthesisError` where none has it."""
-    line = width_for_impedance(
-        "microstrip",
-        impedance,
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-    )
+    line = settings.of_impedance("microstrip", impedance)
     return rounded(line.width)
 
 
@@ -97,23 +121,9 @@ def strip_width_and_gap(impedance: float, settings: LineSettings, least: tuple[f
     if (
         impedance > _span(gap, settings, least)[1]
     ):  # between two usual gaps: the narrowest strips and a gap of their own
-        line = gap_for_impedance(
-            "coplanar-strips",
-            impedance,
-            width=_narrowest(least),
-            substrate=settings.substrate,
-            conductor=settings.conductor,
-            frequency=settings.frequency,
-        )
+        line = settings.of_width("coplanar-strips", impedance, width=_narrowest(least))
     else:
-        line = width_for_impedance(
-            "coplanar-strips",
-            impedance,
-            gap=gap,
-            substrate=settings.substrate,
-            conductor=settings.conductor,
-            frequency=settings.frequency,
-        )
+        line = settings.of_impedance("coplanar-strips", impedance, gap=gap)
     return max(rounded(line.width), rounded_up(least[0])), max(rounded(line.gap or gap), rounded_up(least[1]))
 
 
@@ -144,29 +154,21 @@ def _span(gap: float, settings: LineSettings, least: tuple[float, float]) -> tup
     """Impedance, ohm, of the widest and the narrowest usable strips `gap` m apart."""
     limits = line_kind("coplanar-strips").width_limits(gap, settings.substrate, settings.conductor, settings.frequency)
     widest = min(STRIP_WIDTHS[1], limits[1])
-    return _strip_impedance(widest, gap, settings), _strip_impedance(_narrowest(least), gap, settings)
-
-
-def _strip_impedance(width: float, gap: float, settings: LineSettings) -> float:
-    return wave(
-        "coplanar-strips",
-        width,
-        gap=gap,
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-    )[0]
+    return settings.impedance("coplanar-strips", widest, gap=gap), settings.impedance(
+        "coplanar-strips", _narrowest(least), gap=gap
+    )
 
 
 def design_lines(dimensions: dict[str, float], choices: Choices, settings: LineSettings) -> tuple[DesignLine, ...]:
     """The lines drawn by `dimensions`, analysed as drawn."""
     if "strip_width" in dimensions:
-        line = strips(dimensions["strip_width"], dimensions["strip_gap"], settings)
+        line = settings.analysed("coplanar-strips", dimensions["strip_width"], gap=dimensions["strip_gap"])
         return (_described("strip_width", line, "the other strip", choices, settings),)
     names = [name for name in ("line_width", "transformer_width", "end_width") if name in dimensions]
     reference = f"loop trace on bottom, {show(dimensions['trace_width'], 'length', 4)} wide"
     return tuple(
-        _described(name, microstrip(dimensions[name], settings), reference, choices, settings) for name in names
+        _described(name, settings.analysed("microstrip", dimensions[name]), reference, choices, settings)
+        for name in names
     )
 
 
@@ -180,31 +182,8 @@ def rounded_up(length: float) -> float:
     return round(math.ceil(length / STEP - 1e-6) * STEP, STEP_DIGITS)
 
 
-def microstrip(width: float, settings: LineSettings) -> Line:
-    """Microstrip `width` m wide, analysed."""
-    return analyse(
-        "microstrip",
-        width,
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-    )
-
-
-def strips(width: float, gap: float, settings: LineSettings) -> Line:
-    """Coplanar strips `width` m wide with `gap` m between them, analysed."""
-    return analyse(
-        "coplanar-strips",
-        width,
-        gap=gap,
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-    )
-
-
 def _described(name: str, line: Line, reference: str, choices: Choices, settings: LineSettings) -> DesignLine:
-    slopes = sensitivities(line, substrate=settings.substrate, conductor=settings.conductor)
+    slopes = settings.sensitivities(line)
     laminate, fab = choices.laminate, choices.fab
     etch = slopes.ohm_per_25_um_etch * 2.0 * fab.etch_tolerance / 25e-6
     height = slopes.ohm_per_10_percent_height * laminate.thickness_tolerance / 0.10

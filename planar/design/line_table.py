@@ -15,7 +15,6 @@ from planar.library import Fab, Laminate
 from planar.lines.line import Line
 from planar.lines.records import Conductor, Substrate
 from planar.lines.static_spectral import DielectricLayer
-from planar.lines.synthesis import sensitivities, width_for_impedance
 from planar.stackup import loss_tangent
 from planar.units import show
 
@@ -86,7 +85,7 @@ def _row(material: Material, height: float, impedance: float, request: LineReque
     settings = _settings(material, height, request)
     try:
         line = _line(impedance, settings, request)
-        slopes = sensitivities(line, substrate=settings.substrate, conductor=settings.conductor)
+        slopes = settings.sensitivities(line)
     except PlanarError as error:
         note = error.reason if isinstance(error, SynthesisError) else str(error)
         return replace(head, note=note)
@@ -120,14 +119,7 @@ def _line(impedance: float, settings: LineSettings, request: LineRequest) -> Lin
     gap = request.gap
     if request.kind == "coplanar-strips" and gap is None:
         _, gap = strip_width_and_gap(impedance, settings, (request.fab.min_track, request.fab.min_gap))
-    return width_for_impedance(
-        request.kind,
-        impedance,
-        substrate=settings.substrate,
-        conductor=settings.conductor,
-        frequency=settings.frequency,
-        gap=gap,
-    )
+    return settings.of_impedance(request.kind, impedance, gap=gap)
 
 
 def _missed(line: Line, fab: Fab) -> str:
