@@ -32,7 +32,7 @@ seen from the top, the current turns clockwise, which is left-handed toward the 
 
 _LINE_MATCH = {
     "coax": "not predicted by line formulas: the loop trace is a narrow ground and carries antenna current",
-    "balanced": "line formulas match the resonant loop at the middle of the band; over the band it is not predicted",
+    "balanced": "line formulas match the resonant loop at the middle of the band; over the band planar solve does",
 }
 
 
@@ -78,7 +78,7 @@ class Design:
         match = " The match over the band is not predicted."
         return (
             f"First-order dimensions from line and loop formulas, not field-solved: expected frequency error {error}."
-            f"{match} Do not order a quantity from them: build one, measure it, then decide."
+            f"{match} Run planar solve on them, build one board and measure it before ordering a quantity."
         )
 
 
@@ -157,7 +157,7 @@ def _cautions(design: Design) -> list[Finding]:
     findings = []
     if not design.given:
         error = show(design.frequency_error, "fraction", 2)
-        advice = "treat these dimensions as a start; verify before ordering"
+        advice = "treat these dimensions as a start: planar solve says what they do"
         findings.append(
             Finding("first-order sizing", "dimensions", f"frequency within {error}", "field solution", advice)
         )
