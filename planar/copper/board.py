@@ -188,6 +188,8 @@ def _legend(
     bottom = y - 0.5 * height
     feed_inside = bottom < 0.0 < y + 0.5 * height
     middle = 0.5 * (bottom - FEED_KEPT_CLEAR) if feed_inside else y - 0.2 * height
+    # the two sides apart, so that they can be read with all layers shown
+    height_of = {Level.TOP: middle, Level.BOTTOM: y + 0.2 * height}
     stroke = request.fab.legend_min_stroke
     path = "DC SHORT INTENDED" if layout.dc_short else "NO DC SHORT"
     texts = {Level.TOP: [request.name, "TOP", path, "ORIGIN AT FEED"], Level.BOTTOM: [request.name, "BOTTOM", path]}
@@ -201,7 +203,7 @@ def _legend(
         if size is None:
             lines, size = [level.value], LETTER_HEIGHTS[-1]
         for i, line in enumerate(lines):
-            place = (x, middle - 1.8 * size * (i - 0.5 * (len(lines) - 1)))
+            place = (x, height_of[level] - 1.8 * size * (i - 0.5 * (len(lines) - 1)))
             pen = max(stroke, size / 10.0)
             legend[level].append(lettered(line, place, size, stroke=pen, mirrored=level is Level.BOTTOM))
     legend[Level.TOP] += [[mark] for mark in _origin_marks(stroke)]
