@@ -67,8 +67,10 @@ def solve_design(
     progress(f"solving {len(frequencies)} frequencies, {problem.basis.count} unknowns")
     points = tuple(point_result(problem.solve(frequency)) for frequency in frequencies)
     progress("solving the bare loop and the coarser mesh")
-    bare = FieldProblem.prepare(bare_loop_layout(design), stackup, highest)
-    gap = tuple(bare.solve(frequency).impedance for frequency in frequencies)
+    gap = tuple(point.input_impedance_ohm for point in points)
+    if design.lines:  # without a line the board is the bare loop
+        bare = FieldProblem.prepare(bare_loop_layout(design), stackup, highest)
+        gap = tuple(bare.solve(frequency).impedance for frequency in frequencies)
     convergence = _convergence(design, points[len(points) // 2], highest)
     response = None
     if sweep is not None:

@@ -142,16 +142,16 @@ def triangle_matrices(
             matrix[q, p] = moments.second[:, axis]
 
     # far pairs are one point each: their moments follow from the kernel between centroids
-    for each, kernel in zip(pairs, kernels, strict=True):
-        vector, charges = each.far.values(_tables(kernel, grid)[1])
+    tables = [_tables(kernel, grid) for kernel in kernels]
+    for each, (_, whole) in zip(pairs, tables, strict=True):
+        vector, charges = each.far.values(whole)
         for matrix, values in ((zero, vector[:, 0]), (scalar, charges[:, 0])):
             matrix[each.far.p, each.far.q] = values
             matrix[each.far.q, each.far.p] = values
     x, y = centroids.T
     first_x, first_y = zero * x[:, None], zero * y[:, None]
     product = first_x * x + first_y * y
-    for each, kernel in zip(pairs, kernels, strict=True):
-        smooth, whole = _tables(kernel, grid)
+    for each, kernel, (smooth, whole) in zip(pairs, kernels, tables, strict=True):
         put(each.near, *_with_images(each, kernel, each.near.moments(smooth)))
         put(each.middle, *each.middle.moments(whole))
     return TriangleMatrices(zero, first_x, first_y, product, scalar)

@@ -38,14 +38,13 @@ class Cut:
 
 @dataclass(frozen=True)
 class Pieces:
-    """What is meshed and what drives it. `levels` maps a level to its number in the mesh.
+    """What is meshed and what drives it.
 
     `verticals` holds the vias first, then the vertical ports in the order of the layout.
     """
 
     regions: tuple[Region, ...]
     verticals: tuple[Vertical, ...]
-    gap_ports: tuple[Port, ...]
     vertical_ports: int
 
 
@@ -70,7 +69,7 @@ def pieces_of(layout: Layout, numbers: dict[Level, int], settings: MeshSettings,
         regions.append(_source_patch(port, [i for i in islands if i.level == port.level], numbers, settings))
     inductances = [via_inductance(hole.diameter, height) for hole in vias] + [0.0] * len(ports)
     verticals = [_vertical(cut, value, islands, numbers) for cut, value in zip(drops, inductances, strict=True)]
-    return Pieces(tuple(regions), tuple(verticals), gaps, len(ports))
+    return Pieces(tuple(regions), tuple(verticals), len(ports))
 
 
 def _check_apart(islands: Sequence[Island]) -> None:

@@ -113,6 +113,10 @@ class FieldProblem:
         moments = triangle_matrices(self.mesh.centroids, self.pairs, kernels, self.grid)
         return moment_matrix(self.basis, moments, frequency)
 
+    def with_copper(self, field: Complex, sheet: complex) -> Complex:
+        """The moment matrix `field` with the copper's `sheet` impedance, ohm, added."""
+        return np.asarray(field + (sheet * self.overlap).toarray(), dtype=np.complex128)
+
     def sheet_impedance(self, frequency: float) -> complex:
         """Surface impedance of the copper sheet at `frequency` Hz, ohm.
 
@@ -132,8 +136,7 @@ class FieldProblem:
         sheet = 0.0j if lossless else self.sheet_impedance(frequency)
         if lossless:
             medium = without_loss(medium)
-        field = self.matrix(frequency, medium)
-        matrix = field + (sheet * self.overlap).toarray()
+        matrix = self.with_copper(self.matrix(frequency, medium), sheet)
         currents = np.asarray(np.linalg.solve(matrix, self.excitations.T), dtype=np.complex128)
         return FieldSolution(self, frequency, medium, currents, sheet)
 

@@ -72,7 +72,7 @@ class MatrixSegment:
     def admittance(self, frequency: float) -> complex:
         """Admittance of the first port at `frequency` Hz, S."""
         problem = self.problem
-        matrix = self.matrix(frequency) + (problem.sheet_impedance(frequency) * problem.overlap).toarray()
+        matrix = problem.with_copper(self.matrix(frequency), problem.sheet_impedance(frequency))
         port = problem.excitations[0]
         return complex(port @ np.linalg.solve(matrix, port))
 

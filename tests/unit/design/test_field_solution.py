@@ -57,3 +57,14 @@ def test_bare_loop_has_no_line_and_a_port_across_its_gap(brief: MakeBrief, libra
     assert (port.kind, port.length, port.width) == ("gap", design.dimensions["gap"], design.dimensions["trace_width"])
     problem = FieldProblem.prepare(bare, design.choices.stackup, design.choices.centre, MeshSettings(16e-3))
     assert problem.mesh.source.any()
+
+
+def test_bare_loop_of_a_plain_board_is_the_board(brief: MakeBrief, library: Library) -> None:
+    """A board without a line is its own bare loop: the same copper, another origin, so 1e-6."""
+    design = make_design(brief(antenna={"family": "plain"}), library, "x")
+    centre, settings = design.choices.centre, MeshSettings(20e-3, crossed=True)
+    board, bare = (
+        FieldProblem.prepare(layout, design.choices.stackup, centre, settings).solve(centre).impedance
+        for layout in (design.layout, bare_loop_layout(design))
+    )
+    assert abs(bare - board) < 1e-6 * abs(board)
