@@ -61,6 +61,8 @@ def pieces_of(layout: Layout, numbers: dict[Level, int], settings: MeshSettings,
     ports = [port for port in layout.ports if port.kind == "vertical"]
     drops += [Cut(p.centre, (-p.direction[1], p.direction[0]), p.width) for p in ports]
     gaps = tuple(port for port in layout.ports if port.kind == "gap")
+    if len(gaps) > 1:  # the source cells of several would be driven together
+        raise GeometryError(f"{len(gaps)} ports across gaps, the solver drives one")
     regions: list[Region] = []
     for island in islands:
         marks = [m for port in gaps if port.level == island.level for m in _gap_marks(port, island, settings)]

@@ -4,6 +4,7 @@ Authorities: geometry; Neumann's double integral for the inductance of a via.
 """
 
 import math
+from dataclasses import replace
 from types import ModuleType
 
 import numpy as np
@@ -106,3 +107,11 @@ def test_gap_port_without_copper_on_one_side_is_refused(field_cases: ModuleType)
     half = Island(Level.TOP, rectangle(1e-3, 43.5e-3, 20e-3, 48.5e-3), Role.RADIATOR)
     with pytest.raises(GeometryError, match="no copper on both sides"):
         pieces(field_cases.layout([half], board.ports))
+
+
+def test_two_ports_across_gaps_are_refused(field_cases: ModuleType) -> None:
+    """Their source cells would be driven together, and both impedances would be wrong."""
+    board = field_cases.loop(46e-3, 5e-3, 2e-3)
+    twice = replace(board, ports=(*board.ports, replace(board.ports[0], name="other")))
+    with pytest.raises(GeometryError, match="2 ports across gaps, the solver drives one"):
+        pieces(twice)
