@@ -16,9 +16,9 @@ from planar.copper.layout import Island, Layout, Port, Role
 from planar.copper.shapes import rectangle
 from planar.design.design import Design
 from planar.errors import Finding, RangeError, Severity
+from planar.field.band import checked_band
 from planar.field.result import PointResult, point_result
 from planar.field.solver import FieldProblem, default_settings
-from planar.field.sweep import port_model
 from planar.network.response import Response
 from planar.units import show
 
@@ -119,8 +119,8 @@ def _convergence(design: Design, middle: PointResult, highest: float) -> float:
 def _sweep(problem: FieldProblem, sweep: tuple[float, float, int], reference: float) -> Response:
     low, high, count = sweep
     frequency = np.linspace(low, high, count)
-    model = port_model(problem, low, high, reference=reference)
-    return Response.from_impedance(frequency, model.impedance(frequency), z0=reference)
+    band = checked_band(problem, low, high, reference=reference)
+    return Response.from_impedance(frequency, band.impedance(frequency), z0=reference)
 
 
 def _findings(design: Design, points: Sequence[PointResult]) -> list[Finding]:

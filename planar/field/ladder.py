@@ -1,4 +1,4 @@
-"""One region of copper as a mesh: a ladder of rungs, divided across by the cosine rule.
+"""One region of copper as a mesh: a ladder of rungs, each divided across.
 
 The boundary points alone are triangulated (constrained Delaunay): on a strip that gives rungs from
 edge to edge. Where two triangles make a quadrangle of the strip their shared rung is left out. Every
@@ -12,7 +12,7 @@ from __future__ import annotations
 import itertools
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,6 +21,7 @@ from shapely.geometry import LineString, Polygon
 
 from planar.copper.arc import Point
 from planar.errors import GeometryError
+from planar.field.rungs import MeshSettings, Shadow, rung_points
 
 Points = NDArray[np.float64]
 NEAR = 1e-10
@@ -29,38 +30,19 @@ FATTEST = 1.25
 """Half-width of copper in steps above which a region is halved before it is meshed as ladders."""
 
 
-@dataclass(frozen=True)
-class MeshSettings:
-    """`step` m along edges, at least `across` cells across a strip, none wider than `widest` m.
-
-    `crossed` divides every cell of a lane by both diagonals: twice the unknowns, and a mesh without a sense
-    of its own, so that a mirrored board has the mirrored mesh.
-    """
-
-    step: float
-    across: int = 3
-    widest: float = math.inf
-    crossed: bool = False
-
-
-def cosine_fractions(cells: int) -> Points:
-    """Inner division points of a rung into `cells`, finest at both ends."""
-    return 0.5 * (1.0 - np.cos(np.pi * np.arange(1, cells) / cells))
-
-
 Corners = tuple[Point, Point, Point]
 
 
-def region_triangles(boundary: Sequence[Point], settings: MeshSettings) -> list[Corners]:
+def region_triangles(boundary: Sequence[Point], settings: MeshSettings, shadow: Shadow | None = None) -> list[Corners]:
     """Cells of the region inside `boundary`, each three points. Raises `GeometryError` when it touches itself."""
     polygon = Polygon(boundary)
     if not polygon.is_valid:
         raise GeometryError("a sampled outline touches itself: the mesh step is too coarse for this copper")
     if not polygon.buffer(-FATTEST * settings.step).is_empty:
         halves = _halved(boundary, polygon, settings.step)
-        return [corners for half in halves for corners in region_triangles(half, settings)]
+        return [corners for half in halves for corners in region_triangles(half, settings, shadow)]
     coarse = _coarse_triangles(boundary, polygon)
-    ladder = _Ladder(boundary, settings)
+    ladder = _Ladder(boundary, settings, shadow)
     pairs = _pairs(coarse, ladder)
     single = set(coarse) - {triangle for pair in pairs for triangle in pair}
     cells = [cell for pair in pairs for cell in ladder.quadrangle(*pair)]
@@ -83,6 +65,8 @@ class _Ladder:
 
     boundary: Sequence[Point]
     settings: MeshSettings
+    shadow: Shadow | None
+    known: dict[tuple[int, int], list[Point]] = field(default_factory=dict)
 
     def is_rung(self, a: int, b: int) -> bool:
         """Whether the side between two boundary points crosses the copper."""
@@ -93,8 +77,15 @@ class _Ladder:
 
     def divided(self, a: int, b: int) -> list[Point]:
         """Points from `a` up to, not including, `b`: inner ones on rungs only."""
-        cells = _cells(self.length(a, b), self.settings) if self.is_rung(a, b) else 1
-        return _divided(self.boundary[a], self.boundary[b], cells)
+        inner = self.inner(a, b) if self.is_rung(a, b) else []
+        return [self.boundary[a], *inner]
+
+    def inner(self, a: int, b: int) -> list[Point]:
+        """Inner points of the rung from boundary point `a` to `b`, worked out once for both ways."""
+        if (a, b) not in self.known:
+            points = rung_points(self.boundary[a], self.boundary[b], self.settings, self.shadow)
+            self.known[a, b], self.known[b, a] = points, points[::-1]
+        return self.known[a, b]
 
     def triangle(self, triple: Triple) -> list[Corners]:
         """Cells of a coarse triangle."""
@@ -192,21 +183,6 @@ def _key(point: Sequence[float]) -> tuple[int, int]:
     return round(point[0] / 1e-11), round(point[1] / 1e-11)
 
 
-def _cells(length: float, settings: MeshSettings) -> int:
-    cells = settings.across
-    while length * math.sin(0.5 * math.pi / cells) > min(settings.step, settings.widest):  # the widest cell
-        cells += 1
-    return cells
-
-
-def _divided(start: Point, end: Point, cells: int) -> list[Point]:
-    """`start` and the inner points of a rung, computed alike from either end."""
-    swap = end < start
-    (x0, y0), (x1, y1) = (end, start) if swap else (start, end)
-    inner = [(x0 + f * (x1 - x0), y0 + f * (y1 - y0)) for f in cosine_fractions(cells)]
-    return [start, *(reversed(inner) if swap else inner)]
-
-
 def _divided_triangle(corners: Sequence[Point], sides: Sequence[list[Point]]) -> list[Corners]:
     """Cells of a triangle whose sides carry division points (each list leaves out its end)."""
     divided = [len(side) > 1 for side in sides]
@@ -228,12 +204,16 @@ def _divided_triangle(corners: Sequence[Point], sides: Sequence[list[Point]]) ->
 
 
 def _zipped(first: Sequence[Point], second: Sequence[Point]) -> list[Corners]:
-    """Triangles between two rungs that start in one point, always along the shorter diagonal."""
-    cells: list[Corners] = [(first[0], first[1], second[1])]
-    i, j = 1, 1
+    """Triangles between two rungs, which may start in one point, joined in the order of places along the rungs."""
+    places = [[math.dist(rung[0], point) / math.dist(rung[0], rung[-1]) for point in rung] for rung in (first, second)]
+    joined = first[0] == second[0]
+    cells: list[Corners] = [(first[0], first[1], second[1])] if joined else []
+    i, j = (1, 1) if joined else (0, 0)
     while i < len(first) - 1 or j < len(second) - 1:
-        ahead = math.dist(first[i + 1], second[j]) if i < len(first) - 1 else math.inf
-        across = math.dist(first[i], second[j + 1]) if j < len(second) - 1 else math.inf
+        ahead = places[0][i + 1] if i < len(first) - 1 else math.inf
+        across = places[1][j + 1] if j < len(second) - 1 else math.inf
+        if math.isclose(ahead, across, rel_tol=1e-6):  # the shorter diagonal
+            ahead, across = math.dist(first[i + 1], second[j]), math.dist(first[i], second[j + 1])
         if ahead <= across:
             cells.append((first[i], first[i + 1], second[j]))
             i += 1

@@ -17,9 +17,10 @@ from numpy.typing import NDArray
 
 from planar.copper.arc import Edge, Point
 from planar.copper.outline import Outline
-from planar.field.ladder import MeshSettings, cosine_fractions, region_triangles
+from planar.field.ladder import region_triangles
+from planar.field.rungs import MeshSettings, Shadow
 
-__all__ = ["Mesh", "MeshSettings", "Region", "cosine_fractions", "mesh_regions", "sampled", "triangle_areas"]
+__all__ = ["Mesh", "MeshSettings", "Region", "mesh_regions", "sampled", "triangle_areas"]
 
 Points = NDArray[np.float64]
 Indices = NDArray[np.int64]
@@ -71,11 +72,15 @@ def triangle_areas(corners: Points) -> Points:
 
 @dataclass(frozen=True)
 class Region:
-    """A piece to be meshed: the boundary as points in order, counter-clockwise, already sampled."""
+    """A piece to be meshed: the boundary as points in order, counter-clockwise, already sampled.
+
+    `shadow` of the lines on another level, below which return current gathers.
+    """
 
     boundary: tuple[Point, ...]
     level: int
     source: bool = False
+    shadow: Shadow | None = None
 
 
 def sampled(outline: Outline, settings: MeshSettings, marks: Iterable[Point] = ()) -> list[Point]:
@@ -145,7 +150,7 @@ def mesh_regions(regions: Sequence[Region], settings: MeshSettings) -> Mesh:
         return number[key]
 
     for region in regions:
-        for corners in region_triangles(region.boundary, settings):
+        for corners in region_triangles(region.boundary, settings, region.shadow):
             a, b, c = (index(corner, region.level) for corner in corners)
             if len({a, b, c}) == 3:
                 triangles.append((a, b, c))

@@ -13,6 +13,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from shapely import unary_union
 
 from planar.copper.arc import Edge, Point
 from planar.copper.boolean import contains, meeting_points
@@ -20,11 +21,17 @@ from planar.copper.layout import Hole, Island, Layout, Level, Port, Role
 from planar.copper.outline import Outline
 from planar.errors import GeometryError
 from planar.field.basis import Row, Vertical
-from planar.field.mesh import ON_EDGE, MeshSettings, Region, cosine_fractions, sampled
+from planar.field.mesh import ON_EDGE, MeshSettings, Region, sampled
+from planar.field.rungs import Shadow, edge_distances, points_beside, rung_points
 from planar.units import VACUUM_PERMEABILITY
 
 OVERLAP = 1e-11
 """m2, more than the chord error of flattened outlines that only touch."""
+
+CORNER = 1.0
+"""rad, the least turn between two edges that is a corner."""
+CROWDED_END = 0.8
+"""Length beside the end of a strip, over its width, that is divided as beside an edge."""
 
 
 @dataclass(frozen=True)
@@ -66,7 +73,11 @@ def pieces_of(layout: Layout, numbers: dict[Level, int], settings: MeshSettings,
     regions: list[Region] = []
     for island in islands:
         marks = [m for port in gaps if port.level == island.level for m in _gap_marks(port, island, settings)]
-        regions += _cut_island(island, numbers[island.level], drops, marks, settings)
+        if not any(_touch(island, other) for other in islands):  # pieces that touch are joined at points of both
+            marks += _end_marks(island.outline, settings)
+        loops = _cut_island(island, drops, marks, settings, height)
+        shadow = _shadow_on(island, islands, height)
+        regions += [Region(tuple(loop), numbers[island.level], shadow=shadow) for loop in loops]
     for port in gaps:
         regions.append(_source_patch(port, [i for i in islands if i.level == port.level], numbers, settings))
     inductances = [via_inductance(hole.diameter, height) for hole in vias] + [0.0] * len(ports)
@@ -79,6 +90,12 @@ def _check_apart(islands: Sequence[Island]) -> None:
     for one, other in itertools.combinations(islands, 2):
         if one.level == other.level and one.outline.shape().intersection(other.outline.shape()).area > OVERLAP:
             raise GeometryError(f"two pieces of copper overlap on the {one.level.value} level: unite them first")
+
+
+def _touch(island: Island, other: Island) -> bool:
+    if island is other or island.level != other.level:
+        return False
+    return bool(island.outline.shape().distance(other.outline.shape()) < ON_EDGE)
 
 
 def via_inductance(diameter: float, height: float) -> float:
@@ -131,32 +148,67 @@ def _via_cut(hole: Hole, islands: Sequence[Island]) -> Cut:
     return best[1]
 
 
+def _shadow_on(island: Island, islands: Sequence[Island], height: float) -> Shadow | None:
+    """Lines over or under `island`; a line itself lies over copper that is wider."""
+    lines = [other.outline.shape() for other in islands if other.role is Role.LINE and other.level != island.level]
+    return Shadow(unary_union(lines), height) if lines and island.role is not Role.LINE else None
+
+
 def _cut_island(
-    island: Island, level: int, drops: Sequence[Cut], marks: list[Point], settings: MeshSettings
-) -> list[Region]:
+    island: Island, drops: Sequence[Cut], marks: list[Point], settings: MeshSettings, height: float
+) -> list[list[Point]]:
     """The island's boundary, cut along every row that crosses it."""
     rows = []
     for cut in drops:
         if _on_boundary(island.outline, cut.centre):
-            marks = [*marks, *_row_points(cut, (-0.5 * cut.width, 0.5 * cut.width), settings)]
+            marks = [*marks, *_row_points(cut, (-0.5 * cut.width, 0.5 * cut.width), settings, height)]
             continue
         ends = _crossings(island.outline, cut.centre, cut.direction)
         if ends is not None:
-            row = _row_points(cut, ends, settings)
+            row = _row_points(cut, ends, settings, height)
             rows.append(row)
             marks = [*marks, row[0], row[-1]]
     loops = [sampled(island.outline, settings, marks)]
     for row in rows:
         loops = [part for loop in loops for part in _split(loop, row)]
-    return [Region(tuple(loop), level) for loop in loops]
+    return loops
 
 
-def _row_points(cut: Cut, ends: tuple[float, float], settings: MeshSettings) -> list[Point]:
-    """Points from one end of a row to the other, graded over the cut's width."""
+def _end_marks(outline: Outline, settings: MeshSettings) -> list[Point]:
+    """Points on both sides of every end of a strip, close to it: current and charge crowd there as they do at edges.
+
+    An end is a straight edge between two corners, shorter than the edges beside it.
+    """
+    edges = outline.edges
+    marks = []
+    for before, end, after in zip(edges[-1:] + edges[:-1], edges, edges[1:] + edges[:1], strict=True):
+        corners = min(_turn(before, end), _turn(end, after)) > CORNER
+        if end.bulge == 0.0 and corners and end.length < min(before.length, after.length):
+            for away in edge_distances(CROWDED_END * end.length, settings):
+                marks += [before.point(1.0 - away / before.length), after.point(away / after.length)]
+    return marks
+
+
+def _turn(one: Edge, other: Edge) -> float:
+    """Angle from the end of one edge to the start of the other, rad, positive to the left."""
+    a, b = one.tangent(1.0), other.tangent(0.0)
+    return math.atan2(a[0] * b[1] - a[1] * b[0], a[0] * b[0] + a[1] * b[1])
+
+
+def _row_points(cut: Cut, ends: tuple[float, float], settings: MeshSettings, height: float) -> list[Point]:
+    """Points from one end of a row to the other: divided across the cut's width, growing cells beside it."""
+
+    def at(place: float) -> Point:
+        return cut.centre[0] + place * cut.direction[0], cut.centre[1] + place * cut.direction[1]
+
     half = 0.5 * cut.width
-    inner = [-half + cut.width * f for f in cosine_fractions(settings.across)]
-    places = [ends[0], *(t for t in (-half, *inner, half) if ends[0] + ON_EDGE < t < ends[1] - ON_EDGE), ends[1]]
-    return [(cut.centre[0] + t * cut.direction[0], cut.centre[1] + t * cut.direction[1]) for t in places]
+    low, high = max(-half, ends[0]), min(half, ends[1])
+    row = [at(low), *rung_points(at(low), at(high), settings), at(high)]
+    if ends[0] < low - ON_EDGE:
+        row = [at(ends[0]), *reversed(points_beside(at(low), at(ends[0]), settings, height)), *row]
+    if ends[1] > high + ON_EDGE:
+        row = [*row, *points_beside(at(high), at(ends[1]), settings, height), at(ends[1])]
+    return row
 
 
 def _on_boundary(outline: Outline, point: Point) -> bool:
@@ -203,8 +255,8 @@ def _faces(port: Port, outline: Outline) -> list[tuple[float, float, float]]:
 def _across(port: Port, side: float, low: float, high: float, settings: MeshSettings) -> list[Point]:
     (ux, uy), (cx, cy) = port.direction, port.centre
     a = side * 0.5 * port.length
-    places = [low, *(low + (high - low) * f for f in cosine_fractions(settings.across)), high]
-    return [(cx + a * ux - t * uy, cy + a * uy + t * ux) for t in places]
+    ends = [(cx + a * ux - t * uy, cy + a * uy + t * ux) for t in (low, high)]
+    return [ends[0], *rung_points(ends[0], ends[1], settings), ends[1]]
 
 
 def _gap_marks(port: Port, island: Island, settings: MeshSettings) -> list[Point]:

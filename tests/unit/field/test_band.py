@@ -7,6 +7,7 @@ conservation of power, and the agreement of both outputs on one quantity.
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -15,11 +16,11 @@ from planar.copper.boolean import difference
 from planar.copper.layout import Island, Layout, Level, Port, Role
 from planar.copper.path import band, loop_path
 from planar.copper.shapes import rectangle
-from planar.errors import GeometryError, RangeError
+from planar.errors import GeometryError
+from planar.field.band import BandSolution, axial_ratio_db, checked_band
 from planar.field.mesh import MeshSettings
 from planar.field.result import point_result
 from planar.field.solver import FieldProblem, default_settings
-from planar.field.sweep import MatrixSegment, port_model
 from planar.library import Library, inline_laminate
 from planar.stackup import BoardChoice, Stackup, build_stackup
 
@@ -53,28 +54,58 @@ def reflection(z: complex | np.ndarray, reference: float = 100.0) -> complex | n
     return (z - reference) / (z + reference)
 
 
-def test_interpolated_matrix_is_the_filled_one(problem: FieldProblem) -> None:
-    """The stated check plus frequencies it never saw; twice the stated tolerance of 3e-4 would fail."""
-    segment = MatrixSegment.between(problem, LOW, HIGH)
-    assert 0.0 < segment.error < 3e-4
-    for frequency in (0.87e9, 0.999e9, 1.14e9):
-        direct = problem.solve(frequency).admittance[0, 0]
-        assert abs(segment.admittance(frequency) - direct) < 1e-4 * abs(direct)
-
-
-def test_a_node_gives_its_own_matrix(problem: FieldProblem) -> None:
-    segment = MatrixSegment.between(problem, LOW, HIGH)
-    node = float(segment.nodes[2])
-    assert np.array_equal(segment.matrix(node), segment.matrices[2] / node)
-
-
-def test_sweep_over_15_percent_agrees_with_points(problem: FieldProblem) -> None:
-    """Demanded: reflection within 0.002 of point-by-point, from about a dozen solved frequencies."""
-    model = port_model(problem, LOW, HIGH, reference=100.0)
-    assert len(model.model.frequency) <= 14
-    frequency = np.linspace(LOW, HIGH, 7)
+def test_band_is_that_of_the_points(problem: FieldProblem) -> None:
+    """Reflection within 0.002 of point by point is asked; at a node it is the direct solution."""
+    solved = BandSolution.between(problem, LOW, HIGH, 5)
+    frequency = np.array([0.86e9, 0.9e9, 0.97e9, 1.03e9, 1.12e9, solved.nodes[1]])
     direct = np.array([problem.solve(float(f)).impedance for f in frequency])
-    assert np.abs(reflection(model.impedance(frequency)) - reflection(direct)).max() < 2e-4
+    error = np.abs(reflection(solved.impedance(frequency)) - reflection(direct))
+    assert error.max() < 2e-5
+    assert error[-1] < 1e-9
+
+
+def test_fewer_nodes_are_worse_and_found_out(problem: FieldProblem) -> None:
+    """Two nodes cannot hold a resonance between them; the check of a band sees what the band cannot."""
+    f = np.array([LOW + 0.05 * (HIGH - LOW)])
+    direct = problem.solve(float(f[0])).impedance
+    errors = [
+        abs(reflection(complex(BandSolution.between(problem, LOW, HIGH, n).impedance(f)[0])) - reflection(direct))
+        for n in (2, 3, 5)
+    ]
+    assert errors[0] > 1e-3 > errors[1] > errors[2]
+
+
+def test_checked_band_serves_over_an_octave(problem: FieldProblem) -> None:
+    solved = checked_band(problem, 0.3e9, HIGH, reference=100.0)
+    frequency = np.array([0.33e9, 0.61e9, 0.9e9])
+    direct = np.array([problem.reaching(float(f)).solve(float(f)).impedance for f in frequency])
+    assert np.abs(reflection(solved.impedance(frequency)) - reflection(direct)).max() < 1e-3
+
+
+def test_band_rebuilds_currents_and_polarisation(layout: Layout, stackup: Stackup) -> None:
+    """A second gap makes the field elliptical; its axial ratio and losses are those of the direct solution."""
+    cut = difference(layout.islands[0].outline, rectangle(-0.06, -2e-3, 0.0, -1e-3))
+    islands = tuple(Island(Level.TOP, each, Role.RADIATOR) for each in cut)
+    problem = FieldProblem.prepare(replace(layout, islands=islands), stackup, HIGH, MeshSettings(14e-3))
+    solved = BandSolution.between(problem, LOW, HIGH, 5)
+    for frequency in (0.9e9, 1.0e9):
+        direct, rebuilt = point_result(problem.solve(frequency)), point_result(solved.solution(frequency))
+        ratio = float(axial_ratio_db(solved.circular_ratio(np.array([frequency])))[0])
+        assert direct.sense != "linear"
+        assert rebuilt.sense == direct.sense
+        assert ratio == pytest.approx(direct.axial_ratio_db, abs=0.02)
+        assert rebuilt.axial_ratio_db == pytest.approx(direct.axial_ratio_db, abs=0.02)
+        assert rebuilt.dielectric_share == pytest.approx(direct.dielectric_share, rel=1e-3)
+        assert rebuilt.gain_dbi == pytest.approx(direct.gain_dbi, abs=1e-3)
+
+
+def test_sense_of_the_ratio(layout: Layout, stackup: Stackup) -> None:
+    """Left over right is below one where the direct solution calls the sense right."""
+    cut = difference(layout.islands[0].outline, rectangle(-0.06, -2e-3, 0.0, -1e-3))
+    islands = tuple(Island(Level.TOP, each, Role.RADIATOR) for each in cut)
+    problem = FieldProblem.prepare(replace(layout, islands=islands), stackup, HIGH, MeshSettings(14e-3))
+    ratio = abs(BandSolution.between(problem, LOW, HIGH, 4).circular_ratio(np.array([1e9]))[0])
+    assert (ratio < 1.0) == (point_result(problem.solve(1e9)).sense == "right")
 
 
 def test_result_states_the_impedance_and_shares_that_add_up(problem: FieldProblem) -> None:
@@ -110,11 +141,6 @@ def test_dielectric_loss_grows_with_the_loss_tangent(layout: Layout) -> None:
 def test_not_above_the_frequency_prepared_for(problem: FieldProblem) -> None:
     with pytest.raises(GeometryError, match="prepared for up to 1150 MHz, asked for 1200 MHz"):
         problem.solve(1.2e9)
-
-
-def test_sweep_wider_than_its_tables_is_refused(problem: FieldProblem) -> None:
-    with pytest.raises(RangeError):
-        port_model(problem, 0.4e9, HIGH, reference=50.0)
 
 
 def test_default_mesh_has_forty_steps_in_a_wavelength(layout: Layout, stackup: Stackup) -> None:
