@@ -66,8 +66,9 @@ class RhoGrid:
         first = np.clip(np.floor(place) - 1.0, 0.0, self.count - float(_STENCIL))
         x = place - first
         a, b, c = x - 1.0, x - 2.0, x - 3.0
-        weights = np.stack([-a * b * c / 6.0, x * b * c / 2.0, -x * a * c / 2.0, x * a * b / 6.0], axis=-1)
-        return (first[:, None] + np.arange(_STENCIL)).astype(np.int32), weights
+        bc, xa = b * c, x * a
+        weights = np.stack([a * bc / -6.0, x * bc / 2.0, xa * c / -2.0, xa * b / 6.0], axis=-1)
+        return first.astype(np.int32)[:, None] + np.arange(_STENCIL, dtype=np.int32), weights
 
 
 @dataclass(frozen=True, eq=False)

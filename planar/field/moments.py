@@ -18,20 +18,27 @@ from planar.field.mesh import Mesh
 from planar.field.pairs import TriangleMatrices
 
 Complex = NDArray[np.complex128]
+BLOCK = 64
+"""Functions worked on at a time, so that intermediate results stay in cache."""
 
 
 def moment_matrix(basis: Basis, moments: TriangleMatrices, frequency: float) -> Complex:
     """Field part of the moment matrix, (n, n) ohm, without conductor loss. `frequency` in Hz."""
     omega = 2.0 * math.pi * frequency
     density, x, y = basis.density, basis.anchor_x, basis.anchor_y
+    left = sparse.hstack([density, x, y], format="csr")
     # the divergence is 2 c, so charges weigh like r . r' and join that term
-    product = moments.product - 4.0 / omega**2 * moments.scalar
+    product = 0.5 * moments.product - 2.0 / omega**2 * moments.scalar
     # half of each symmetric term and one of the two mixed ones: the transpose adds the rest
-    on_density = _times(density, 0.5 * product) - _times(x, moments.first_x.T) - _times(y, moments.first_y.T)
-    half = _times(density, on_density.T)
-    half += 0.5 * _times(x, _times(x, moments.zero).T)
-    half += 0.5 * _times(y, _times(y, moments.zero).T)
-    matrix = 1j * omega * (half + half.T)
+    half = np.empty((basis.count, basis.count), dtype=np.complex128)
+    for start in range(0, basis.count, BLOCK):
+        block = slice(start, start + BLOCK)
+        c, c_x, c_y = density[block], x[block], y[block]
+        on_density = _times(c, product) - _times(c_x, moments.second_x) - _times(c_y, moments.second_y)
+        on_anchors = (0.5 * _times(each, moments.zero) for each in (c_x, c_y))
+        half[:, block] = _times(left, np.concatenate([on_density, *on_anchors], axis=1).T)
+    half *= 1j * omega
+    matrix: Complex = half + half.T
     for i, inductance in enumerate(basis.inductances, start=basis.count - len(basis.inductances)):
         matrix[i, i] += 1j * omega * inductance
     return matrix

@@ -12,10 +12,11 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import sparse
 
 from planar.field.kernels import RhoGrid, SpatialKernel
 from planar.field.mesh import Mesh
-from planar.field.potentials import THREE_POINTS, PairMoments, static_moments
+from planar.field.potentials import THREE_POINTS, static_moments
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -29,46 +30,47 @@ MIDDLE = 3.0
 
 @dataclass(frozen=True, eq=False)
 class Samples:
-    """Kernel samples of pairs: table indices and weights (n, s, 4) for s points a pair, and the points used.
+    """Kernel samples of n pairs of triangles (p, q), s points a pair.
 
-    `first`, `second` (n, s, 2) points in p and q; `share` (n,) product of areas over s.
+    `interpolation` (n s, count) takes a table over distance to the kernel at the points, times the product of the
+    areas over s.
     """
 
     p: Indices
     q: Indices
-    indices: NDArray[np.int32]
+    interpolation: sparse.csr_array
+
+    def values(self, tables: Array) -> Complex:
+        """Vector and scalar kernel at the points, times areas over s, (n s, 2), from `tables` (count, 4)."""
+        return np.asarray((self.interpolation @ tables).view(np.complex128))
+
+
+@dataclass(frozen=True, eq=False)
+class WeightedSamples(Samples):
+    """Samples with `weights` (n, 6, s): 1, x, y, x', y' and r . r' at the points, r in p and r' in q."""
+
     weights: Array
-    first: Array
-    second: Array
-    share: Array
 
-    def values(self, tables: Array) -> tuple[Complex, Complex]:
-        """Vector and scalar kernel at the points, (n, s) each, times the areas, from `tables` (count, 4)."""
-        values = np.einsum("nsq,nsqk->nsk", self.weights, tables[self.indices]) * self.share[:, None, None]
-        pairs = values.view(np.complex128)
-        return pairs[..., 0], pairs[..., 1]
-
-    def moments(self, tables: Array) -> tuple[PairMoments, Complex]:
-        """Moments of the vector kernel and `zero` of the scalar kernel from `tables` (count, 4)."""
-        vector, charges = self.values(tables)
-        scalar = charges.sum(axis=1)
-        zero = vector.sum(axis=1)
-        first = np.einsum("ns,nsk->nk", vector, self.first)
-        second = np.einsum("ns,nsk->nk", vector, self.second)
-        product = np.einsum("ns,ns->n", vector, np.einsum("nsk,nsk->ns", self.first, self.second))
-        return PairMoments(zero, first, second, product), scalar
+    def moments(self, tables: Array) -> tuple[Complex, Complex]:
+        """The six moments of the vector kernel, (6, n), and the integral of the scalar kernel, (n,)."""
+        pairs, _, points = self.weights.shape
+        values = self.values(tables).view(np.float64).reshape(pairs, points, 4)
+        moments = (self.weights @ values).view(np.complex128)
+        return moments[..., 0].T, moments[:, 0, 1]
 
 
 @dataclass(frozen=True, eq=False)
 class LevelPairs:
-    """All pairs of the triangles of two levels (p <= q on one level)."""
+    """All pairs of the triangles of two levels (p <= q on one level).
+
+    `statics` (heights, 6, near): moments of the static images of the near pairs.
+    """
 
     levels: tuple[int, int]
-    near: Samples
-    middle: Samples
+    near: WeightedSamples
+    middle: WeightedSamples
     far: Samples
-    heights: tuple[float, ...]
-    statics: tuple[PairMoments, ...]
+    statics: Array
 
 
 def level_pairs(mesh: Mesh, levels: tuple[int, int], heights: Sequence[float], grid: RhoGrid) -> LevelPairs:
@@ -80,44 +82,54 @@ def level_pairs(mesh: Mesh, levels: tuple[int, int], heights: Sequence[float], g
     else:
         p, q = (grid_side.ravel() for grid_side in np.meshgrid(ids[0], ids[1], indexing="ij"))
     radius = np.linalg.norm(mesh.corners - mesh.centroids[:, None], axis=2).max(axis=1)
-    apart = np.linalg.norm(mesh.centroids[p] - mesh.centroids[q], axis=1) / (radius[p] + radius[q])
+    x, y = mesh.centroids.T
+    apart = np.hypot(x[p] - x[q], y[p] - y[q]) / (radius[p] + radius[q])
     near, far = apart < NEAR, apart >= MIDDLE
     middle = ~near & ~far
-    statics = tuple(static_moments(mesh.corners[p[near]], mesh.corners[q[near]], h) for h in heights)
     return LevelPairs(
         levels,
-        _samples(mesh, p[near], q[near], THREE_POINTS, grid),
-        _samples(mesh, p[middle], q[middle], THREE_POINTS, grid),
-        _samples(mesh, p[far], q[far], np.full((1, 3), 1.0 / 3.0), grid),
-        tuple(heights),
-        statics,
+        _weighted_samples(mesh, p[near], q[near], grid),
+        _weighted_samples(mesh, p[middle], q[middle], grid),
+        _samples(mesh, p[far], q[far], mesh.centroids[:, None], grid),
+        static_moments(mesh.corners[p[near]], mesh.corners[q[near]], heights),
     )
 
 
-def _samples(mesh: Mesh, p: Indices, q: Indices, rule: Array, grid: RhoGrid) -> Samples:
-    """Every point of `rule` (equal weights) in p against every one in q."""
-    count = len(rule)
-    points = np.einsum("sc,tck->tsk", rule, mesh.corners)
-    first = np.repeat(points[p], count, axis=1)
-    second = np.tile(points[q], (1, count, 1))
-    rho = np.linalg.norm(first - second, axis=2)
+def _samples(mesh: Mesh, p: Indices, q: Indices, points: Array, grid: RhoGrid) -> Samples:
+    """Each of the `points` (triangles, k, 2), equally weighted, in p against each in q."""
+    x, y = points[..., 0], points[..., 1]
+    rho = np.hypot(x[p][:, :, None] - x[q][:, None], y[p][:, :, None] - y[q][:, None])
     indices, weights = grid.weights(rho.ravel())
-    shape = (*rho.shape, 4)
-    share = mesh.areas[p] * mesh.areas[q] / count**2
-    return Samples(p, q, indices.reshape(shape), weights.reshape(shape), first, second, share)
+    count = points.shape[1] ** 2
+    weights *= np.repeat(mesh.areas[p] * mesh.areas[q] / count, count)[:, None]
+    starts = np.arange(0, indices.size + 1, indices.shape[1], dtype=np.int32)
+    shape = (rho.size, grid.count)
+    return Samples(p, q, sparse.csr_array((weights.ravel(), indices.ravel(), starts), shape=shape))
+
+
+def _weighted_samples(mesh: Mesh, p: Indices, q: Indices, grid: RhoGrid) -> WeightedSamples:
+    """Three points in p against three in q."""
+    points = np.einsum("kc,tcd->tkd", THREE_POINTS, mesh.corners)
+    count = len(THREE_POINTS)
+    weights = np.ones((len(p), 6, count, count))
+    weights[:, 1:3] = points[p].swapaxes(1, 2)[..., None]
+    weights[:, 3:5] = points[q].swapaxes(1, 2)[:, :, None]
+    weights[:, 5] = points[p] @ points[q].swapaxes(1, 2)
+    samples = _samples(mesh, p, q, points, grid)
+    return WeightedSamples(p, q, samples.interpolation, weights.reshape(len(p), 6, count**2))
 
 
 @dataclass(frozen=True, eq=False)
 class TriangleMatrices:
     """Kernel moments between all triangles, each (t, t) complex.
 
-    `zero`, `first_x`, `first_y`, `product` of the vector kernel (first: weighted with the row's point),
+    `zero`, `second_x`, `second_y`, `product` of the vector kernel (second: weighted with the column's point),
     `scalar` of the scalar kernel.
     """
 
     zero: Complex
-    first_x: Complex
-    first_y: Complex
+    second_x: Complex
+    second_y: Complex
     product: Complex
     scalar: Complex
 
@@ -128,33 +140,31 @@ def triangle_matrices(
     """Moments between all triangles, with `centroids` (t, 2), from the `pairs` and their `kernels` at one frequency."""
     count = len(centroids)
     zero, scalar = (np.zeros((count, count), dtype=np.complex128) for _ in range(2))
-
-    def put(samples: Samples, moments: PairMoments, charges: Complex) -> None:
-        p, q = samples.p, samples.q
-        zero[p, q] = moments.zero
-        zero[q, p] = moments.zero
-        product[p, q] = moments.product
-        product[q, p] = moments.product
-        scalar[p, q] = charges
-        scalar[q, p] = charges
-        for matrix, axis in ((first_x, 0), (first_y, 1)):
-            matrix[p, q] = moments.first[:, axis]
-            matrix[q, p] = moments.second[:, axis]
-
-    # far pairs are one point each: their moments follow from the kernel between centroids
     tables = [_tables(kernel, grid) for kernel in kernels]
+    # far pairs are one point each: their moments follow from the kernel between centroids
     for each, (_, whole) in zip(pairs, tables, strict=True):
-        vector, charges = each.far.values(whole)
-        for matrix, values in ((zero, vector[:, 0]), (scalar, charges[:, 0])):
-            matrix[each.far.p, each.far.q] = values
-            matrix[each.far.q, each.far.p] = values
-    x, y = centroids.T
-    first_x, first_y = zero * x[:, None], zero * y[:, None]
-    product = first_x * x + first_y * y
+        values = each.far.values(whole)
+        _put_both_ways(zero, each.far, values[:, 0])
+        _put_both_ways(scalar, each.far, values[:, 1])
+    second_x, second_y = (zero * each for each in centroids.T)
+    product = zero * (centroids @ centroids.T)
     for each, kernel, (smooth, whole) in zip(pairs, kernels, tables, strict=True):
-        put(each.near, *_with_images(each, kernel, each.near.moments(smooth)))
-        put(each.middle, *each.middle.moments(whole))
-    return TriangleMatrices(zero, first_x, first_y, product, scalar)
+        near, near_charges = each.near.moments(smooth)
+        images, image_charges = _image_moments(each.statics, kernel)
+        for samples, moments, charges in (
+            (each.near, near + images, near_charges + image_charges),
+            (each.middle, *each.middle.moments(whole)),
+        ):
+            p, q = samples.p, samples.q
+            for matrix, values in ((zero, moments[0]), (product, moments[5]), (scalar, charges)):
+                _put_both_ways(matrix, samples, values)
+            second_x[q, p], second_y[q, p], second_x[p, q], second_y[p, q] = moments[1:5]
+    return TriangleMatrices(zero, second_x, second_y, product, scalar)
+
+
+def _put_both_ways(matrix: Complex, samples: Samples, values: Complex) -> None:
+    matrix[samples.p, samples.q] = values
+    matrix[samples.q, samples.p] = values
 
 
 def _tables(kernel: SpatialKernel, grid: RhoGrid) -> tuple[Array, Array]:
@@ -172,16 +182,7 @@ def _tables(kernel: SpatialKernel, grid: RhoGrid) -> tuple[Array, Array]:
     return columns(kernel.vector_table, kernel.scalar_table), columns(vector, scalar)
 
 
-def _with_images(
-    pairs: LevelPairs, kernel: SpatialKernel, smooth: tuple[PairMoments, Complex]
-) -> tuple[PairMoments, Complex]:
-    moments, scalar = smooth
-    zero, first, second, product = moments.zero, moments.first, moments.second, moments.product
-    for static, a, phi in zip(pairs.statics, kernel.vector_images, kernel.scalar_images, strict=True):
-        vector = a / (4.0 * np.pi)
-        zero = zero + vector * static.zero
-        first = first + vector * static.first
-        second = second + vector * static.second
-        product = product + vector * static.product
-        scalar = scalar + phi / (4.0 * np.pi) * static.zero
-    return PairMoments(zero, first, second, product), scalar
+def _image_moments(statics: Array, kernel: SpatialKernel) -> tuple[Complex, Complex]:
+    """The six moments of the vector kernel's images, (6, n), and the integral of the scalar kernel's, (n,)."""
+    vector, scalar = kernel.vector_images / (4.0 * np.pi), kernel.scalar_images / (4.0 * np.pi)
+    return np.tensordot(vector, statics, axes=1), scalar @ statics[:, 0]
