@@ -48,6 +48,13 @@ def refusing(command: Command) -> Command:
     return wrapped  # type: ignore[return-value]
 
 
+sensitivities_option = click.option(
+    "--sensitivities",
+    is_flag=True,
+    help="Also solve every dimension and layer either way: MHz and ohm per mm.",
+)
+
+
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(__version__, prog_name="planar")
 def main() -> None:
@@ -81,25 +88,49 @@ def new(name: Path, as_json: bool) -> None:
     show_default=True,
     help="Folder the pack is written to, under the brief's name.",
 )
+@sensitivities_option
 @library_option
 @json_option
 @refusing
-def make(brief: Path, outputs: Path, library_folder: Path | None, as_json: bool) -> None:
+def make(brief: Path, outputs: Path, sensitivities: bool, library_folder: Path | None, as_json: bool) -> None:
     """Size, draw, check and write the pack for BRIEF."""
     from planar import pipeline
+    from planar.design.design_file import design_facts
     from planar.library import Library
     from planar.report import console
 
     with console.progress() as step:
-        made = pipeline.make(brief, Library.open(library_folder), outputs, step)
+        library = Library.open(library_folder)
+        made = pipeline.make(brief, library, outputs, sensitive=sensitivities, progress=step)
     if as_json:
-        console.print_json(pipeline.design_facts(made.design) | {"folder": str(made.folder)})
+        console.print_json(design_facts(made.design) | {"folder": str(made.folder)})
     else:
         console.print_design(made.design, made.folder)
 
 
 @main.command()
 @click.argument("brief", type=click.Path(path_type=Path))
+@sensitivities_option
+@library_option
+@json_option
+@refusing
+def size(brief: Path, sensitivities: bool, library_folder: Path | None, as_json: bool) -> None:
+    """Dimensions and prediction for BRIEF, nothing written."""
+    from planar import pipeline
+    from planar.design.design_file import design_facts
+    from planar.library import Library
+    from planar.report import console
+
+    with console.progress() as step:
+        design = pipeline.size(brief, Library.open(library_folder), sensitive=sensitivities, progress=step)
+    if as_json:
+        console.print_json(design_facts(design))
+    else:
+        console.print_design(design)
+
+
+@main.command()
+@click.argument("brief", metavar="BRIEF|DESIGN", type=click.Path(path_type=Path))
 @click.option(
     "--at", multiple=True, help='Frequency such as "868 MHz"; may be repeated. Default: edges and middle of the band.'
 )
@@ -118,7 +149,7 @@ def solve(
     library_folder: Path | None,
     as_json: bool,
 ) -> None:
-    """Field solution of BRIEF's copper: impedance, gain, losses, polarisation."""
+    """Field solution of a brief's copper, or of that in a design.json: impedance, gain, losses, polarisation."""
     from planar import pipeline
     from planar.design.solve_question import SolveQuestion
     from planar.library import Library

@@ -106,7 +106,7 @@ class SynthesisError(PlanarError):
         self.changes = changes
         lines = [reason, *(f"  {finding}" for finding in findings)]
         if changes:
-            lines += ["Nearest changes that work:", *(f"  {change}" for change in changes)]
+            lines += ["Nearest changes:", *(f"  {change}" for change in changes)]
         super().__init__("\n".join(lines))
 
     def facts(self) -> dict[str, Any]:

@@ -7,28 +7,34 @@ layout, and only then moved into place.
 
 from __future__ import annotations
 
-import hashlib
 import json
+import re
 from collections.abc import Callable, Iterator, Mapping
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from planar import __version__
 from planar.brief import Brief, read_brief, starter_brief, write_brief
-from planar.copper.layout import Layout
 from planar.design.design import Design, make_design
+from planar.design.design_file import design_facts, read_design
 from planar.design.field_solution import Solution, solve_design
 from planar.design.line_question import LineQuestion, answer
-from planar.design.line_size import DesignLine
 from planar.design.line_table import LineRow
+from planar.design.prediction import Prediction
+from planar.design.sensitivity import sensitivities
+from planar.design.sized import sized_design
 from planar.design.solve_question import SolveQuestion, read_question
+from planar.design.workers import workers
 from planar.errors import GeometryError, HandoffError, SynthesisError
 from planar.field.result import PointResult
 from planar.handoff import (
     ImpedanceLine,
     SheetFacts,
     StackupSheet,
+    check_destination,
     check_files,
     check_stackup,
     packed,
@@ -39,9 +45,14 @@ from planar.handoff import (
 )
 from planar.library import KINDS, Library
 from planar.library.reading import parse
+from planar.network.response import Response
+from planar.network.spice import spice_subcircuit
 from planar.network.touchstone import write_touchstone
+from planar.units import show
 
 Progress = Callable[[str], None]
+S_DIGITS = 9
+"""Decimals of a predicted reflection: what lies beyond is rounding."""
 
 
 @dataclass(frozen=True)
@@ -60,13 +71,25 @@ class Solved:
     solution: Solution
 
 
-def make(brief_path: Path, library: Library, outputs: Path, progress: Progress = lambda stage: None) -> Made:
-    """The main job: brief in, pack out, at `outputs`/<name>. Raises `PlanarError`; nothing is then left behind."""
+def make(
+    brief_path: Path,
+    library: Library,
+    outputs: Path,
+    *,
+    sensitive: bool = False,
+    progress: Progress = lambda stage: None,
+) -> Made:
+    """The main job: brief in, pack out, at `outputs`/<name>, on wish with the table of sensitivities.
+
+    Raises `PlanarError`; nothing is then left behind.
+    """
     progress("reading the brief")
     brief = read_brief(brief_path, library)
-    progress("sizing and drawing")
-    design = _designed(brief, library, brief_path)
     folder = outputs / brief.name
+    check_destination(folder)
+    design = _designed(brief, library, brief_path, progress)
+    if sensitive:
+        design = _with_sensitivities(design, progress)
     progress("writing files")
     with packed(folder) as fresh:
         write_pack(design, fresh)
@@ -75,22 +98,36 @@ def make(brief_path: Path, library: Library, outputs: Path, progress: Progress =
     return Made(design, folder)
 
 
-def size(brief_path: Path, library: Library) -> Design:
-    """Dimensions and copper of a brief, nothing written."""
-    return _designed(read_brief(brief_path, library), library, brief_path)
+def size(path: Path, library: Library, *, sensitive: bool = False, progress: Progress = lambda stage: None) -> Design:
+    """Dimensions, copper and prediction of a brief, on wish with the table of sensitivities, nothing written.
+
+    Raises `PlanarError`.
+    """
+    progress("reading the brief")
+    design = _designed(read_brief(path, library), library, path, progress)
+    return _with_sensitivities(design, progress) if sensitive else design
 
 
-def solve(
-    brief_path: Path, library: Library, question: SolveQuestion, progress: Progress = lambda stage: None
-) -> Solved:
-    """Field solution of a brief's design. Raises `PlanarError`; nothing is then written."""
-    progress("sizing and drawing")
-    design = size(brief_path, library)
-    frequencies, sweep = read_question(question, design)
+def _with_sensitivities(design: Design, progress: Progress) -> Design:
+    progress("trying every dimension and layer both ways")
+    with workers() as shared:
+        return replace(design, sensitivities=sensitivities(design.choices, design.dimensions, shared))
+
+
+def solve(path: Path, library: Library, question: SolveQuestion, progress: Progress = lambda stage: None) -> Solved:
+    """Field solution of a brief's design, or of the design in a design.json; `PlanarError`: nothing is then written."""
+    if path.suffix == ".json":
+        design = read_design(path, library)
+        frequencies, sweep = read_question(question, design.choices.brief)
+    else:
+        brief = read_brief(path, library)
+        frequencies, sweep = read_question(question, brief)
+        given = bool(brief.antenna.dimensions)
+        design = make_design(brief, library, str(path)) if given else _designed(brief, library, path, progress)
     try:
         solution = solve_design(design, frequencies, sweep=sweep, progress=progress)
     except GeometryError as error:
-        raise SynthesisError(f"{brief_path}: the field solver cannot take this copper: {error}") from error
+        raise SynthesisError(f"{path}: the field solver cannot take this copper: {error}") from error
     if question.s1p is not None and solution.sweep is not None:
         try:
             write_touchstone(solution.sweep, question.s1p, comments=(design.name, design.status))
@@ -139,9 +176,9 @@ def _point_facts(point: PointResult, gap: complex, reference: float) -> dict[str
     }
 
 
-def _designed(brief: Brief, library: Library, path: Path) -> Design:
+def _designed(brief: Brief, library: Library, path: Path, progress: Progress) -> Design:
     try:
-        return make_design(brief, library, str(path))
+        return sized_design(brief, library, str(path), progress)
     except SynthesisError as error:  # a refusal names the file, as a fault does
         raise SynthesisError(f"{path}: {error.reason}", error.findings, error.changes) from error
 
@@ -210,97 +247,30 @@ def write_pack(design: Design, folder: Path) -> None:
     (folder / "brief.toml").write_bytes(write_brief(design.choices.brief).encode("utf-8"))
     summary = json.dumps(design_facts(design), indent=2, ensure_ascii=False) + "\n"
     (folder / "design.json").write_bytes(summary.encode("utf-8"))
+    if design.prediction is not None:
+        _write_prediction(design, design.prediction, folder)
+
+
+def _write_prediction(design: Design, prediction: Prediction, folder: Path) -> None:
+    """The response as a Touchstone file and the circuit as a SPICE subcircuit."""
+    low, high = (show(end, "frequency", 4) for end in prediction.trusted)
+    comments = (
+        f"{design.name}: predicted reflection at the pads, nominal board",
+        design.status,
+        f"From {low} to {high} on the fine mesh; outside on the sizing mesh, for orientation only.",
+    )
+    response = prediction.response
+    rounded = Response(np.round(response.frequency), np.round(response.s, S_DIGITS), response.z0)
+    write_touchstone(rounded, folder / "antenna.s1p", comments=comments)
+    named = re.sub(r"[^A-Za-z0-9_]", "_", design.name)
+    text = spice_subcircuit(prediction.circuit, f"antenna_{named}", comments=comments[:1])
+    (folder / "circuit.cir").write_bytes(text.encode("ascii"))
 
 
 def check_pack(design: Design, folder: Path) -> None:
     """Read the written files again and compare. Raises `HandoffError` naming what differs."""
     check_files(design.layout, folder / "layout")
     check_stackup(_sheet(design), folder / "fabrication" / "stackup.json")
-
-
-def design_facts(design: Design) -> dict[str, Any]:
-    """The design in plain types, units in the names: what `design.json` and `--json` say."""
-    choices = design.choices
-    facts: dict[str, Any] = {
-        "name": design.name,
-        "planar_version": __version__,
-        "status": design.status,
-        "dimensions_given": design.given,
-        "family": choices.family.key,
-        "shape": choices.brief.antenna.shape,
-        "end": choices.end,
-        "polarisation": choices.brief.target.polarisation,
-        "connector": choices.connector.key,
-        "fab": choices.fab.key,
-        "band_hz": list(choices.brief.target.band),
-        "dimensions_mm": {name: round(value * 1e3, 6) for name, value in design.dimensions.items()},
-        "board_mm": [round(side * 1e3, 6) for side in design.layout.size],
-        "mean_line_mm": design.perimeter * 1e3,
-        "first_order": _first_order_facts(design),
-        "starting_values": _start_facts(design),
-        "lines": [_line_facts(line) for line in design.lines],
-        "copper": _copper_facts(design.layout),
-        "dc_short": design.layout.dc_short,
-        "assumptions": list(choices.reasons),
-        "findings": [asdict(finding) for finding in design.findings],
-    }
-    digest = hashlib.sha256(json.dumps(facts, sort_keys=True).encode()).hexdigest()
-    return facts | {"hash": digest}
-
-
-def _first_order_facts(design: Design) -> dict[str, float] | None:
-    """The bare loop by formulas; None where given dimensions are outside them."""
-    bare = design.bare_loop
-    if bare is None:
-        return None
-    return {
-        "bare_loop_frequency_hz": bare.frequency,
-        "bare_loop_perimeter_mm": bare.perimeter * 1e3,
-        "bare_loop_perimeter_wavelengths": bare.perimeter_wavelengths,
-        "bare_loop_resistance_ohm": bare.resistance,
-        "trace_eps_eff": bare.eps_eff,
-        "expected_frequency_error": design.frequency_error,
-    }
-
-
-def _start_facts(design: Design) -> dict[str, Any] | None:
-    """Where sizing started from; None for given dimensions."""
-    if design.given:
-        return None
-    start = design.choices.family.start(design.choices.traits)
-    return {
-        "mean_line_over_resonant_bare_loop": start.perimeter_ratio,
-        "line_load_over_bare_loop_resistance": start.gap_resistance_ratio or 1.0,
-    }
-
-
-def _line_facts(line: DesignLine) -> dict[str, Any]:
-    return {
-        "name": line.name,
-        "kind": line.line.kind,
-        "width_mm": line.line.width * 1e3,
-        "gap_mm": None if line.line.gap is None else line.line.gap * 1e3,
-        "impedance_ohm": line.line.impedance,
-        "tolerance_ohm": line.tolerance_ohm,
-        "ohm_per_25_um_etch": line.slopes.ohm_per_25_um_etch,
-        "eps_eff": line.line.eps_eff,
-        "quarter_wave_mm": line.line.quarter_wave * 1e3,
-        "loss_db_per_m": line.line.loss_db_per_m,
-        "reference": line.reference,
-    }
-
-
-def _copper_facts(layout: Layout) -> list[dict[str, Any]]:
-    return [
-        {
-            "level": island.level.value,
-            "role": island.role.value,
-            "net": island.net,
-            "area_mm2": island.outline.area * 1e6,
-            "vertices": len(island.outline),
-        }
-        for island in layout.islands
-    ]
 
 
 def _sheet(design: Design) -> StackupSheet:

@@ -150,6 +150,8 @@ class Antenna(_Record):
     """Of the loop, m."""
     end: Literal["via", "open"] | None = None
     """How the line of a ring-guided loop ends past the gap."""
+    trim: StrictBool = False
+    """Tabs on the loop to cut off where the built board comes out low; linear polarisation only."""
     dimensions: Mapping[DimensionName, Dimension] = {}
     """Dimensions given outright, not sized: name -> m. The family says which names there are."""
 
@@ -252,6 +254,18 @@ class Brief(_Record):
     board: Board
     surroundings: Surroundings = Surroundings()
     make: Make = Make()
+
+    @field_validator("antenna")
+    @classmethod
+    def _trimmed_where_linear(cls, antenna: Antenna, info: ValidationInfo) -> Antenna:
+        target: Any = info.data.get("target")
+        if antenna.trim and target is not None and target.polarisation != "linear":
+            expected = (
+                f'only with polarisation = "linear", not "{target.polarisation}": tabs pull the two modes apart and '
+                "cutting them upsets the axial ratio; leave trim out"
+            )
+            raise ElsewhereError(("antenna", "trim"), expected)
+        return antenna
 
     @field_validator("surroundings")
     @classmethod

@@ -49,8 +49,11 @@ class PlannedBoard:
     findings: tuple[Finding, ...]
 
 
-def plan_board(drawing: Drawing, request: DrawingRequest, levels: tuple[Level, ...]) -> PlannedBoard:
-    """Layout of `drawing` on a board of its own, the feed at the origin."""
+def plan_board(
+    drawing: Drawing, request: DrawingRequest, levels: tuple[Level, ...], *, lettered_board: bool = True
+) -> PlannedBoard:
+    """Layout of `drawing` on a board of its own, the feed at the origin; the legend is left out when only its copper
+    is looked at."""
     centred = drawing.translated(-drawing.feed[0], -drawing.feed[1])
     loop_centre = (-drawing.feed[0], -drawing.feed[1])
     x0, y0, x1, y1 = edge_box(centred, request)
@@ -74,6 +77,8 @@ def plan_board(drawing: Drawing, request: DrawingRequest, levels: tuple[Level, .
         keepout=_keepout(edge, centred, request),
     ).snapped()
     findings = () if len(mounting) == 4 else (_missing_holes(len(mounting)),)
+    if not lettered_board:
+        return PlannedBoard(layout, findings)
     legend = _legend(layout, (*loop_centre, *drawing.inner_size), request)
     return PlannedBoard(_with_legend(layout, legend), findings)
 

@@ -10,11 +10,12 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 from planar.copper.arc import Point
-from planar.copper.boolean import difference
+from planar.copper.boolean import difference, united
 from planar.copper.layout import Hole, Island, Level, Marking, Pad, Port
 from planar.copper.outline import Outline
 from planar.copper.path import Path, band, loop_path
 from planar.copper.shapes import turned_rectangle
+from planar.copper.tabs import PAIRS, check_joined, check_places, tab_outlines
 from planar.errors import GeometryError
 from planar.library.records import Connector, Fab
 
@@ -28,7 +29,7 @@ class DrawingRequest:
 
     `end` is "via" or "open" for a guided line. `mirrored` gives the other sense of circular
     polarisation. `masked` lists the levels under solder mask. `size_limit` (width, height) m caps the
-    board, None leaves it free.
+    board, None leaves it free. `tabs` is how many pairs of trim tabs are left, where there are any.
     """
 
     name: str
@@ -38,6 +39,7 @@ class DrawingRequest:
     fab: Fab
     masked: tuple[Level, ...]
     size_limit: tuple[float, float] | None = None
+    tabs: int = PAIRS
 
 
 @dataclass(frozen=True)
@@ -86,16 +88,33 @@ def mean_line(dimensions: Dimensions) -> Path:
     return loop_path(width, height, dimensions.get("corner_radius", 0.5 * width))
 
 
-def loop_copper(dimensions: Dimensions, gap: float) -> tuple[Outline, ...]:
-    """Loop trace with its feed gap of `gap` m and, where dimensioned, the second gap: one or two islands.
+def trim_tabs(dimensions: Dimensions, pairs: int = PAIRS) -> tuple[Outline, ...]:
+    """The trim tabs of a loop with `pairs` of them left, each from the mean line inward; none where not dimensioned.
 
-    Both gaps have parallel sides. Raises `GeometryError` when the gaps meet or a bend is too tight.
+    Raises `GeometryError` where they meet each other.
+    """
+    return tab_outlines(mean_line(dimensions), dimensions, pairs) if "tab_length" in dimensions else ()
+
+
+def loop_copper(dimensions: Dimensions, gap: float, *, tabs: int = PAIRS) -> tuple[Outline, ...]:
+    """Loop trace with its feed gap of `gap` m and, where dimensioned, the second gap and `tabs` pairs of trim tabs: one
+    or two islands.
+
+    Both gaps have parallel sides. Raises `GeometryError` when the gaps meet, a bend is too tight or a tab meets a gap,
+    another tab or another part of the trace.
     """
     line, trace = mean_line(dimensions), dimensions["trace_width"]
     if 2.0 * trace >= min(dimensions["loop_width"], loop_height(dimensions)):
         raise GeometryError(f"a trace of {trace * 1e3:.3f} mm fills the loop")
     slit = 0.25 * gap  # opens the ring, so that cutting the gap leaves no hole
     open_ring = band(line.between(slit, line.length - slit), trace)
+    if "tab_length" in dimensions:
+        gaps = {0.0: gap}
+        if "second_gap" in dimensions:
+            gaps[dimensions["second_gap_position"]] = dimensions["second_gap"]
+        check_places(line, dimensions, gaps)
+        check_joined(line, dimensions, open_ring)
+        (open_ring,) = united([open_ring, *trim_tabs(dimensions, tabs)])
     islands = difference(open_ring, _gap_window(line, 0.0, length=gap, trace=trace))
     if "second_gap" in dimensions:
         position, length = dimensions["second_gap_position"], dimensions["second_gap"]

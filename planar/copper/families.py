@@ -11,12 +11,13 @@ from collections.abc import Callable
 
 from planar.copper.arc import Edge, Point
 from planar.copper.boolean import intersection, united
-from planar.copper.drawing import Dimensions, Drawing, DrawingRequest, loop_copper, loop_height, mean_line
+from planar.copper.drawing import Dimensions, Drawing, DrawingRequest, loop_copper, loop_height, mean_line, trim_tabs
 from planar.copper.lands import ground_tab, land_holes, land_openings, land_pads
 from planar.copper.layout import Hole, Island, Level, Marking, Pad, Port, Role
 from planar.copper.outline import Outline
 from planar.copper.path import Path, stepped_band
 from planar.copper.shapes import circle, rectangle
+from planar.copper.tabs import check_clear
 from planar.errors import GeometryError
 from planar.library.records import Connector
 
@@ -29,7 +30,7 @@ BEND_WIDTHS = 1.5
 def plain(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     """Loop with a gap and two pads on the trace's ends."""
     gap, trace, length = dimensions["gap"], dimensions["trace_width"], dimensions["pad_length"]
-    islands = _handed(loop_copper(dimensions, gap), request)
+    islands = _handed(loop_copper(dimensions, gap, tabs=request.tabs), request)
     top = 0.5 * loop_height(dimensions)
     reach = 0.5 * gap + length
     pads = []
@@ -61,13 +62,15 @@ def coplanar(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
         raise GeometryError(
             f"the strips end {clear * 1e3:.2f} mm from the far side of the loop, less than a trace width"
         )
-    copper = list(_handed(loop_copper(dimensions, gap), request))
+    strips: list[Outline] = []
     pads = []
     for name, terminal, side in (("FEED-P", "signal", 1.0), ("FEED-N", "return", -1.0)):
         inner = side * 0.5 * gap
         pad = rectangle(inner, end, inner + side * pad_width, end + pad_length)
-        copper += [rectangle(inner, end, inner + side * dimensions["strip_width"], top), pad]
+        strips += [rectangle(inner, end, inner + side * dimensions["strip_width"], top), pad]
         pads.append(Pad(name, Level.TOP, pad, terminal))
+    check_clear(trim_tabs(dimensions), tuple(strips), "the strips")
+    copper = [*_handed(loop_copper(dimensions, gap, tabs=request.tabs), request), *strips]
     return Drawing(
         tuple(Island(Level.TOP, outline, Role.RADIATOR) for outline in united(copper)),
         (),
@@ -87,7 +90,7 @@ def ring_guided(dimensions: Dimensions, request: DrawingRequest) -> Drawing:
     connector = request.connector
     lands = land_pads(connector, feed)
     tab = ground_tab(connector, feed, -half_height)
-    bottom = [*_handed(loop_copper(dimensions, dimensions["gap"]), request), *([tab] if tab else [])]
+    bottom = [*_handed(loop_copper(dimensions, dimensions["gap"], tabs=request.tabs), request), *([tab] if tab else [])]
     bottom += [pad.outline for pad in lands if pad.level is Level.BOTTOM and pad.terminal == "return"]
     _check_second_gap(dimensions, connector)
     line, line_end = _guided_line(dimensions, feed, _room_between_grounds(request))

@@ -28,6 +28,8 @@ SLIVER = 0.1
 """What disappears or fills counts above this share of the squared rule; less is a sliver at an acute corner."""
 SLACK = CHECK_CHORD + 1e-8
 """m, chord error of the flattened copies and ten grid steps: copper drawn at the rule never makes a finding."""
+SIZE_RULE = "size limit"
+"""Name of the rule that a board keeps to the size the brief allows."""
 
 
 def fab_findings(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None = None) -> tuple[Finding, ...]:
@@ -216,7 +218,7 @@ def _sizes(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None) -> 
     if not _fits((width, height), fab.max_board, turnable=True):
         usable = (math.inf, math.inf)  # said once is enough
     checks = [
-        ("size limit", size_limit, Severity.REFUSE, "choose a higher permittivity, another shape, or allow more space"),
+        (SIZE_RULE, size_limit, Severity.REFUSE, "choose a higher permittivity, another shape, or allow more space"),
         ("largest board", fab.max_board, Severity.REFUSE, "choose a fab with larger boards"),
         ("panel", usable, Severity.REFUSE, "choose a fab with a larger panel"),
         ("price step", fab.price_step, Severity.NOTE, "smaller boards are in the cheaper class"),
@@ -224,7 +226,7 @@ def _sizes(layout: Layout, fab: Fab, size_limit: tuple[float, float] | None) -> 
     return [
         Finding(rule, "board", got, f"{_mm(limit[0])} x {_mm(limit[1])}", advice, severity)
         for rule, limit, severity, advice in checks
-        if limit is not None and not _fits((width, height), (limit[0], limit[1]), turnable=rule != "size limit")
+        if limit is not None and not _fits((width, height), (limit[0], limit[1]), turnable=rule != SIZE_RULE)
     ]
 
 

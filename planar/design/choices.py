@@ -15,12 +15,14 @@ from planar.copper.layout import Level
 from planar.errors import Finding, Severity, SynthesisError
 from planar.library import Connector, Cover, Fab, Family, Laminate, Library, inline_laminate
 from planar.stackup import BoardChoice, CoverChoice, Stackup, Surroundings, build_stackup
-from planar.units import show
+from planar.units import SPEED_OF_LIGHT, show
 
 COAX_IMPEDANCES = (40.0, 80.0)
 """ohm, port impedances taken to be a coax."""
 COVER_EPS_TOLERANCE, COVER_TAN_TOLERANCE, COVER_FREQUENCY = 0.05, 0.3, 1e9
 """Of a cover given by its numbers: typical of plastics (common practice, no source); frequency in Hz."""
+WIDEST_LANDS = 0.25
+"""Wavelengths, width of a connector's lands from which on they, not the loop, decide (common practice, no source)."""
 STRIP_IMPEDANCES = (45.0, 220.0)
 """ohm, port impedances coplanar strips can be sized for."""
 
@@ -59,6 +61,7 @@ class Choices:
             "circular": self.circular,
             "via": self.end == "via",
             "open": self.end == "open",
+            "trim": self.brief.antenna.trim,
         }
         return frozenset(trait for trait, there in present.items() if there)
 
@@ -149,6 +152,12 @@ def _check_feed(family: Family, connector: Connector, brief: Brief, fab: Fab) ->
         advice = f"use {wanted}, or another family"
         limit = f"a {family.feed} feed for {family.key}"
         findings.append(Finding("feed", "make.connector", connector.key, limit, advice, Severity.REFUSE))
+    wavelength = SPEED_OF_LIGHT / (0.5 * sum(brief.target.band))
+    if connector.reach > WIDEST_LANDS * wavelength:
+        got = f"lands {show(connector.reach, 'length', 3)} wide, {connector.reach / wavelength:.2f} wavelengths"
+        advice = "the connector would be the antenna: use bare-pads, or a lower band"
+        limit = f"{WIDEST_LANDS:g} wavelengths"
+        findings.append(Finding("connector", "make.connector", got, limit, advice, Severity.REFUSE))
     thickness = brief.board.thickness
     if connector.board_thickness is not None and not _fits_board(connector, thickness):
         low, high = connector.board_thickness

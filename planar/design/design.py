@@ -11,24 +11,21 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 from planar.brief import Brief, parse_brief, write_brief
-from planar.copper.board import plan_board
-from planar.copper.drawing import DrawingRequest
-from planar.copper.families import FAMILIES
 from planar.copper.layout import Layout
-from planar.copper.rules import fab_findings
+from planar.copper.rules import SIZE_RULE, fab_findings
 from planar.design.choices import Choices, choose
 from planar.design.first_order import DETAILS, first_dimensions, given_dimensions, loop_shape, stated_dimensions
 from planar.design.line_size import DesignLine, design_lines, line_settings
 from planar.design.loop_size import FORMULA_ERROR, LoopEstimate
 from planar.design.nearest import nearest_changes
-from planar.errors import BriefError, Finding, GeometryError, PlanarError, RangeError, Severity, SynthesisError
+from planar.design.prediction import Prediction
+from planar.design.sensitivity import Sensitivity
+from planar.design.sizing_record import SizingRecord
+from planar.design.trial import draw
+from planar.design.trim import Cut
+from planar.errors import BriefError, Finding, PlanarError, RangeError, Severity, SynthesisError
 from planar.library import Library
 from planar.units import show
-
-MIRRORED = "circular-right"
-"""Sense toward the top side that is drawn as the mirror image: with the second gap counter-clockwise from the feed gap,
-seen from the top, the current turns clockwise, which is left-handed toward the top (IEEE Std 145)."""
-
 
 _LINE_MATCH = {
     "coax": "not predicted by line formulas: the loop trace is a narrow ground and carries antenna current",
@@ -38,10 +35,12 @@ _LINE_MATCH = {
 
 @dataclass(frozen=True)
 class Design:
-    """A finished first-order design. `given` tells that the dimensions stand in the brief.
+    """A finished design. `given` tells that the dimensions stand in the brief.
 
-    `dimensions` name -> m; `bare_loop` is the first-order resonance of the loop alone, None where
-    given dimensions are outside the formulas.
+    `dimensions` name -> m; `bare_loop` is the first-order resonance of the loop alone, None where given dimensions
+    are outside the formulas and where the field solver has sized it. `prediction` is what the solver says of the copper
+    and `sizing` how it came to be, both None for a first-order design; `sensitivities` are empty unless asked for,
+    `cuts` unless the brief has trim tabs.
     """
 
     choices: Choices
@@ -51,6 +50,10 @@ class Design:
     bare_loop: LoopEstimate | None
     lines: tuple[DesignLine, ...]
     findings: tuple[Finding, ...]
+    prediction: Prediction | None = None
+    sizing: SizingRecord | None = None
+    sensitivities: tuple[Sensitivity, ...] = ()
+    cuts: tuple[Cut, ...] = ()
 
     @property
     def name(self) -> str:
@@ -70,6 +73,13 @@ class Design:
     @property
     def status(self) -> str:
         """One sentence on how far these dimensions can be trusted."""
+        if self.prediction is not None:
+            how = "Dimensions given" if self.given else "Sized on the field solver"
+            return (
+                f"{how}; predicted with {self.prediction.unknowns} unknowns, which move the input impedance by "
+                f"{100.0 * self.prediction.convergence:.1f} % from a coarser mesh. Laminate and etch tolerances come "
+                "on top: build one board and measure it before ordering a quantity."
+            )
         error = show(self.frequency_error, "fraction", 2)
         if self.given and self.bare_loop is None:
             return "Dimensions given, not sized; the loop is outside the formulas, so nothing is predicted."
@@ -82,15 +92,16 @@ class Design:
         )
 
 
-def make_design(brief: Brief, library: Library, where: str) -> Design:
-    """Design of `brief`, read from the file `where`.
+def make_design(brief: Brief, library: Library, where: str, *, oversize: float = 0.0) -> Design:
+    """First-order design of `brief`, read from the file `where`; its board may exceed the brief's size limit by the
+    fraction `oversize`.
 
     Raises `BriefError` for dimensions the family does not have, `LibraryError`, and `SynthesisError`
     where no such board can be made, with every rule missed and the nearest changes that work.
     """
     try:
         design = _attempt(brief, library, where)
-        refused = _refusals(design)
+        refused = _refusals(design, oversize)
         reason = f"{brief.name}: this board cannot be made as asked:"
     except RangeError as error:
         design, refused = None, ()
@@ -104,45 +115,35 @@ def make_design(brief: Brief, library: Library, where: str) -> Design:
     def works(changed: Brief) -> bool:
         try:
             valid = parse_brief(write_brief(changed), where, library)
-            return not _refusals(_attempt(valid, library, where))
+            return not _refusals(_attempt(valid, library, where, drawn_only=True))
         except PlanarError:
             return False
 
     raise SynthesisError(reason, refused, nearest_changes(brief, library, works))
 
 
-def _refusals(design: Design) -> tuple[Finding, ...]:
-    return tuple(finding for finding in design.findings if finding.severity is Severity.REFUSE)
+def _refusals(design: Design, oversize: float = 0.0) -> tuple[Finding, ...]:
+    refused = tuple(finding for finding in design.findings if finding.severity is Severity.REFUSE)
+    limit, size = design.choices.brief.board.size_limit, design.layout.size
+    if limit is None or any(side > (1.0 + oversize) * most for side, most in zip(size, limit, strict=True)):
+        return refused
+    return tuple(finding for finding in refused if finding.rule != SIZE_RULE)
 
 
-def _attempt(brief: Brief, library: Library, where: str) -> Design:
-    """The design as far as formulas and drawing go, with the rules it misses among its findings."""
+def _attempt(brief: Brief, library: Library, where: str, *, drawn_only: bool = False) -> Design:
+    """The design as far as formulas and drawing go, with the rules it misses among its findings.
+
+    `drawn_only` leaves out legend and line table: whether it can be made does not depend on them.
+    """
     choices = choose(brief, library)
     given = bool(brief.antenna.dimensions)
     if given:
         _check_names(choices, where)
     dimensions, bare = given_dimensions(choices) if given else first_dimensions(choices)
-    request = drawing_request(choices)
-    try:
-        planned = plan_board(FAMILIES[choices.family.key](dimensions, request), request, choices.levels)
-    except GeometryError as error:
-        raise SynthesisError(f"the copper cannot be drawn: {error}") from error
+    planned = draw(choices, dimensions, lettered_board=not drawn_only)
     missed = fab_findings(planned.layout, choices.fab, brief.board.size_limit)
-    lines = design_lines(dimensions, choices, line_settings(choices))
+    lines = () if drawn_only else design_lines(dimensions, choices, line_settings(choices))
     return Design(choices, dimensions, given, planned.layout, bare, lines, (*planned.findings, *missed))
-
-
-def drawing_request(choices: Choices) -> DrawingRequest:
-    """What the drawing functions need of `choices`."""
-    return DrawingRequest(
-        name=choices.brief.name,
-        end=choices.end,
-        mirrored=choices.brief.target.polarisation == MIRRORED,
-        connector=choices.connector,
-        fab=choices.fab,
-        masked=choices.masked,
-        size_limit=choices.brief.board.size_limit,
-    )
 
 
 def _check_names(choices: Choices, where: str) -> None:
@@ -166,7 +167,7 @@ def _cautions(design: Design) -> list[Finding]:
             Finding("match", "target.match", _LINE_MATCH[choices.family.feed], f"{choices.brief.target.match_db:g} dB")
         )
     findings += _gap_match(design)
-    findings += _connector_impedance(choices)
+    findings += connector_impedance(choices)
     if choices.circular and choices.family.circular_note:
         findings.append(Finding("axial ratio", choices.family.key, choices.family.circular_note, "3 dB"))
     if choices.circular:
@@ -177,7 +178,8 @@ def _cautions(design: Design) -> list[Finding]:
     return findings
 
 
-def _connector_impedance(choices: Choices) -> list[Finding]:
+def connector_impedance(choices: Choices) -> list[Finding]:
+    """A finding where the connector has another impedance than the port."""
     port, connector = choices.brief.target.impedance, choices.connector
     if connector.impedance in {None, port}:
         return []

@@ -7,13 +7,11 @@ a mesh half again as coarse. What moves too much is refused, not shown.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
-from planar.copper.drawing import loop_copper, loop_height
-from planar.copper.layout import Island, Layout, Port, Role
-from planar.copper.shapes import rectangle
+from planar.design.bare_loop import bare_loop_layout
 from planar.design.design import Design
 from planar.errors import Finding, RangeError, Severity
 from planar.field.band import checked_band
@@ -69,7 +67,7 @@ def solve_design(
     progress("solving the bare loop and the coarser mesh")
     gap = tuple(point.input_impedance_ohm for point in points)
     if design.lines:  # without a line the board is the bare loop
-        bare = FieldProblem.prepare(bare_loop_layout(design), stackup, highest)
+        bare = FieldProblem.prepare(bare_loop_layout(design.choices, design.dimensions, layout), stackup, highest)
         gap = tuple(bare.solve(frequency).impedance for frequency in frequencies)
     convergence = _convergence(design, points[len(points) // 2], highest)
     response = None
@@ -78,28 +76,6 @@ def solve_design(
         response = _sweep(problem, sweep, design.choices.brief.target.impedance)
     findings = tuple(_findings(design, points))
     return Solution(points, gap, problem.basis.count, convergence, response, findings)
-
-
-def bare_loop_layout(design: Design) -> Layout:
-    """The loop alone with a port across its gap: no line, no strips, no connector."""
-    dimensions, level = design.dimensions, design.choices.levels[-1]
-    gap = dimensions["gap"] if "gap" in dimensions else dimensions["strip_gap"]
-    top = 0.5 * loop_height(dimensions)
-    islands = tuple(Island(level, outline, Role.RADIATOR) for outline in loop_copper(dimensions, gap))
-    reach = dimensions["loop_width"] + top
-    bare = replace(
-        design.layout,
-        levels=(level,),
-        islands=islands,
-        holes=(),
-        pads=(),
-        ports=(Port("gap", "gap", level, (0.0, top), (1.0, 0.0), gap, dimensions["trace_width"]),),
-        mask_openings=(),
-        legend=(),
-        edge=rectangle(-reach, -reach, reach, reach),
-        keepout=(),
-    )
-    return bare.snapped()
 
 
 def _convergence(design: Design, middle: PointResult, highest: float) -> float:

@@ -1,7 +1,7 @@
 """The nearest change to a brief that works, found by trying.
 
-A refusal without a way out is half an answer. Each suggestion here is a changed brief that was
-designed and passed every rule; what was not tried is not suggested.
+A refusal without a way out is half an answer. Each suggestion here is a changed brief that was drawn
+from first dimensions and passed every rule; what was not tried is not suggested.
 """
 
 from __future__ import annotations
@@ -52,7 +52,7 @@ def _other_shape(brief: Brief, library: Library, works: Works) -> Iterator[str]:
             named = ", ".join(f'{key} = "{value}"' for key, value in values.items() if value is not None)
             dropped = [key for key in ("aspect_ratio", "corner_radius") if getattr(brief.antenna, key) is not None]
             without = f" without {' and '.join(dropped)}" if dropped and "shape" in values else ""
-            yield f"antenna: {named}{without} works"
+            yield f"antenna: {named}{without} can be made"
 
 
 def _other_laminate(brief: Brief, library: Library, works: Works) -> Iterator[str]:
@@ -64,13 +64,13 @@ def _other_laminate(brief: Brief, library: Library, works: Works) -> Iterator[st
     sold = [each for each in others if any(abs(t / brief.board.thickness - 1.0) < 0.07 for t in each.thicknesses)]
     for laminate in sorted(sold, key=lambda each: abs(each.eps_r - here.eps_r))[:LAMINATES_TRIED]:
         if works(_changed(brief, "board", {"laminate": laminate.key})):
-            yield f'board.laminate = "{laminate.key}" (permittivity {laminate.eps_r:g}) works'
+            yield f'board.laminate = "{laminate.key}" (permittivity {laminate.eps_r:g}) can be made'
 
 
 def _other_fab(brief: Brief, library: Library, works: Works) -> Iterator[str]:
     for key in library.keys("fabs"):
         if key != brief.make.fab and works(_changed(brief, "make", {"fab": key})):
-            yield f'make.fab = "{key}" works'
+            yield f'make.fab = "{key}" can be made'
 
 
 def _higher_band(brief: Brief, library: Library, works: Works) -> Iterator[str]:
@@ -92,7 +92,7 @@ def _higher_band(brief: Brief, library: Library, works: Works) -> Iterator[str]:
         low, high = (low, middle) if works(moved(middle)) else (middle, high)
     lowest = _rounded_up(brief.target.band[0] * high)
     if works(moved(lowest / brief.target.band[0])):
-        yield f"the same brief works with its band moved up to start at {show(lowest, 'frequency', 3)}"
+        yield f"the same brief can be made with its band moved up to start at {show(lowest, 'frequency', 3)}"
 
 
 def _rounded_up(frequency: float) -> float:

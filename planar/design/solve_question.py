@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from pathlib import Path
 
-from planar.design.design import Design
+from planar.brief import Brief
 from planar.design.option_reader import OptionReader
 
 WIDEST = 2.0
@@ -22,17 +22,17 @@ class SolveQuestion:
     s1p: Path | None = None
 
 
-def read_question(question: SolveQuestion, design: Design) -> tuple[tuple[float, ...], tuple[float, float, int] | None]:
+def read_question(question: SolveQuestion, brief: Brief) -> tuple[tuple[float, ...], tuple[float, float, int] | None]:
     """Frequencies, Hz, and sweep of `question`; the band's edges and middle where none is asked for.
 
     Raises `BriefError` with all faults.
     """
     ask = OptionReader()
     span = (1e6, 100e9)
-    low, high = design.choices.brief.target.band
+    low, high = brief.target.band
     frequencies = tuple(ask.read("at", text, "frequency", span) for text in question.at) or (
         low,
-        design.choices.centre,
+        0.5 * (low + high),
         high,
     )
     sweep = None

@@ -6,7 +6,7 @@ from planar.handoff.dxf import read_dxf, write_dxf, write_dxf_segments
 from planar.handoff.folder import write_layout_files
 from planar.handoff.gds import read_gds, write_gds
 from planar.handoff.layers import LAYERS, read_layers_csv, write_layers_csv
-from planar.handoff.pack import packed, read_manifest, write_manifest
+from planar.handoff.pack import check_destination, packed, read_manifest, write_manifest
 from planar.handoff.preview import write_preview_svg
 from planar.handoff.readme import write_layout_readme
 from planar.handoff.stackup_files import check_stackup, read_stackup_json, write_stackup_json, write_stackup_markdown
@@ -21,6 +21,7 @@ __all__ = [
     "SheetFacts",
     "SheetLayer",
     "StackupSheet",
+    "check_destination",
     "check_files",
     "check_stackup",
     "file_content",

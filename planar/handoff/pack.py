@@ -51,6 +51,17 @@ def packed(destination: Path) -> Iterator[Path]:
     _remove_aside(work, destination)
 
 
+def check_destination(destination: Path) -> None:
+    """Raise `HandoffError` where `packed` would refuse `destination`: worth asking before long work."""
+    destination = destination.absolute()
+    _refuse_foreign(destination)
+    nearest = next(parent for parent in destination.parents if parent.exists())
+    try:
+        Path(tempfile.mkdtemp(prefix=f".{destination.name}-", dir=nearest)).rmdir()
+    except OSError as error:
+        raise HandoffError(f"cannot write into {destination.parent}: {error.strerror}") from error
+
+
 def _swap(fresh: Path, destination: Path, *, aside: Path) -> None:
     """Put `fresh` in the place of `destination`, whose earlier content moves `aside`; undone when it fails."""
     _refuse_foreign(destination)  # again: hours may have passed

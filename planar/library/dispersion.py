@@ -8,7 +8,7 @@ flat loss. One measured permittivity and loss tangent fix it; no loss gives a co
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Self, overload
 
 import numpy as np
@@ -55,6 +55,10 @@ class WidebandDebye:
                 f"to {eps_inf:.3g} below {show(upper, 'frequency')}"
             )
         return cls(eps_inf, delta_eps, lower, upper)
+
+    def scaled(self, factor: float) -> Self:
+        """The model with its permittivity times `factor` at every frequency, the loss tangent as it is."""
+        return replace(self, eps_inf=self.eps_inf * factor, delta_eps=self.delta_eps * factor)
 
     @overload
     def permittivity(self, frequency: float) -> complex: ...

@@ -11,19 +11,39 @@ from dataclasses import dataclass
 from typing import Any
 
 from planar.errors import Fault, LibraryError
-from planar.library.reading import Key, Rows, Table, choice, count, list_of, measure, nearest, number, read, text
+from planar.library.reading import (
+    Key,
+    Rows,
+    Table,
+    boolean,
+    choice,
+    count,
+    list_of,
+    measure,
+    nearest,
+    number,
+    read,
+    text,
+)
 
-TRAITS = ("corner", "rectangle", "circular", "via", "open")
+TRAITS = ("corner", "rectangle", "circular", "via", "open", "trim")
 """What a design may have that makes a dimension needed."""
 
 
 @dataclass(frozen=True)
 class DimensionRule:
-    """A dimension of a family, its meaning, and the traits a design must have to need it."""
+    """A dimension of a family, its meaning, and the traits a design must have to need it.
+
+    `along` tells that it is a length along the loop. Sizing moves it where it is `sized` and the design has all
+    traits of `sized_with`.
+    """
 
     name: str
     meaning: str
     needs: frozenset[str]
+    along: bool
+    sized: bool
+    sized_with: frozenset[str]
 
 
 @dataclass(frozen=True)
@@ -67,6 +87,15 @@ class Family:
     def needed(self, traits: frozenset[str]) -> tuple[str, ...]:
         """Names of the dimensions a design with `traits` has."""
         return tuple(rule.name for rule in self.dimensions if rule.needs <= traits)
+
+    @property
+    def along(self) -> frozenset[str]:
+        """Names of the dimensions that are lengths along the loop."""
+        return frozenset(rule.name for rule in self.dimensions if rule.along)
+
+    def sized(self, traits: frozenset[str]) -> tuple[str, ...]:
+        """Names of the dimensions sizing moves, beside the loop itself, in a design with `traits`."""
+        return tuple(r.name for r in self.dimensions if r.sized and r.needs <= traits and r.sized_with <= traits)
 
     def meaning(self, name: str) -> str:
         """What the dimension `name` is."""
@@ -126,7 +155,15 @@ _HEAD: dict[str, Key | Table | Rows] = {
     "gap_wavelengths": _sourced(_SHARE, required=False),
     "circular_note": _sourced(Key(text), required=False),
 }
-_DIMENSION = Table({"meaning": Key(text), "needs": Key(list_of(choice(*TRAITS)), required=False)})
+_DIMENSION = Table(
+    {
+        "meaning": Key(text),
+        "needs": Key(list_of(choice(*TRAITS)), required=False),
+        "along": Key(boolean, required=False),
+        "sized": Key(boolean, required=False),
+        "sized_with": Key(list_of(choice(*TRAITS)), required=False),
+    }
+)
 _START = Table(
     {
         "frequency_error": _sourced(Key(measure("fraction", 0.0, 0.5))),
@@ -152,7 +189,14 @@ def read_family(key: str, raw: Mapping[str, Any], where: str) -> Family:
         if not values[table]:
             raise LibraryError([Fault(where, table, "(empty)", f"at least one [{table}.<name>] is needed")])
     rules = tuple(
-        DimensionRule(name, rule["meaning"], frozenset(rule["needs"] or ()))
+        DimensionRule(
+            name,
+            rule["meaning"],
+            frozenset(rule["needs"] or ()),
+            bool(rule["along"]),
+            bool(rule["sized"]),
+            frozenset(rule["sized_with"] or ()),
+        )
         for name, rule in values["dimensions"].items()
     )
     starts = {name: Start(**{k: _value(v) for k, v in start.items()}) for name, start in values["start"].items()}

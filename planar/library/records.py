@@ -184,3 +184,8 @@ class Connector:
     body: Body | None
     ground_tab: GroundTab | None
     sources: Sources
+
+    @property
+    def reach(self) -> float:
+        """Width of the land pattern across the line, m; 0 without lands."""
+        return max((2.0 * (abs(pad.centre[1]) + 0.5 * pad.size[1]) for pad in self.pads), default=0.0)

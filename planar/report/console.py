@@ -21,8 +21,12 @@ from rich.table import Table
 from planar.design.design import Design
 from planar.design.field_solution import Solution
 from planar.design.line_table import LineRow
+from planar.design.prediction import Prediction
+from planar.design.sensitivity import Sensitivity
+from planar.design.sizing_record import Candidate
+from planar.design.trim import Cut
 from planar.errors import Severity
-from planar.units import show
+from planar.units import SPEED_OF_LIGHT, show
 
 WIDTH = 160
 """Columns of a table that is not printed to a terminal."""
@@ -73,8 +77,16 @@ def print_design(design: Design, folder: Path | None = None) -> None:
         f"{design.name}: {choices.family.key}, {choices.brief.antenna.shape}, {polarisation}", highlight=False
     )
     width, height = design.layout.size
-    console.print(f"{_bare_loop(design)}board {width * 1e3:.1f} x {height * 1e3:.1f} mm", highlight=False)
+    console.print(f"{_loop(design)}board {width * 1e3:.1f} x {height * 1e3:.1f} mm", highlight=False)
+    if design.prediction is not None:
+        console.print(_prediction_table(design, design.prediction))
+    if design.sizing is not None and design.sizing.candidates:
+        console.print(_candidate_table(design.sizing.candidates))
     console.print(_dimension_table(design))
+    if design.sensitivities:
+        console.print(_sensitivity_table(design.sensitivities))
+    if design.cuts:
+        console.print(_cut_table(design.cuts))
     if design.lines:
         console.print(_design_line_table(design))
     if design.findings:
@@ -94,19 +106,77 @@ CAUTION_TRANSMIT = (
 )
 
 
-def _bare_loop(design: Design) -> str:
-    """Mean line as drawn, and the bare loop it rests on."""
-    bare, drawn = design.bare_loop, f"mean line {design.perimeter * 1e3:.2f} mm; "
+def _loop(design: Design) -> str:
+    """Mean line as drawn, in wavelengths, and for a first-order design the bare loop it rests on."""
+    wavelength = SPEED_OF_LIGHT / design.choices.centre
+    drawn = f"mean line {design.perimeter * 1e3:.2f} mm, {design.perimeter / wavelength:.3f} wavelengths; "
+    bare = design.bare_loop
     if bare is None:
         return drawn
     resonance = f"{bare.resistance:.0f} ohm at {show(bare.frequency, 'frequency', 4)} by formulas"
-    if design.given:
-        return f"{drawn}the bare loop resonates with {resonance}; "
-    start = design.choices.family.start(design.choices.traits)
-    return (
-        f"{drawn}{start.perimeter_ratio:g} times that of the bare loop with {resonance}, which is "
-        f"{bare.perimeter_wavelengths:.3f} wavelengths round; "
-    )
+    return f"{drawn}the bare loop resonates with {resonance}; "
+
+
+def _prediction_table(design: Design, prediction: Prediction) -> Table:
+    """What the solver says, a row a quantity, beside what the brief asks."""
+    target, point, spare = design.choices.brief.target, prediction.centre, prediction.margins
+    rows = [("worst reflection in the band", f"{spare.worst_db:.1f} dB", f"{target.match_db:g} dB")]
+    if spare.band is not None:
+        ends = f"{show(spare.band.low, 'frequency', 4)} to {show(spare.band.high, 'frequency', 4)}"
+        asked = " to ".join(show(end, "frequency", 4) for end in target.band)
+        rows.append((f"below {target.match_db:g} dB", f"{ends}, {100.0 * spare.band.fraction:.1f} %", asked))
+    rows.append(("gap of the bare loop at centre", f"{_ohm(prediction.gap_impedance_ohm)} ohm", ""))
+    rows.append(("input impedance at centre", f"{_ohm(point.input_impedance_ohm)} ohm", f"{target.impedance:g} ohm"))
+    if prediction.worst_axial_ratio_db is not None:
+        ratio = f"{point.axial_ratio_db:.2f} dB, {prediction.worst_axial_ratio_db:.2f} dB at worst in the band"
+        rows.append(("axial ratio at centre", ratio, f"3 dB, {target.polarisation}"))
+        if prediction.axial_band is not None:
+            low, high = prediction.axial_band
+            width = 100.0 * (high - low) / design.choices.centre
+            ends = f"{show(low, 'frequency', 4)} to {show(high, 'frequency', 4)}, {width:.1f} %"
+            rows.append(("axial ratio below 3 dB", ends, ""))
+    rows.append(("gain, efficiency", f"{point.gain_dbi:.2f} dBi, {100.0 * point.efficiency:.0f} %", ""))
+    rows.append(("Q of the port", f"{prediction.quality:.1f}", ""))
+    return _text_table(("predicted", "", "asked"), rows)
+
+
+def _sensitivity_table(found: Sequence[Sensitivity]) -> Table:
+    rows = []
+    for each in sorted(found, key=lambda each: -abs(each.hz_per_unit * each.value)):
+        pure = each.name.endswith("permittivity")
+        scale, unit = (0.1, "0.1") if pure else (1e-4, "0.1 mm")
+        uneven = "" if each.asymmetry is None else f"{100.0 * each.asymmetry:+.0f}"
+        value = f"{each.value:.3f}" if pure else f"{each.value * 1e3:.3f} mm"
+        ohm = _ohm(each.ohm_per_unit * scale)
+        rows.append((each.name, value, unit, f"{each.hz_per_unit * scale / 1e6:+.3f}", ohm, uneven))
+    heads = ("sensitivity", "is", "more by", "MHz", "ohm", "uneven %")
+    return _text_table(heads, rows, right=(1, 2, 3, 4, 5))
+
+
+def _cut_table(cuts: Sequence[Cut]) -> Table:
+    rows = [
+        (
+            each.name,
+            f"{each.removed * 1e6:.2f}",
+            f"{each.hz / 1e6:+.3f}",
+            f"{each.best_match_hz / 1e6:.2f}",
+            f"{each.worst_reflection_db:.1f}",
+        )
+        for each in cuts
+    ]
+    heads = ("cut off, on the mesh of comparisons", "mm2", "shift MHz", "best match MHz", "worst in the band dB")
+    return _text_table(heads, rows, right=(1, 2, 3, 4))
+
+
+def _candidate_table(candidates: Sequence[Candidate]) -> Table:
+    rows = []
+    for each in candidates:
+        size = "" if each.size is None else f"{each.size[0] * 1e3:.0f} x {each.size[1] * 1e3:.0f}"
+        margin = "" if each.margin is None else f"{100.0 * each.margin:.1f}"
+        verdict = "meets" if each.meets else "misses" if each.margin is not None else "not sized"
+        balun = "needs a balun; " if each.needs_balun else ""
+        rows.append((each.name, verdict, margin, size, balun + each.remark))
+    return _text_table(("considered", "brief", "margin %", "board mm", "remark"), rows, right=(2,))
 
 
 def _dimension_table(design: Design) -> Table:

@@ -6,7 +6,7 @@ electrical view treats copper as having no thickness: mask lies flat on the diel
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from enum import StrEnum
 
 from planar.errors import GeometryError
@@ -137,6 +137,18 @@ class Stackup:
     def find(self, name: str) -> Layer | None:
         """Layer of that name, None if the stackup has none."""
         return next((layer for layer in self.layers if layer.name == name), None)
+
+    def varied(self, name: str, *, thickness: float = 1.0, permittivity: float = 1.0) -> Stackup:
+        """The stackup with thickness and permittivity of the layer `name` times these factors.
+
+        Raises `GeometryError` if there is no such layer or it has no permittivity to vary.
+        """
+        layer = self.find(name)
+        if layer is None or (layer.model is None and permittivity != 1.0):
+            raise GeometryError(f"no layer {name!r} whose permittivity could vary")
+        model = layer.model if layer.model is None else layer.model.scaled(permittivity)
+        changed = replace(layer, thickness=layer.thickness * thickness, model=model)
+        return replace(self, layers=tuple(changed if each is layer else each for each in self.layers))
 
     def dielectrics_below(self, level: str, frequency: float) -> SlabStack:
         """What lies below the copper `level` at `frequency` (Hz), nearest first.

@@ -18,7 +18,9 @@ from typing import Any
 import pytest
 from click.testing import CliRunner, Result
 
+from planar.brief import read_brief
 from planar.cli import main
+from planar.library import Library
 
 FIELDS = [
     "kind",
@@ -345,16 +347,26 @@ def test_make_uses_the_own_library(own_library: Path, tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize("given", ["pump-house", "pump-house.toml", "Pumpe Süd 2"])
-def test_new_brief_is_made_as_it_stands(given: str, tmp_path: Path) -> None:
+def test_new_brief_is_read_as_it_stands(given: str, tmp_path: Path) -> None:
     path = tmp_path / given
     said = json.loads(planar("new", path, "--json").stdout)
     name = given.removesuffix(".toml")
     assert Path(said["file"]) == tmp_path / f"{name}.toml"
     text = Path(said["file"]).read_text(encoding="utf-8")
     assert all(f"[{table}]" in text for table in ("target", "antenna", "board", "surroundings", "make"))
-    made = json.loads(planar("make", said["file"], "--outputs", tmp_path / "out", "--json").stdout)
-    assert made["name"] == name
-    assert (tmp_path / "out" / name / "SHA256SUMS").is_file()
+    assert read_brief(said["file"], Library.open()).name == name
+
+
+def test_new_brief_is_made_as_it_stands(tmp_path: Path) -> None:
+    """It leaves the family open: every realisation is sized, one chosen and said why."""
+    path = json.loads(planar("new", tmp_path / "pump-house", "--json").stdout)["file"]
+    made = json.loads(planar("make", path, "--outputs", tmp_path / "out", "--json").stdout)
+    assert (tmp_path / "out" / "pump-house" / "SHA256SUMS").is_file()
+    candidates = made["sizing"]["candidates"]
+    assert {each["family"] for each in candidates} == {"plain", "ring-guided", "coplanar"}
+    assert candidates[0]["meets_brief"]
+    assert (candidates[0]["family"], candidates[0]["end"]) == (made["family"], made["end"])
+    assert any("chosen over" in reason for reason in made["assumptions"])
 
 
 def test_new_says_what_comes_next(tmp_path: Path) -> None:

@@ -12,11 +12,15 @@ import re
 import shutil
 import subprocess
 import sys
+import time
+import tomllib
 from pathlib import Path
 
 import ezdxf
 import gdstk
+import numpy as np
 import pytest
+import skrf
 from ezdxf import recover
 from shapely.geometry import Polygon
 
@@ -48,13 +52,43 @@ def tree(folder: Path) -> dict[str, bytes]:
     return {p.relative_to(folder).as_posix(): p.read_bytes() for p in sorted(folder.rglob("*")) if p.is_file()}
 
 
+REPEATED = {"greenhouse-telemetry", "orchard-gateway", "workshop-loop"}
+"""Examples made a second time: one level, two levels, given dimensions."""
+
+
+def shared(factory: pytest.TempPathFactory) -> Path:
+    """A folder all processes of this test run share."""
+    own = factory.getbasetemp()
+    return own.parent if "PYTEST_XDIST_WORKER" in os.environ else own
+
+
 @pytest.fixture(scope="module", params=BRIEFS, ids=lambda path: path.stem)
 def pack(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """The pack of one example, made from another folder."""
-    elsewhere = tmp_path_factory.mktemp("elsewhere")
-    done = run(elsewhere, "make", request.param)
-    (elsewhere / "printed.txt").write_text(done.stdout, encoding="utf-8")
+    """The pack of one example, made from another folder, once for all processes."""
+    elsewhere = shared(tmp_path_factory) / "elsewhere" / request.param.stem
+    printed = elsewhere / "printed.txt"
+    elsewhere.parent.mkdir(exist_ok=True)
+    try:
+        elsewhere.mkdir()
+    except FileExistsError:
+        wait_for(printed)
+    else:
+        stdout = "not made"
+        try:
+            stdout = run(elsewhere, "make", request.param).stdout
+        finally:
+            printed.with_suffix(".part").write_text(stdout, encoding="utf-8")
+            printed.with_suffix(".part").rename(printed)
+    assert printed.read_text(encoding="utf-8") != "not made"
     return elsewhere / "outputs" / str(request.param.stem)
+
+
+def wait_for(path: Path) -> None:
+    for _ in range(1200):
+        if path.exists():
+            return
+        time.sleep(0.25)
+    pytest.fail(f"{path} was not made by the process that began it")
 
 
 def facts(pack: Path) -> dict[str, object]:
@@ -81,7 +115,7 @@ def verify_sums(pack: Path) -> None:
 
 
 def test_there_are_examples() -> None:
-    assert len(BRIEFS) >= 4
+    assert len(BRIEFS) >= 6
     assert REFUSED
 
 
@@ -89,7 +123,8 @@ def test_pack_is_complete(pack: Path) -> None:
     levels = {str(island["level"]) for island in facts(pack)["copper"]}  # type: ignore[attr-defined]
     layout = {"board.dxf", "board-segments.dxf", "board.gds", "layers.csv", "README.txt"}
     layout |= {f"preview-{level}.svg" for level in levels}
-    expected = {"SHA256SUMS", "brief.toml", "design.json", "fabrication/stackup.json", "fabrication/stackup.md"}
+    expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir"}
+    expected |= {"fabrication/stackup.json", "fabrication/stackup.md"}
     files = tree(pack)
     assert files.keys() == expected | {f"layout/{name}" for name in layout}
     assert all(files.values())
@@ -102,6 +137,8 @@ def test_sums_verify(pack: Path) -> None:
 
 def test_second_run_gives_the_same_bytes_and_json(pack: Path, tmp_path: Path) -> None:
     """Another working folder, outputs folder, hash seed, time zone and way of writing the brief's path."""
+    if pack.name not in REPEATED:
+        pytest.skip("made once")
     brief = os.path.relpath(EXAMPLES / f"{pack.name}.toml", tmp_path)
     again = tmp_path / "other place"
     done = run(tmp_path, "make", brief, "--outputs", again, "--json", PYTHONHASHSEED="7", TZ="Pacific/Auckland")
@@ -115,8 +152,19 @@ def test_second_run_gives_the_same_bytes_and_json(pack: Path, tmp_path: Path) ->
 
 def test_brief_of_the_pack_makes_the_pack(pack: Path, tmp_path: Path) -> None:
     """What was asked, with the defaults written out, asks for the same again."""
+    if pack.name != "greenhouse-telemetry":
+        pytest.skip("one of them is enough")
     run(tmp_path, "make", pack / "brief.toml")
     assert tree(tmp_path / "outputs" / pack.name) == tree(pack)
+
+
+@pytest.mark.parametrize("side", ["top", "bottom"])
+def test_readme_shows_the_copper_of_today(pack: Path, side: str) -> None:
+    """Change detector: the pictures README shows are those the worked brief draws."""
+    if pack.name != "orchard-gateway":
+        pytest.skip("README shows another board")
+    shown = EXAMPLES / "pictures" / f"orchard-gateway-{side}.svg"
+    assert shown.read_bytes() == (pack / "layout" / f"preview-{side}.svg").read_bytes()
 
 
 def test_table_shows_the_dimensions(pack: Path) -> None:
@@ -296,10 +344,10 @@ def test_refused_with_reason_and_a_change_that_works(brief: Path, tmp_path: Path
     assert str(brief) in done.stderr
     assert "size limit" in done.stderr
     assert "450 mm x 600 mm" in done.stderr
-    assert "Nearest changes that work:" in done.stderr
+    assert "Nearest changes:" in done.stderr
     assert list(tmp_path.iterdir()) == []
     # the change is tried: a promise that does not hold is worse than none
-    nearest = re.search(r"works with its band moved up to start at ([\d.]+) MHz", done.stderr)
+    nearest = re.search(r"can be made with its band moved up to start at ([\d.]+) MHz", done.stderr)
     assert nearest is not None
     text, low = brief.read_text(encoding="utf-8"), float(nearest[1])
     changed = tmp_path / "changed.toml"
@@ -307,7 +355,8 @@ def test_refused_with_reason_and_a_change_that_works(brief: Path, tmp_path: Path
         text.replace('["136.5 MHz", "138 MHz"]', f'["{low} MHz", "{low * 138 / 136.5:.6f} MHz"]'), encoding="utf-8"
     )
     assert changed.read_text(encoding="utf-8") != text
-    run(tmp_path, "make", changed)
+    again = run(tmp_path, "size", changed)
+    assert "board" in again.stdout
 
 
 def edited(path: Path, *changes: tuple[str, str]) -> None:
@@ -318,6 +367,20 @@ def edited(path: Path, *changes: tuple[str, str]) -> None:
     path.write_text(text, encoding="utf-8")
 
 
+GUIDED = """\
+[antenna.dimensions]
+loop_width = "94 mm"
+trace_width = "8 mm"
+gap = "2 mm"
+line_width = "3 mm"
+transformer_width = "0.3 mm"
+transformer_length = "41 mm"
+end_width = "0.9 mm"
+end_length = "2 mm"
+
+"""
+
+
 @pytest.fixture
 def brief(tmp_path: Path) -> Path:
     """A copy of an example with two copper levels, to be edited."""
@@ -326,10 +389,18 @@ def brief(tmp_path: Path) -> Path:
 
 def test_run_over_a_pack_replaces_it(brief: Path, tmp_path: Path) -> None:
     """The second design has one level: nothing of the first, such as its bottom preview, is left."""
+    edited(brief, ("[board]\n", GUIDED + "[board]\n"))
     run(tmp_path, "make", brief)
     pack = tmp_path / "outputs" / "orchard-gateway"
     assert (pack / "layout" / "preview-bottom.svg").exists()
-    edited(brief, ('"ring-guided"', '"plain"'), ('end = "via"\n', ""), ('"edge-coax"', '"bare-pads"'))
+    edited(
+        brief,
+        ('"ring-guided"', '"plain"'),
+        ('end = "via"\n', ""),
+        ('"edge-coax"', '"bare-pads"'),
+        ('"50 ohm"', '"105 ohm"'),
+        (GUIDED, ""),
+    )
     run(tmp_path, "make", brief)
     verify_sums(pack)
     assert facts(pack)["family"] == "plain"
@@ -407,3 +478,61 @@ def test_terminal_without_these_letters(tmp_path: Path, as_json: bool) -> None:
     assert (tmp_path / "outputs" / "петля" / "SHA256SUMS").exists()
     if as_json:
         assert json.loads(done.stdout)["name"] == "петля"
+
+
+def test_prediction_meets_the_brief(pack: Path) -> None:
+    """What the tool is for: every example's copper, as solved, keeps the match its brief asks over its band."""
+    said, brief = facts(pack), tomllib.loads((pack / "brief.toml").read_text(encoding="utf-8"))
+    predicted, target = said["prediction"], brief["target"]
+    assert predicted["worst_reflection_db"] <= float(target["match"].split()[0])
+    assert 0.8 < predicted["power_balance"] <= 1.01  # what lacks to 1 is guided in the slab
+    assert predicted["convergence"] < 0.05
+    if target["polarisation"] == "linear":
+        assert predicted["sense"] == "linear"
+    else:
+        assert target["polarisation"] == f"circular-{predicted['sense']}"
+        assert predicted["worst_axial_ratio_db"] < 3.0
+
+
+def test_touchstone_file_is_the_prediction(pack: Path) -> None:
+    """Read by scikit-rf; reaches from nearly DC to 2.2 times the centre, and is passive."""
+    network, said = skrf.Network(str(pack / "antenna.s1p")), facts(pack)
+    low, high = said["band_hz"]
+    centre = 0.5 * (low + high)
+    assert network.f[0] < 0.06 * centre
+    assert network.f[-1] == pytest.approx(2.2 * centre, rel=1e-6)
+    assert np.abs(network.s).max() <= 1.0
+    here = network.z[np.argmin(np.abs(network.f - centre)), 0, 0]
+    assert abs(here - complex(*said["prediction"]["input_impedance_ohm"])) < 0.01 * abs(here)
+
+
+def test_circuit_is_within_a_fiftieth_of_the_solver(pack: Path) -> None:
+    """Asked: reflection within 0.02 over +-20 %, every element positive; the values are those of the SPICE file."""
+    circuit = facts(pack)["circuit"]
+    assert circuit["worst_reflection_error"] < 0.02
+    for mode in circuit["modes"]:
+        assert min(mode["inductance_h"], mode["capacitance_f"]) > 0.0
+        assert max(mode["resistance_ohm"], mode["resistance_across_inductance_ohm"] or 0.0) > 0.0
+    assert circuit["static_capacitance_f"] >= 0.0
+    text = (pack / "circuit.cir").read_text(encoding="ascii")
+    assert text.count(".subckt") == 1
+    assert text.rstrip().splitlines()[-1].startswith(".ends")
+
+
+def test_solving_the_design_file_gives_the_prediction(pack: Path, tmp_path: Path) -> None:
+    """`planar solve design.json` draws the copper again and solves it: the same impedance at the centre of the band."""
+    said = facts(pack)
+    centre = f"{0.5 * sum(said['band_hz']) / 1e6} MHz"
+    solved = json.loads(run(tmp_path, "solve", pack / "design.json", "--at", centre, "--json").stdout)
+    (point,) = solved["points"]
+    there, here = (complex(*each["input_impedance_ohm"]) for each in (point, said["prediction"]))
+    assert abs(there - here) < 0.01 * abs(here)
+
+
+def test_design_file_edited_by_hand_is_refused(tmp_path: Path) -> None:
+    run(tmp_path, "make", EXAMPLES / "workshop-loop.toml")
+    path = tmp_path / "outputs" / "workshop-loop" / "design.json"
+    edited(path, ('"loop_width": 45.0', '"loop_width": 46.0'))
+    message = run(tmp_path, "solve", path, expect=1).stderr
+    assert "hash" in message
+    assert "[antenna.dimensions]" in message

@@ -112,7 +112,7 @@ DESIGNED: dict[str, tuple[Changes, tuple[str, ...]]] = {
     ),
     "two levels at a one-level fab": (
         {ANTENNA: ANTENNA + 'family = "ring-guided"\n', "pool-two-layer": "milled-single-sided"},
-        ("make.fab", "2 for ring-guided, limit 1 at milled-single-sided", "use a two-level fab", "works"),
+        ("make.fab", "2 for ring-guided, limit 1 at milled-single-sided", "use a two-level fab"),
     ),
     "mask at a fab without": (
         {"pool-two-layer": "milled-single-sided", 'mask = "none"': 'mask = "top"'},

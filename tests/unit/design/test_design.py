@@ -172,7 +172,7 @@ def test_wrong_names_of_dimensions_are_reported_at_once(brief: MakeBrief, librar
 def applied(change: str, asked: Brief) -> Brief:
     """The brief with a suggestion, read as a person would, written into it."""
     data = {table: getattr(asked, table) for table in ("target", "antenna", "board", "make")}
-    band = re.fullmatch(r"the same brief works with its band moved up to start at (.+)", change)
+    band = re.fullmatch(r"the same brief can be made with its band moved up to start at (.+)", change)
     if band:
         low = quantity(band[1], "frequency")
         high = low * asked.target.band[1] / asked.target.band[0]

@@ -13,8 +13,8 @@ import pytest
 
 from planar.brief import Brief
 from planar.copper.layout import Level, Role
+from planar.design.bare_loop import bare_loop_layout
 from planar.design.design import Design, make_design
-from planar.design.field_solution import bare_loop_layout
 from planar.field.far_field import far_field
 from planar.field.mesh import MeshSettings
 from planar.field.solver import FieldProblem
@@ -50,7 +50,7 @@ def test_guided_circular_loop_has_the_sense_asked_for(brief: MakeBrief, library:
 
 def test_bare_loop_has_no_line_and_a_port_across_its_gap(brief: MakeBrief, library: Library) -> None:
     design = make_design(brief(antenna={"family": "ring-guided", "end": "via"}), library, "x")
-    bare = bare_loop_layout(design)
+    bare = bare_loop_layout(design.choices, design.dimensions, design.layout)
     assert bare.levels == (Level.BOTTOM,)
     assert [island.role for island in bare.islands] == [Role.RADIATOR]
     (port,) = bare.ports
@@ -65,6 +65,6 @@ def test_bare_loop_of_a_plain_board_is_the_board(brief: MakeBrief, library: Libr
     centre, settings = design.choices.centre, MeshSettings(20e-3, crossed=True)
     board, bare = (
         FieldProblem.prepare(layout, design.choices.stackup, centre, settings).solve(centre).impedance
-        for layout in (design.layout, bare_loop_layout(design))
+        for layout in (design.layout, bare_loop_layout(design.choices, design.dimensions, design.layout))
     )
     assert abs(bare - board) < 1e-6 * abs(board)

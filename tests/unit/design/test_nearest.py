@@ -35,7 +35,7 @@ def test_every_suggestion_was_tried(brief: MakeBrief, library: Library) -> None:
 
 def test_only_another_shape(brief: MakeBrief, library: Library) -> None:
     found = nearest_changes(brief(), library, lambda b: b.antenna.shape == "rectangle" and b.antenna.end is None)
-    assert found == ('antenna: shape = "rectangle" works',)
+    assert found == ('antenna: shape = "rectangle" can be made',)
 
 
 def test_another_shape_drops_what_belongs_to_the_old_one(brief: MakeBrief, library: Library) -> None:
@@ -46,13 +46,13 @@ def test_another_shape_drops_what_belongs_to_the_old_one(brief: MakeBrief, libra
         tried.append(changed)
         return changed.antenna.shape == "circle" and changed.antenna.corner_radius is None
 
-    assert nearest_changes(asked, library, works)[0] == 'antenna: shape = "circle" without corner_radius works'
+    assert nearest_changes(asked, library, works)[0] == 'antenna: shape = "circle" without corner_radius can be made'
     assert all(b.antenna.corner_radius is None for b in tried if b.antenna.shape != "square")
 
 
 def test_another_end(brief: MakeBrief, library: Library) -> None:
     found = nearest_changes(brief(), library, lambda b: b.antenna.end == "via")
-    assert found == ('antenna: family = "ring-guided", end = "via" works',)
+    assert found == ('antenna: family = "ring-guided", end = "via" can be made',)
     plain = brief(antenna={"family": "plain"})
     assert nearest_changes(plain, library, lambda b: b.antenna.end == "via") == ()
 
@@ -77,7 +77,7 @@ def test_the_laminate_of_nearest_permittivity(brief: MakeBrief, library: Library
 
 def test_another_fab(brief: MakeBrief, library: Library) -> None:
     found = nearest_changes(brief(), library, lambda b: b.make.fab == "fine-two-layer")
-    assert found == ('make.fab = "fine-two-layer" works',)
+    assert found == ('make.fab = "fine-two-layer" can be made',)
 
 
 @pytest.mark.parametrize("lowest", [0.9e9, 1.0044e9, 1.2345e9, 1.2399e9, 1.9951e9, 2.5049e9, 3.3333e9])
