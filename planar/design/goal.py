@@ -22,8 +22,8 @@ Complex = NDArray[np.complex128]
 
 POINTS = 49
 """Frequencies of a goal: an odd number has one at the centre."""
-SPAN = 0.24
-"""Span of these frequencies over the centre, to either side, half of it is sized."""
+HALF_SPAN = 0.12
+"""They reach so far to either side, of the centre frequency, or farther than the band by a tenth."""
 IN_BAND = 0.6
 """Of the brief's reflection, the limit sized to inside the band: 4.4 dB better."""
 CIRCULAR_MATCH = 10.0 ** (-15.0 / 20.0)
@@ -55,7 +55,8 @@ class Goal:
     def of(cls, choices: Choices) -> Goal:
         """Goal of a brief."""
         target = choices.brief.target
-        frequencies = choices.centre * (1.0 + np.linspace(-0.5 * SPAN, 0.5 * SPAN, POINTS))
+        half = half_span(choices)
+        frequencies = choices.centre * (1.0 + np.linspace(-half, half, POINTS))
         match = 10.0 ** (target.match_db / 20.0)
         sense = target.polarisation.removeprefix("circular-") if choices.circular else None
         return cls(frequencies, choices.centre, target.impedance, match, target.band, sense)
@@ -104,6 +105,12 @@ class Goal:
         """Model and limits of the terms that count for `width`."""
         chosen = self.chosen(width)
         return LinearModel(model.values[chosen], model.slopes[chosen]), self.limits[chosen]
+
+
+def half_span(choices: Choices) -> float:
+    """How far a goal reaches to either side of the centre, as a fraction of it."""
+    low, high = choices.brief.target.band
+    return max(HALF_SPAN, 0.55 * (high - low) / choices.centre)
 
 
 def wrong_share(ratio: Complex, sense: str) -> Complex:

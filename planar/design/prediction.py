@@ -17,7 +17,7 @@ from planar.design.bare_loop import bare_loop_layout
 from planar.design.choices import Choices
 from planar.design.equivalent import fitted_circuit
 from planar.design.goal import Goal
-from planar.design.sizing import COARSER
+from planar.design.sizing import COARSER, verifying_effort
 from planar.design.trial import Effort, Trial, solve_trial
 from planar.errors import Finding, RangeError, Severity
 from planar.field.band import BandSolution, axial_ratio_db
@@ -31,8 +31,6 @@ from planar.units import show
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
-TRUSTED = 0.2
-"""Half the span the fine mesh is asked over, of the centre frequency."""
 BLEND = 0.04
 """Of the centre frequency, the width over which it hands over to the sizing mesh."""
 LOWEST, HIGHEST, WIDE_NODES = 0.05, 2.2, 14
@@ -95,12 +93,19 @@ def wide_response(task: tuple[Choices, Mapping[str, float]]) -> Wide:
     choices, dimensions = task
     centre = choices.centre
     band = solve_trial(choices, dimensions, Effort(COARSER, WIDE_NODES, (LOWEST * centre, HIGHEST * centre))).band
-    return Wide(dimensions, band.impedance(centre * _shares()), complex(band.impedance(np.array([centre]))[0]))
+    frequencies = centre * _shares(_trusted(choices))
+    return Wide(dimensions, band.impedance(frequencies), complex(band.impedance(np.array([centre]))[0]))
 
 
-def _shares() -> Array:
+def _trusted(choices: Choices) -> float:
+    """Half the span the fine mesh is asked over, of the centre frequency."""
+    low, high = verifying_effort(choices).span
+    return 0.5 * (high - low) / choices.centre
+
+
+def _shares(trusted: float) -> Array:
     """Frequencies of the wide response over the centre: close inside the trusted span."""
-    near = np.linspace(1.0 - TRUSTED, 1.0 + TRUSTED, FINE_POINTS)
+    near = np.linspace(1.0 - trusted, 1.0 + trusted, FINE_POINTS)
     shares: Array = np.unique(np.round(np.concatenate([np.linspace(LOWEST, HIGHEST, WIDE_POINTS), near]), 9))
     return shares
 
@@ -112,7 +117,8 @@ def predict(choices: Choices, fine: Trial, wide: Wide) -> Prediction:
     """
     goal, target = Goal.of(choices), choices.brief.target
     centre = choices.centre
-    trusted = (centre * (1.0 - TRUSTED), centre * (1.0 + TRUSTED))
+    half = _trusted(choices)
+    trusted = (centre * (1.0 - half), centre * (1.0 + half))
     inside = np.linspace(*trusted, FINE_POINTS)
     impedance = fine.band.impedance(inside)
     response = _blended(fine.band, wide, choices)
@@ -156,9 +162,10 @@ def _convergence(fine: complex, coarse: complex) -> float:
 
 def _blended(fine: BandSolution, wide: Wide, choices: Choices) -> Response:
     """Reflection over the whole range: that of the fine mesh inside, blended into that of the coarse one outside."""
-    reference, shares = choices.brief.target.impedance, _shares()
+    reference, trusted = choices.brief.target.impedance, _trusted(choices)
+    shares = _shares(trusted)
     frequency = choices.centre * shares
-    outside = np.clip((np.abs(shares - 1.0) - TRUSTED) / BLEND, 0.0, 1.0)
+    outside = np.clip((np.abs(shares - 1.0) - trusted) / BLEND, 0.0, 1.0)
     weight = 0.5 * (1.0 + np.cos(np.pi * outside))
     reflection = (1.0 - weight) * (wide.impedance - reference) / (wide.impedance + reference)
     used = weight > 0.0

@@ -19,9 +19,9 @@ from planar.design.choices import Choices
 from planar.design.design import Design, connector_impedance, make_design
 from planar.design.line_size import design_lines, line_settings
 from planar.design.prediction import Prediction, predict, solver_findings, unmet, wide_response
-from planar.design.sizing import FINE_NODES, FINE_SPAN, Sized, Verified, size_coarsely, size_finely
+from planar.design.sizing import Sized, Verified, size_coarsely, size_finely, verifying_effort
 from planar.design.sizing_record import Candidate, SizingRecord
-from planar.design.trial import Effort, Trial, draw, solve_trial
+from planar.design.trial import Trial, draw, solve_trial
 from planar.design.trim import Cut, cut_table, trim_finding
 from planar.design.variables import variables_of
 from planar.design.workers import Workers, workers
@@ -59,9 +59,12 @@ def sized_design(brief: Brief, library: Library, where: str, progress: Progress 
 
 
 def _room(first: Design) -> float:
-    """How much wider the loop may become before the board exceeds its limit, m; negative where it does."""
-    limit = first.choices.brief.board.size_limit
-    return math.inf if limit is None else min(most - side for most, side in zip(limit, first.layout.size, strict=True))
+    """How much wider the loop may become before the board exceeds its limit or the fab's, m; negative where it does."""
+    limit, size = first.choices.brief.board.size_limit, first.layout.size
+    fab = first.choices.fab.max_board  # a board may be turned on the fab's panel, not in its place
+    rooms = [most - side for most, side in zip(sorted(fab), sorted(size), strict=True)]
+    rooms += [] if limit is None else [most - side for most, side in zip(limit, size, strict=True)]
+    return min(rooms)
 
 
 def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], progress: Progress) -> Design:
@@ -110,12 +113,12 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
 
 def _analysed(design: Design, progress: Progress) -> Design:
     """A design of given dimensions with its prediction."""
-    choices, centre = design.choices, design.choices.centre
+    choices = design.choices
     progress("solving the given dimensions")
-    effort = Effort(1.0, FINE_NODES, (centre * (1.0 - FINE_SPAN), centre * (1.0 + FINE_SPAN)))
-    trial = solve_trial(choices, design.dimensions, effort)
-    prediction = predict(choices, trial, wide_response((choices, design.dimensions)))
     with workers() as shared:
+        wide = shared.beside(wide_response, (choices, design.dimensions))
+        trial = solve_trial(choices, design.dimensions, verifying_effort(choices))
+        prediction = predict(choices, trial, wide())
         cuts = _cuts(choices, design.dimensions, shared, progress)
     said = (*unmet(choices, prediction, Severity.WARN), *solver_findings(prediction), *_trimming(cuts))
     kept = [f for f in design.findings if f.rule not in {"match", "resonance", "polarisation", "axial ratio"}]

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planar.design.choices import Choices
-from planar.design.goal import FINAL_CENTRE_AXIAL_RATIO_DB, WIDTHS, Goal
+from planar.design.goal import FINAL_CENTRE_AXIAL_RATIO_DB, WIDTHS, Goal, half_span
 from planar.design.minimax import LinearModel, best_step
 from planar.design.trial import Effort, Trial, solve_trial
 from planar.design.variables import Variables
@@ -42,10 +42,13 @@ GENEROUS, SATISFIED = 0.15, 0.92
 COMFORTABLE = 0.92
 """Worst term over its limit up to which a wider span is tried."""
 SPAN, FINE_SPAN = 0.16, 0.2
-"""Half the solved span over the centre frequency, on either mesh."""
+"""Half the solved span over the centre frequency, on either mesh, where the goal does not reach farther."""
 CENTRING, CENTRING_WIDTH = 0.22, 0.12
 """Half the span of the start, over the centre frequency, and the width it is judged over."""
 COARSE_NODES, FINE_NODES = 4, 5
+"""Solutions over such a span; a wider one takes two more for each tenth."""
+BEYOND = 0.02
+"""How far the solved span reaches beyond the goal's."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -137,6 +140,18 @@ class Verified:
         return self.sized.bench.variables.held(self.sized.place)
 
 
+def effort_over(choices: Choices, coarser: float, half: float, nodes: int) -> Effort:
+    """Effort on a mesh `coarser` than the default, `half` the centre to either side or as far as the goal reaches."""
+    wanted = max(half, half_span(choices) + BEYOND)
+    more = 2 * math.ceil(10.0 * (wanted - half) - 1e-9)
+    return Effort(coarser, nodes + more, (choices.centre * (1.0 - wanted), choices.centre * (1.0 + wanted)))
+
+
+def verifying_effort(choices: Choices) -> Effort:
+    """Effort of the fine mesh."""
+    return effort_over(choices, 1.0, FINE_SPAN, FINE_NODES)
+
+
 def size_coarsely(variables: Variables, workers: Workers) -> Sized:
     """Dimensions that bring the worst term over the widest span inside its limits, or as near as they come.
 
@@ -164,16 +179,17 @@ def size_coarsely(variables: Variables, workers: Workers) -> Sized:
 def _started(variables: Variables, goal: Goal, workers: Workers) -> Sized:
     """The start with its loop scaled to where it works best, and the derivatives there."""
     place = np.zeros(len(variables.names))
-    centre = goal.centre
-    wide = Effort(COARSER, FINE_NODES, (centre * (1.0 - CENTRING), centre * (1.0 + CENTRING)))
-    band = solve_trial(variables.choices, variables.dimensions(place), wide).band
+    choices = variables.choices
+    reach = max(CENTRING, half_span(choices) + CENTRING - 0.5 * CENTRING_WIDTH)
+    wide = effort_over(choices, COARSER, reach, FINE_NODES + 2 * math.ceil(10.0 * (reach - CENTRING) - 1e-9))
+    band = solve_trial(choices, variables.dimensions(place), wide).band
     room = CENTRING - 0.5 * CENTRING_WIDTH
     shifts = np.linspace(1.0 - room, 1.0 + room, 65).tolist()
     best = min(shifts, key=lambda s: goal.worst(goal.terms(band, s), CENTRING_WIDTH) + 0.2 * abs(math.log(s)))
     place[0] = np.clip(math.log(best) / variables.scales[0], variables.low[0], variables.high[0])
-    effort = Effort(COARSER, COARSE_NODES, (centre * (1.0 - SPAN), centre * (1.0 + SPAN)))
+    effort = effort_over(choices, COARSER, SPAN, COARSE_NODES)
     bench = Bench(variables, goal, effort, workers)
-    values = goal.terms(solve_trial(variables.choices, variables.dimensions(place), effort).band)
+    values = goal.terms(solve_trial(choices, variables.dimensions(place), effort).band)
     model = LinearModel(values, bench.slopes(place, values))
     return _rewidened(Sized(bench, place, model, WIDTHS[0], 2 + len(place)), FIRST_REACH)
 
@@ -230,8 +246,7 @@ def _enough(sized: Sized) -> bool:
 
 def size_finely(coarse: Sized) -> Verified:
     """The same on the fine mesh, from where the coarse one ended and with its slopes; dimensions are rounded."""
-    centre = coarse.bench.goal.centre
-    effort = Effort(1.0, FINE_NODES, (centre * (1.0 - FINE_SPAN), centre * (1.0 + FINE_SPAN)))
+    effort = verifying_effort(coarse.bench.choices)
     goal = replace(coarse.bench.goal, centre_axial_ratio_db=FINAL_CENTRE_AXIAL_RATIO_DB)
     bench = replace(coarse.bench, goal=goal, effort=effort)
     trial = _rounded_trial(bench, coarse.place)
