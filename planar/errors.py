@@ -76,6 +76,10 @@ class FaultyInputError(PlanarError):
         self.faults = tuple(faults)
         super().__init__("\n".join(str(fault) for fault in faults))
 
+    def __reduce__(self) -> tuple[type[FaultyInputError], tuple[list[Fault]]]:
+        """Made again from its faults, not from their text, in another process."""
+        return type(self), (list(self.faults),)
+
     def facts(self) -> dict[str, Any]:
         """Every fault with file, key, value and what would be right."""
         return {"faults": [asdict(fault) for fault in self.faults]}
@@ -108,6 +112,10 @@ class SynthesisError(PlanarError):
         if changes:
             lines += ["Nearest changes:", *(f"  {change}" for change in changes)]
         super().__init__("\n".join(lines))
+
+    def __reduce__(self) -> tuple[type[SynthesisError], tuple[str, tuple[Finding, ...], tuple[str, ...]]]:
+        """Made again from its parts in another process."""
+        return type(self), (self.reason, self.findings, self.changes)
 
     def facts(self) -> dict[str, Any]:
         """Reason, rules missed and changes that work."""

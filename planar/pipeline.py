@@ -28,7 +28,7 @@ from planar.design.sensitivity import sensitivities
 from planar.design.sized import sized_design
 from planar.design.solve_question import SolveQuestion, read_question
 from planar.design.workers import workers
-from planar.errors import GeometryError, HandoffError, SynthesisError
+from planar.errors import Finding, GeometryError, HandoffError, RangeError, SynthesisError
 from planar.field.result import PointResult
 from planar.handoff import (
     ImpedanceLine,
@@ -111,7 +111,11 @@ def size(path: Path, library: Library, *, sensitive: bool = False, progress: Pro
 def _with_sensitivities(design: Design, progress: Progress) -> Design:
     progress("trying every dimension and layer both ways")
     with workers() as shared:
-        return replace(design, sensitivities=sensitivities(design.choices, design.dimensions, shared))
+        found = sensitivities(design.choices, design.dimensions, shared)
+    if found:
+        return replace(design, sensitivities=found)
+    missed = Finding("sensitivities", "dimensions", "the board could not be solved for them", "a table", "")
+    return replace(design, findings=(*design.findings, missed))
 
 
 def solve(path: Path, library: Library, question: SolveQuestion, progress: Progress = lambda stage: None) -> Solved:
@@ -181,6 +185,8 @@ def _designed(brief: Brief, library: Library, path: Path, progress: Progress) ->
         return sized_design(brief, library, str(path), progress)
     except SynthesisError as error:  # a refusal names the file, as a fault does
         raise SynthesisError(f"{path}: {error.reason}", error.findings, error.changes) from error
+    except (RangeError, GeometryError) as error:
+        raise SynthesisError(f"{path}: {brief.name}: {error}") from error
 
 
 def new_brief(path: Path) -> Path:

@@ -1,7 +1,9 @@
 """Which antenna, when the brief leaves it open: every realisation sized on a coarse mesh and ranked.
 
 First what meets the brief, then what needs no balun, then the widest margin that is left after tolerances: the match
-held to what the etched line may be off, less the frequency by which laminate and thickness may move the loop.
+held to what the etched line may be off, less the frequency by which laminate and thickness may move the loop. A
+quarter-wave line off by a fraction of its impedance turns its load into one off by twice that, and the reflection by
+about that fraction.
 """
 
 from __future__ import annotations
@@ -11,6 +13,7 @@ from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 
 from planar.brief import Brief
+from planar.copper.rules import fab_findings
 from planar.design.choices import COAX_IMPEDANCES, Choices
 from planar.design.design import Design
 from planar.design.first_order import loop_shape
@@ -19,42 +22,49 @@ from planar.design.loop_size import LoopSurroundings, resonant_frequency
 from planar.design.sizing import Sized
 from planar.design.sizing_record import Candidate
 from planar.design.trial import draw
-from planar.errors import PlanarError, RangeError
+from planar.errors import PlanarError, RangeError, Severity, SynthesisError
 from planar.network.quality import margins
 from planar.network.response import Response
 from planar.units import show
 
+NEARLY = 1.3
+"""Worst term in the band over its limit, on the coarse mesh, up to which the fine one is expected to meet the brief:
+the limits in the band are stricter than the brief by more than that."""
 USUAL_SPREAD = 0.011
 """Fraction by which fabrication moves the frequency where the formulas cannot say (common practice, no source)."""
 
 
 @dataclass(frozen=True, eq=False)
 class Ranked:
-    """The table of candidates, best first, and the design and coarse sizing of the best, None where none was sized."""
+    """The table of `candidates`, best first, and those of them that were `sized`, with design and coarse sizing."""
 
     candidates: tuple[Candidate, ...]
-    best: tuple[Design, Sized] | None
+    sized: tuple[tuple[Candidate, Design, Sized], ...]
 
 
 SizeFirst = Callable[[Brief], tuple[Design, Sized]]
 
 
-def rank(brief: Brief, sized: SizeFirst, progress: Callable[[str], None]) -> Ranked:
-    """Size every realisation of `brief` with `sized` and rank them."""
-    found: list[tuple[Candidate, tuple[Design, Sized] | None]] = []
+def rank(brief: Brief, size: SizeFirst, progress: Callable[[str], None]) -> Ranked:
+    """Size every realisation of `brief` with `size` and rank them."""
+    sized: list[tuple[Candidate, Design, Sized]] = []
+    refused: list[Candidate] = []
     for changed in realisations(brief):
         antenna = changed.antenna
         progress(f"sizing {antenna.family}{f', end {antenna.end}' if antenna.end else ''}, {antenna.shape}")
         try:
-            design, outcome = sized(changed)
+            design, outcome = size(changed)
+            sized.append((_judged(design, outcome), design, outcome))
         except PlanarError as error:
-            reason = str(error).splitlines()[0].removeprefix(f"{brief.name}: ")
-            found.append((_refused(changed, reason), None))
-            continue
-        found.append((_judged(design, outcome), (design, outcome)))
-    found.sort(key=lambda each: _order(each[0]))
-    best = next((pair for _, pair in found if pair is not None), None)
-    return Ranked(tuple(candidate for candidate, _ in found), best)
+            refused.append(_refused(changed, _reason(error, brief.name)))
+    sized.sort(key=lambda each: _order(each[0]))
+    return Ranked((*(each[0] for each in sized), *refused), tuple(sized))
+
+
+def _reason(error: PlanarError, name: str) -> str:
+    if isinstance(error, SynthesisError) and error.findings:
+        return str(error.findings[0])
+    return str(error).splitlines()[0].removeprefix(f"{name}: ")
 
 
 def realisations(brief: Brief) -> Iterator[Brief]:
@@ -73,9 +83,8 @@ def _changed(brief: Brief, values: dict[str, object]) -> Brief:
     return brief.model_copy(update={"antenna": brief.antenna.model_copy(update=values)})
 
 
-def _order(candidate: Candidate) -> tuple[bool, bool, bool, float]:
-    sized = candidate.margin is not None
-    return not sized, not candidate.meets, candidate.needs_balun, -(candidate.margin or 0.0)
+def _order(candidate: Candidate) -> tuple[bool, bool, float]:
+    return not candidate.meets, candidate.needs_balun, -(candidate.margin or 0.0)
 
 
 def _refused(brief: Brief, reason: str) -> Candidate:
@@ -95,15 +104,19 @@ def _judged(design: Design, sized: Sized) -> Candidate:
     spread = frequency_spread(choices, sized.dimensions)
     least = -math.inf if held.below is None or held.above is None else min(held.below, held.above)
     margin = max(-1.0, least / choices.centre - spread)
-    worst = sized.bench.goal.worst(sized.model.values, 0.0)
-    size = draw(choices, sized.dimensions, lettered_board=False).layout.size
+    worst = goal.worst(sized.model.values, 0.0)
+    layout = draw(choices, sized.dimensions, lettered_board=False).layout
+    makeable = not any(
+        finding.severity is Severity.REFUSE
+        for finding in fab_findings(layout, choices.fab, choices.brief.board.size_limit)
+    )
     return Candidate(
         choices.family.key,
         choices.end,
         antenna.shape,
-        worst < 1.3,
+        makeable and worst < NEARLY,
         margin,
-        size,
+        layout.size,
         choices.family.feed == "balanced" and coax,
         remark,
     )

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planar.design.choices import Choices
+from planar.design.first_order import loop_shape
 from planar.design.line_size import LineSettings, line_settings
 from planar.network.circuit import Circuit, LineSection, OpenEnd
 from planar.network.circuit_fit import CircuitShape, fit_circuit
@@ -30,11 +31,11 @@ def fitted_circuit(choices: Choices, dimensions: Mapping[str, float], frequency:
     coupling = None
     if choices.end == "open":
         coupling = OpenEnd(_section("microstrip", dimensions["end_width"], dimensions["end_length"], settings))
-    shape = CircuitShape(_lines(dimensions, settings), coupling, not choices.circular, modes)
+    shape = CircuitShape(_lines(choices, dimensions, settings), coupling, not choices.circular, modes)
     return fit_circuit(frequency, impedance, shape, reference=choices.brief.target.impedance)
 
 
-def _lines(dimensions: Mapping[str, float], settings: LineSettings) -> tuple[LineSection, ...]:
+def _lines(choices: Choices, dimensions: Mapping[str, float], settings: LineSettings) -> tuple[LineSection, ...]:
     """Sections of line from the port to the gap."""
     if "strip_width" in dimensions:
         strips = settings.analysed("coplanar-strips", dimensions["strip_width"], gap=dimensions["strip_gap"])
@@ -42,19 +43,12 @@ def _lines(dimensions: Mapping[str, float], settings: LineSettings) -> tuple[Lin
     if "line_width" not in dimensions:
         return ()
     transformer = dimensions["transformer_length"]
-    half = 0.5 * mean_length(dimensions) - transformer
+    round_loop = loop_shape(choices, dimensions).perimeter(dimensions["loop_width"])
+    half = 0.5 * round_loop - transformer
     return (
         _section("microstrip", dimensions["line_width"], max(half, 0.1 * transformer), settings),
         _section("microstrip", dimensions["transformer_width"], transformer, settings),
     )
-
-
-def mean_length(dimensions: Mapping[str, float]) -> float:
-    """Length of the loop's mean line, m."""
-    width = dimensions["loop_width"]
-    height = dimensions.get("loop_height", width)
-    radius = dimensions.get("corner_radius", 0.5 * width)
-    return 2.0 * (width + height) - (8.0 - 2.0 * np.pi) * radius
 
 
 def circuit_facts(circuit: Circuit) -> dict[str, Any]:

@@ -11,21 +11,15 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from planar.design.accuracy import COARSER, moved, power_findings
 from planar.design.bare_loop import bare_loop_layout
 from planar.design.design import Design
-from planar.errors import Finding, RangeError, Severity
+from planar.errors import Finding
 from planar.field.band import checked_band
 from planar.field.result import PointResult, point_result
 from planar.field.solver import FieldProblem, default_settings
 from planar.network.response import Response
-from planar.units import show
 
-COARSER = 1.5
-"""Step of the comparison mesh over that of the solution."""
-LEAST_CONVERGENCE = 0.15
-"""Change of the input impedance between the two meshes, of its magnitude, above which nothing is shown."""
-LOW_EFFICIENCY = 0.5
-"""Efficiency below which a finding says so."""
 Progress = Callable[[str], None]
 
 
@@ -74,7 +68,7 @@ def solve_design(
     if sweep is not None:
         progress("sweeping")
         response = _sweep(problem, sweep, design.choices.brief.target.impedance)
-    findings = tuple(_findings(design, points))
+    findings = tuple(power_findings(points))
     return Solution(points, gap, problem.basis.count, convergence, response, findings)
 
 
@@ -82,14 +76,7 @@ def _convergence(design: Design, middle: PointResult, highest: float) -> float:
     stackup = design.choices.stackup
     coarse = default_settings(design.layout, stackup, highest, coarser=COARSER)
     other = FieldProblem.prepare(design.layout, stackup, highest, coarse).solve(middle.frequency_hz).impedance
-    here = middle.input_impedance_ohm
-    convergence = abs(other - here) / abs(here)
-    if convergence > LEAST_CONVERGENCE:
-        raise RangeError(
-            f"the input impedance moves by {100 * convergence:.0f} % from a mesh {COARSER:g} times as coarse, at most "
-            f"{100 * LEAST_CONVERGENCE:.0f} % is accepted: this copper needs a finer mesh than the default"
-        )
-    return convergence
+    return moved(middle.input_impedance_ohm, other)
 
 
 def _sweep(problem: FieldProblem, sweep: tuple[float, float, int], reference: float) -> Response:
@@ -97,18 +84,3 @@ def _sweep(problem: FieldProblem, sweep: tuple[float, float, int], reference: fl
     frequency = np.linspace(low, high, count)
     band = checked_band(problem, low, high, reference=reference)
     return Response.from_impedance(frequency, band.impedance(frequency), z0=reference)
-
-
-def _findings(design: Design, points: Sequence[PointResult]) -> list[Finding]:
-    findings = []
-    worst = min(points, key=lambda point: point.efficiency)
-    if worst.efficiency < LOW_EFFICIENCY:
-        where = f"at {show(worst.frequency_hz, 'frequency', 4)}"
-        got = f"about {100.0 * worst.efficiency:.0f} %"
-        advice = "a metal plane close behind the loop or a lossy laminate takes the rest: move it away or change it"
-        findings.append(Finding("efficiency", where, got, f"{100.0 * LOW_EFFICIENCY:.0f} %", advice))
-    share = max(point.surface_wave_share for point in points)
-    advice = "the slab is taken as endless; on the board this part leaves at the edge and fills in the pattern"
-    got = f"up to {100.0 * share:.0f} % of the power is guided in the slab"
-    findings.append(Finding("board edge", "board", got, "endless slab", advice, Severity.NOTE))
-    return findings

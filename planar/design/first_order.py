@@ -163,7 +163,8 @@ def _trace_width(choices: Choices, settings: LineSettings) -> float:
     trace = family.trace_wavelengths * wavelength
     if family.trace_line_widths:
         guided = family.trace_line_widths * microstrip_width(choices.brief.target.impedance, settings)
-        trace = max(trace, min(guided, WIDEST_TRACE * wavelength))
+        widest = WIDEST_TRACE * wavelength if choices.circular else math.inf
+        trace = max(trace, min(guided, widest))
     return max(rounded(trace), rounded_up(choices.fab.min_track))
 
 

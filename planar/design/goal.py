@@ -16,14 +16,15 @@ from numpy.typing import NDArray
 from planar.design.choices import Choices
 from planar.design.minimax import LinearModel, worst
 from planar.field.band import BandSolution
+from planar.network.response import reflection
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 POINTS = 49
-"""Frequencies of a goal: an odd number has one at the centre."""
+"""Even frequencies of a goal, an odd number for one at the centre; the edges of the band come on top."""
 HALF_SPAN = 0.12
-"""They reach so far to either side, of the centre frequency, or farther than the band by a tenth."""
+"""They reach so far to either side, of the centre frequency; round a wider band a tenth of it beyond its edges."""
 IN_BAND = 0.6
 """Of the brief's reflection, the limit sized to inside the band: 4.4 dB better."""
 CIRCULAR_MATCH = 10.0 ** (-15.0 / 20.0)
@@ -56,7 +57,8 @@ class Goal:
         """Goal of a brief."""
         target = choices.brief.target
         half = half_span(choices)
-        frequencies = choices.centre * (1.0 + np.linspace(-half, half, POINTS))
+        even = choices.centre * (1.0 + np.linspace(-half, half, POINTS))
+        frequencies = np.unique(np.concatenate([even, target.band]))
         match = 10.0 ** (target.match_db / 20.0)
         sense = target.polarisation.removeprefix("circular-") if choices.circular else None
         return cls(frequencies, choices.centre, target.impedance, match, target.band, sense)
@@ -64,11 +66,10 @@ class Goal:
     def terms(self, band: BandSolution, shift: float = 1.0) -> Complex:
         """Terms of a solution, (j,): reflections, then wrong-sense shares; seen at frequencies times `shift`."""
         frequencies = shift * self.frequencies
-        impedance = band.impedance(frequencies)
-        reflection: Complex = (impedance - self.reference) / (impedance + self.reference)
+        reflected = reflection(band.impedance(frequencies), self.reference)
         if self.sense is None:
-            return reflection
-        return np.concatenate([reflection, wrong_share(band.circular_ratio(frequencies), self.sense)])
+            return reflected
+        return np.concatenate([reflected, wrong_share(band.circular_ratio(frequencies), self.sense)])
 
     def chosen(self, width: float) -> NDArray[np.bool_]:
         """Terms that count for a span of `width` over the centre, (j,)."""
@@ -82,11 +83,18 @@ class Goal:
         return min(self.band[0], self.centre - half), max(self.band[1], self.centre + half)
 
     @property
+    def widths(self) -> tuple[float, ...]:
+        """Widths of span to be tried, over the centre frequency: the band's own and those wider."""
+        own = (self.band[1] - self.band[0]) / self.centre
+        return (own, *(width for width in WIDTHS if width > own))
+
+    @property
     def limits(self) -> Array:
         """Limit of every term, (j,)."""
-        spacing = self.frequencies[1] - self.frequencies[0]
+        spacing = (self.frequencies[-1] - self.frequencies[0]) / (POINTS - 1)
         apart = np.abs(self.frequencies - self.centre)
-        in_band = apart <= max(0.5 * (self.band[1] - self.band[0]), 0.5 * spacing)
+        low, high = self.band
+        in_band = (self.frequencies >= low * (1.0 - 1e-12)) & (self.frequencies <= high * (1.0 + 1e-12))
         match = self.match if self.sense is None else min(self.match, CIRCULAR_MATCH)
         reflection = np.where(in_band, IN_BAND * self.match, match)
         if self.sense is None:
@@ -117,7 +125,7 @@ def wrong_share(ratio: Complex, sense: str) -> Complex:
     """Share of the other sense in the field, from left over right; its phase against the wanted one, 0 to 1 in size."""
     one = np.ones_like(ratio)
     wrong, right = (ratio, one) if sense == "right" else (one, ratio)
-    turned = wrong * np.conj(right) / np.abs(right)
+    turned = wrong * np.conj(right) / np.maximum(np.abs(right), 1e-30)
     share: Complex = turned / np.sqrt(1.0 + np.abs(ratio) ** 2)
     return share
 

@@ -1,7 +1,8 @@
 """What the field solver says of the board that ships: match, margin, gain, polarisation, and the circuit for it.
 
-The fine mesh is asked over a fifth of the frequency to either side. From DC to twice the frequency the sizing mesh
-answers: there nothing is promised, it shows what else the antenna does. Where the two meet they are blended.
+The fine mesh is asked round the band, a sixth of the frequency to either side or more for a wide band. From nearly DC
+to over twice the frequency the sizing mesh answers: there nothing is promised, it shows what else the antenna does.
+Where the two meet they are blended.
 """
 
 from __future__ import annotations
@@ -13,26 +14,27 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from planar.design import accuracy
 from planar.design.bare_loop import bare_loop_layout
 from planar.design.choices import Choices
 from planar.design.equivalent import fitted_circuit
 from planar.design.goal import Goal
 from planar.design.sizing import COARSER, verifying_effort
-from planar.design.trial import Effort, Trial, solve_trial
-from planar.errors import Finding, RangeError, Severity
+from planar.design.trial import Effort, Trial, draw, solve_trial
+from planar.errors import Finding, Severity
 from planar.field.band import BandSolution, axial_ratio_db
 from planar.field.result import PointResult, point_result
-from planar.field.solver import FieldProblem, default_settings
+from planar.field.solver import LARGEST_EXTENT, FieldProblem, default_settings
 from planar.network.circuit import Circuit
 from planar.network.quality import Margins, margins, quality_factor
-from planar.network.response import Response
-from planar.units import show
+from planar.network.response import Response, reflection
+from planar.units import SPEED_OF_LIGHT, show
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 BLEND = 0.04
-"""Of the centre frequency, the width over which it hands over to the sizing mesh."""
+"""Of the centre frequency, the outermost part of its span in which it hands over to the sizing mesh."""
 LOWEST, HIGHEST, WIDE_NODES = 0.05, 2.2, 14
 """Ends of the wide response over the centre frequency, and the solutions it rests on."""
 GAP_COARSER = 1.5
@@ -41,20 +43,16 @@ FINE_POINTS, WIDE_POINTS = 161, 173
 """Frequencies inside the trusted span and over the whole."""
 AXIAL_RATIO_DB = 3.0
 """dB, axial ratio up to which polarisation counts as circular (common practice, no source)."""
-LOW_EFFICIENCY = 0.5
-"""Efficiency below which a finding says so."""
-LEAST_CONVERGENCE = 0.15
-"""Change of the input impedance between two meshes, of its magnitude, above which nothing is shown."""
 
 
 @dataclass(frozen=True, eq=False)
 class Prediction:
     """The solved board at the connector's reference plane.
 
-    `response` from nearly DC to 2.2 times the centre, by the fine mesh inside `trusted` (low, high) Hz. `centre` at the
+    `response` from 0.05 to 2.2 times the centre, by the fine mesh inside `trusted` (low, high) Hz. `centre` at the
     middle of the band, `gap_impedance_ohm` of the bare loop there. `worst_axial_ratio_db` over the band, `axial_band`
     (low, high) Hz in which it is below 3 dB; both None for linear polarisation. `quality` of the port by Yaghjian and
-    Best. `convergence` is the change of the input impedance from the mesh used for sizing, of its magnitude.
+    Best. `convergence` is the change of the input impedance from a mesh half again as coarse, of its magnitude.
     """
 
     response: Response
@@ -80,34 +78,36 @@ class Prediction:
 
 @dataclass(frozen=True, eq=False)
 class Wide:
-    """What the sizing mesh says of the board of `dimensions`: `impedance` (f,) ohm at `wide_frequencies`, and at the
-    centre."""
+    """The same board on other meshes: `impedance` (f,) ohm at `shares` (f,) of the centre on the sizing mesh, and
+    `at_centre` on one half again as coarse as the fine one."""
 
     dimensions: Mapping[str, float]
+    shares: Array
     impedance: Complex
     at_centre: complex
 
 
 def wide_response(task: tuple[Choices, Mapping[str, float]]) -> Wide:
-    """The board of these dimensions on the sizing mesh, from nearly DC to over twice the frequency."""
+    """The board of these dimensions from nearly DC to over twice the frequency, or as far as the solver takes it."""
     choices, dimensions = task
     centre = choices.centre
-    band = solve_trial(choices, dimensions, Effort(COARSER, WIDE_NODES, (LOWEST * centre, HIGHEST * centre))).band
-    frequencies = centre * _shares(_trusted(choices))
-    return Wide(dimensions, band.impedance(frequencies), complex(band.impedance(np.array([centre]))[0]))
+    x0, y0, x1, y1 = draw(choices, dimensions, lettered_board=False).layout.copper_bounds
+    around = 2.0 * (x1 - x0 + y1 - y0) * centre / SPEED_OF_LIGHT
+    highest = min(HIGHEST, 0.98 * LARGEST_EXTENT / around)
+    band = solve_trial(choices, dimensions, Effort(COARSER, WIDE_NODES, (LOWEST * centre, highest * centre))).band
+    half = _solved_half(choices)
+    near = np.linspace(1.0 - half, min(1.0 + half, highest), FINE_POINTS)
+    shares = np.unique(np.round(np.concatenate([np.linspace(LOWEST, highest, WIDE_POINTS), near]), 6))
+    layout = draw(choices, dimensions, lettered_board=False).layout
+    settings = default_settings(layout, choices.stackup, centre, coarser=accuracy.COARSER)
+    other = FieldProblem.prepare(layout, choices.stackup, centre, settings).solve(centre).impedance
+    return Wide(dimensions, shares, band.impedance(centre * shares), other)
 
 
-def _trusted(choices: Choices) -> float:
-    """Half the span the fine mesh is asked over, of the centre frequency."""
+def _solved_half(choices: Choices) -> float:
+    """Half the span the fine mesh is solved over, of the centre frequency."""
     low, high = verifying_effort(choices).span
     return 0.5 * (high - low) / choices.centre
-
-
-def _shares(trusted: float) -> Array:
-    """Frequencies of the wide response over the centre: close inside the trusted span."""
-    near = np.linspace(1.0 - trusted, 1.0 + trusted, FINE_POINTS)
-    shares: Array = np.unique(np.round(np.concatenate([np.linspace(LOWEST, HIGHEST, WIDE_POINTS), near]), 9))
-    return shares
 
 
 def predict(choices: Choices, fine: Trial, wide: Wide) -> Prediction:
@@ -117,9 +117,9 @@ def predict(choices: Choices, fine: Trial, wide: Wide) -> Prediction:
     """
     goal, target = Goal.of(choices), choices.brief.target
     centre = choices.centre
-    half = _trusted(choices)
-    trusted = (centre * (1.0 - half), centre * (1.0 + half))
-    inside = np.linspace(*trusted, FINE_POINTS)
+    half = _solved_half(choices)
+    trusted = (centre * (1.0 - half + BLEND), centre * (1.0 + half - BLEND))
+    inside = np.linspace(centre * (1.0 - half), centre * (1.0 + half), FINE_POINTS)
     impedance = fine.band.impedance(inside)
     response = _blended(fine.band, wide, choices)
     axial = None if goal.sense is None else axial_ratio_db(fine.band.circular_ratio(inside))
@@ -137,7 +137,7 @@ def predict(choices: Choices, fine: Trial, wide: Wide) -> Prediction:
         quality_factor(inside, impedance, centre),
         fitted_circuit(choices, fine.dimensions, inside[::4], impedance[::4]),
         fine.band.problem.basis.count,
-        _convergence(complex(fine.band.impedance(np.array([centre]))[0]), wide.at_centre),
+        accuracy.moved(complex(fine.band.impedance(np.array([centre]))[0]), wide.at_centre),
     )
 
 
@@ -150,28 +150,16 @@ def _gap_impedance(choices: Choices, fine: Trial) -> complex:
     return FieldProblem.prepare(bare, choices.stackup, choices.centre, settings).solve(choices.centre).impedance
 
 
-def _convergence(fine: complex, coarse: complex) -> float:
-    convergence = abs(coarse - fine) / abs(fine)
-    if convergence > LEAST_CONVERGENCE:
-        raise RangeError(
-            f"the input impedance moves by {100 * convergence:.0f} % between two meshes, at most "
-            f"{100 * LEAST_CONVERGENCE:.0f} % is accepted: this copper needs a finer mesh than the default"
-        )
-    return convergence
-
-
 def _blended(fine: BandSolution, wide: Wide, choices: Choices) -> Response:
     """Reflection over the whole range: that of the fine mesh inside, blended into that of the coarse one outside."""
-    reference, trusted = choices.brief.target.impedance, _trusted(choices)
-    shares = _shares(trusted)
-    frequency = choices.centre * shares
-    outside = np.clip((np.abs(shares - 1.0) - trusted) / BLEND, 0.0, 1.0)
+    reference, half = choices.brief.target.impedance, _solved_half(choices)
+    frequency = choices.centre * wide.shares
+    outside = np.clip((np.abs(wide.shares - 1.0) - half + BLEND) / BLEND, 0.0, 1.0)
     weight = 0.5 * (1.0 + np.cos(np.pi * outside))
-    reflection = (1.0 - weight) * (wide.impedance - reference) / (wide.impedance + reference)
+    reflected = (1.0 - weight) * reflection(wide.impedance, reference)
     used = weight > 0.0
-    near = fine.impedance(frequency[used])
-    reflection[used] += weight[used] * (near - reference) / (near + reference)
-    return Response(frequency, reflection, reference)
+    reflected[used] += weight[used] * reflection(fine.impedance(frequency[used]), reference)
+    return Response(frequency, reflected, reference)
 
 
 def _band_below(frequency: Array, values: Array, limit: float, centre: float) -> tuple[float, float] | None:
@@ -214,18 +202,6 @@ def unmet(choices: Choices, prediction: Prediction, severity: Severity) -> list[
     return found
 
 
-def solver_findings(prediction: Prediction) -> list[Finding]:
-    """What the user must know of the numbers: efficiency, what the endless slab hides."""
-    point, found = prediction.centre, []
-    if point.efficiency < LOW_EFFICIENCY:
-        got = f"about {100.0 * point.efficiency:.0f} %"
-        advice = "a metal plane close behind the loop or a lossy laminate takes the rest: move it away or change it"
-        found.append(Finding("efficiency", "antenna", got, f"{100.0 * LOW_EFFICIENCY:.0f} %", advice))
-    got = f"{100.0 * point.surface_wave_share:.1f} % of the power is guided in the slab"
-    advice = "the slab is taken as endless; on the board this part leaves at the edge and fills in the pattern"
-    return [*found, Finding("board edge", "board", got, "endless slab", advice, Severity.NOTE)]
-
-
 def _spoken(low: float, high: float) -> str:
     return f"this copper reaches it from {show(low, 'frequency', 4)} to {show(high, 'frequency', 4)}"
 
@@ -244,10 +220,10 @@ def prediction_facts(prediction: Prediction) -> Mapping[str, Any]:
         "gain_dbi": point.gain_dbi,
         "gain_below_dbi": point.gain_below_dbi,
         "efficiency": point.efficiency,
-        "axial_ratio_db": None if point.sense == "linear" else point.axial_ratio_db,
+        "axial_ratio_db": None if prediction.worst_axial_ratio_db is None else point.axial_ratio_db,
         "worst_axial_ratio_db": prediction.worst_axial_ratio_db,
         "axial_ratio_band_hz": None if prediction.axial_band is None else list(prediction.axial_band),
-        "sense": point.sense,
+        "sense": "linear" if prediction.worst_axial_ratio_db is None else point.sense,
         "quality": prediction.quality,
         "power_balance": point.power_balance,
         "unknowns": prediction.unknowns,

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planar.design.trial import Effort
+from planar.network.response import reflection
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -32,12 +33,6 @@ def shift_frequencies(centre: float) -> Array:
     span = 1.0 + np.linspace(-SPAN, SPAN, POINTS)
     frequencies: Array = centre * np.concatenate([[1.0], span, span - SLOPE, span + SLOPE])
     return frequencies
-
-
-def reflection(impedance: Complex, reference: float) -> Complex:
-    """Reflection of `impedance` (f,) ohm at a port of `reference` ohm, (f,)."""
-    result: Complex = (impedance - reference) / (impedance + reference)
-    return result
 
 
 def shift(here: Complex, there: Complex, reference: float) -> float:

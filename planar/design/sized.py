@@ -7,30 +7,34 @@ the brief. Dimensions given in the brief are solved as they are.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 
 import numpy as np
 
 from planar.brief import Brief
 from planar.copper.rules import fab_findings
+from planar.design.accuracy import power_findings
 from planar.design.candidates import Ranked, rank
 from planar.design.choices import Choices
 from planar.design.design import Design, connector_impedance, make_design
 from planar.design.line_size import design_lines, line_settings
-from planar.design.prediction import Prediction, predict, solver_findings, unmet, wide_response
+from planar.design.prediction import Prediction, predict, unmet, wide_response
 from planar.design.sizing import Sized, Verified, size_coarsely, size_finely, verifying_effort
 from planar.design.sizing_record import Candidate, SizingRecord
 from planar.design.trial import Trial, draw, solve_trial
 from planar.design.trim import Cut, cut_table, trim_finding
 from planar.design.variables import variables_of
 from planar.design.workers import Workers, workers
-from planar.errors import Finding, Severity, SynthesisError
+from planar.errors import Finding, RangeError, Severity, SynthesisError
 from planar.library import Library
+from planar.network.response import reflection
 
 Progress = Callable[[str], None]
 
-OVERSIZE = 0.12
+PORTS = (10, 600)
+"""ohm, port impedances a brief may ask for."""
+OVERSIZE = 0.2
 """Fraction by which a board of first dimensions may exceed its size limit: sizing may make it smaller."""
 
 
@@ -46,25 +50,36 @@ def sized_design(brief: Brief, library: Library, where: str, progress: Progress 
 
         def sized_coarsely(changed: Brief) -> tuple[Design, Sized]:
             first = make_design(changed, library, where, oversize=OVERSIZE)
-            return first, size_coarsely(variables_of(first.choices, first.dimensions, _room(first)), shared)
+            return first, size_coarsely(variables_of(first.choices, first.dimensions), shared)
 
         if brief.antenna.family is not None:
             progress("sizing on a coarse mesh")
             return _verified(*sized_coarsely(brief), (), progress)
-        ranked = rank(brief, sized_coarsely, progress)
-        if ranked.best is None:
-            make_design(brief, library, where)  # says why, with the nearest changes
-            raise SynthesisError(f"{brief.name}: no family could be sized", _candidate_findings(ranked))
-        return _verified(*ranked.best, ranked.candidates, progress)
+        return _best_verified(brief, rank(brief, sized_coarsely, progress), progress)
 
 
-def _room(first: Design) -> float:
-    """How much wider the loop may become before the board exceeds its limit or the fab's, m; negative where it does."""
-    limit, size = first.choices.brief.board.size_limit, first.layout.size
-    fab = first.choices.fab.max_board  # a board may be turned on the fab's panel, not in its place
-    rooms = [most - side for most, side in zip(sorted(fab), sorted(size), strict=True)]
-    rooms += [] if limit is None else [most - side for most, side in zip(limit, size, strict=True)]
-    return min(rooms)
+def _best_verified(brief: Brief, ranked: Ranked, progress: Progress) -> Design:
+    """The first of the candidates, best first, that meets the brief on the fine mesh too."""
+    misses: list[tuple[str, SynthesisError]] = []
+    for number, (candidate, design, coarse) in enumerate(ranked.sized):
+        if number > 0 and not candidate.meets:
+            break
+        rest = tuple(each for each in ranked.candidates if each is not candidate)
+        try:
+            return _verified(design, coarse, (candidate, *rest), progress)
+        except (SynthesisError, RangeError) as error:
+            misses.append((candidate.name, error if isinstance(error, SynthesisError) else SynthesisError(str(error))))
+    told = tuple(
+        Finding("family", each.name, each.remark, "the brief", "", Severity.NOTE) for each in ranked.candidates
+    )
+    if not misses:
+        raise SynthesisError(f"{brief.name}: no family could be sized:", told)
+    name, first = misses[0]
+    raise SynthesisError(
+        f"{brief.name}: nothing that was tried meets the brief; best was {name}:",
+        (*first.findings, *told),
+        first.changes,
+    )
 
 
 def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], progress: Progress) -> Design:
@@ -77,17 +92,15 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
     solutions = coarse.solutions + fine.sized.solutions
     record = SizingRecord(coarse.boards, fine.sized.boards, solutions, fine.sized.width, fine.held, candidates)
     progress("predicting")
-    wide = early()
-    if wide.dimensions != trial.dimensions:
-        wide = wide_response((choices, trial.dimensions))
-    prediction = predict(choices, trial, wide)
+    same = trial.dimensions == coarse.rounded
+    prediction = predict(choices, trial, early() if same else wide_response((choices, trial.dimensions)))
     rules = (*trial.planned.findings, *fab_findings(trial.planned.layout, choices.fab, choices.brief.board.size_limit))
     missed = [*unmet(choices, prediction, Severity.REFUSE), *(f for f in rules if f.severity is Severity.REFUSE)]
     if missed:
         raise SynthesisError(
             f"{first.name}: no {choices.family.key} board was found that meets the brief; the best reached:",
-            (*missed, *_limits(fine, choices), *_context(prediction, choices)),
-            _within_reach(prediction, choices, trial),
+            (*missed, *_limits(fine), *_context(prediction, choices)),
+            _within_reach(prediction, choices, trial) if _only_match(missed) else (),
         )
     dimensions = {name: trial.dimensions[name] for name in choices.family.needed(choices.traits)}
     cuts = _cuts(choices, dimensions, coarse.bench.workers, progress)
@@ -100,9 +113,9 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
         lines=design_lines(dimensions, choices, line_settings(choices)),
         findings=(
             *connector_impedance(choices),
-            *solver_findings(prediction),
-            *_trimming(cuts),
-            *_limits(fine, choices),
+            *power_findings([prediction.centre]),
+            *_trimming(cuts, asked=choices.brief.antenna.trim),
+            *_limits(fine),
             *rules,
         ),
         prediction=prediction,
@@ -120,7 +133,11 @@ def _analysed(design: Design, progress: Progress) -> Design:
         trial = solve_trial(choices, design.dimensions, verifying_effort(choices))
         prediction = predict(choices, trial, wide())
         cuts = _cuts(choices, design.dimensions, shared, progress)
-    said = (*unmet(choices, prediction, Severity.WARN), *solver_findings(prediction), *_trimming(cuts))
+    said = (
+        *unmet(choices, prediction, Severity.WARN),
+        *power_findings([prediction.centre]),
+        *_trimming(cuts, asked=choices.brief.antenna.trim),
+    )
     kept = [f for f in design.findings if f.rule not in {"match", "resonance", "polarisation", "axial ratio"}]
     return replace(design, findings=(*said, *kept), prediction=prediction, cuts=cuts)
 
@@ -133,27 +150,31 @@ def _cuts(choices: Choices, dimensions: Mapping[str, float], shared: Workers, pr
     return cut_table(choices, dimensions, shared)
 
 
-def _trimming(cuts: tuple[Cut, ...]) -> tuple[Finding, ...]:
-    return (trim_finding(cuts),) if cuts else ()
+def _trimming(cuts: tuple[Cut, ...], *, asked: bool) -> tuple[Finding, ...]:
+    return (trim_finding(cuts),) if asked else ()
 
 
 def _with_reasons(choices: Choices, candidates: tuple[Candidate, ...]) -> Choices:
     if not candidates:
         return choices
-    others = ", ".join(each.name for each in candidates[1:]) or "nothing else"
-    reason = f"{candidates[0].name} chosen over {others}: the widest margin after tolerances among those that fit best"
+    others = ", ".join(each.name for each in candidates[1:] if each.margin is not None) or "nothing else that fits"
+    reason = f"{candidates[0].name} chosen over {others}: it meets the brief, first without a balun, then by its margin"
     return replace(choices, reasons=(*choices.reasons, reason))
 
 
-def _limits(fine: Verified, choices: Choices) -> tuple[Finding, ...]:
+def _limits(fine: Verified) -> tuple[Finding, ...]:
     """A note for each dimension that sizing would have moved further."""
     findings = []
     for name in fine.held:
-        value = fine.trial.dimensions[name]
-        limit = f"a bound of sizing, set by {choices.fab.key} or by the trace"
+        got = f"{fine.trial.dimensions[name] * 1e3:.3f} mm"
+        limit = "as far as sizing may move it: the fab, the line formulas, or half the trace above which it runs"
         advice = "a finer fab, a wider trace or another thickness gives room"
-        findings.append(Finding("bound", name, f"{value * 1e3:.3f} mm", limit, advice, Severity.NOTE))
+        findings.append(Finding("bound", name, got, limit, advice, Severity.NOTE))
     return tuple(findings)
+
+
+def _only_match(missed: Sequence[Finding]) -> bool:
+    return all(finding.rule == "match over the band" for finding in missed)
 
 
 def _context(prediction: Prediction, choices: Choices) -> list[Finding]:
@@ -161,27 +182,21 @@ def _context(prediction: Prediction, choices: Choices) -> list[Finding]:
     z = prediction.centre.input_impedance_ohm
     got = f"{z.real:.0f}{z.imag:+.0f}j ohm at the centre"
     note = Finding("impedance", "pads", got, f"{choices.brief.target.impedance:g} ohm", "", Severity.NOTE)
-    return [note, *(each for each in solver_findings(prediction) if each.severity is Severity.WARN)]
+    return [note, *(each for each in power_findings([prediction.centre]) if each.severity is Severity.WARN)]
 
 
 def _within_reach(prediction: Prediction, choices: Choices, trial: Trial) -> tuple[str, ...]:
-    """What of the brief this copper does meet, as changes to it; every one was solved."""
+    """Changes to the brief for which the copper found, as solved, would pass; sizing for them anew does no worse."""
     target, spare, changes = choices.brief.target, prediction.margins, []
+    level = 10.0 ** (target.match_db / 20.0)
     if spare.spare_db < 0.0 and spare.worst_db < -3.0:
         changes.append(f'target.match = "{math.ceil(spare.worst_db * 10.0 + 1e-9) / 10.0:g} dB", what it reaches')
     band = spare.band
     if spare.spare_db < 0.0 and band is not None and band.low < choices.centre < band.high:
-        low, high = max(band.low, target.band[0]), min(band.high, target.band[1])
-        changes.append(f'target.band = ["{low / 1e6:.5g} MHz", "{high / 1e6:.5g} MHz"], the part this copper matches')
-    port = round(abs(prediction.centre.input_impedance_ohm))
-    impedance = trial.band.impedance(np.linspace(*target.band, 21))
-    reflection = float(np.max(np.abs((impedance - port) / (impedance + port))))
-    if spare.spare_db < 0.0 and reflection <= 10.0 ** (target.match_db / 20.0) and choices.family.feed == "balanced":
-        changes.append(f'target.impedance = "{port} ohm", at which it reflects {20.0 * math.log10(reflection):.1f} dB')
+        low, high = math.ceil(max(band.low, target.band[0]) / 1e5), math.floor(min(band.high, target.band[1]) / 1e5)
+        changes.append(f'target.band = ["{low / 10:g} MHz", "{high / 10:g} MHz"], the part this copper matches')
+    port = min(max(round(abs(prediction.centre.input_impedance_ohm)), PORTS[0]), PORTS[1])
+    worst = float(np.max(np.abs(reflection(trial.band.impedance(np.linspace(*target.band, 21)), port))))
+    if spare.spare_db < 0.0 and worst <= level and choices.family.feed == "balanced":
+        changes.append(f'target.impedance = "{port} ohm", at which it reflects {20.0 * math.log10(worst):.1f} dB')
     return tuple(changes)
-
-
-def _candidate_findings(ranked: Ranked) -> tuple[Finding, ...]:
-    return tuple(
-        Finding("family", each.name, each.remark, "the brief", "", Severity.REFUSE) for each in ranked.candidates
-    )

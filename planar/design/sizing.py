@@ -14,13 +14,15 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from planar.copper.drawing import loop_height
 from planar.design.choices import Choices
-from planar.design.goal import FINAL_CENTRE_AXIAL_RATIO_DB, WIDTHS, Goal, half_span
+from planar.design.goal import FINAL_CENTRE_AXIAL_RATIO_DB, Goal, half_span
+from planar.design.line_size import STEP
 from planar.design.minimax import LinearModel, best_step
-from planar.design.trial import Effort, Trial, solve_trial
-from planar.design.variables import Variables
+from planar.design.trial import Effort, Trial, draw, solve_trial
+from planar.design.variables import LOOP, Variables
 from planar.design.workers import Workers
-from planar.errors import SynthesisError
+from planar.errors import PlanarError, SynthesisError
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -38,13 +40,20 @@ ROUNDS, FINE_ROUNDS = 7, 3
 ENOUGH = 0.05
 """Predicted gain of the worst term, as a fraction, below which another round is not worth its boards."""
 GENEROUS, SATISFIED = 0.15, 0.92
-"""The same where the goal is met with ease: worst term over its limit at the widest span, or any on the fine mesh."""
+"""The same where the goal is met with ease: on the coarse mesh the worst term over its limit, at the widest span the
+end; on the fine one any term inside its limit."""
 COMFORTABLE = 0.92
 """Worst term over its limit up to which a wider span is tried."""
 SPAN, FINE_SPAN = 0.16, 0.2
 """Half the solved span over the centre frequency, on either mesh, where the goal does not reach farther."""
 CENTRING, CENTRING_WIDTH = 0.22, 0.12
 """Half the span of the start, over the centre frequency, and the width it is judged over."""
+TOUCHING = 1e-6
+"""Of a side, by which a board may exceed its limit: rounding."""
+FITTINGS = 6
+"""Times a loop is shortened to bring its board inside a size limit: each leaves a small part of what was over."""
+AMPLE = 0.7
+"""Of the fab's largest board: a loop smaller than this fits with everything round it."""
 COARSE_NODES, FINE_NODES = 4, 5
 """Solutions over such a span; a wider one takes two more for each tenth."""
 BEYOND = 0.02
@@ -64,6 +73,30 @@ class Bench:
     def choices(self) -> Choices:
         """What the brief leaves no longer open."""
         return self.variables.choices
+
+    def fitted(self, place: Array, *, rounding: bool = False) -> Array:
+        """`place` with the loop made smaller until the board keeps to the brief's size limit and the fab's largest.
+
+        Raises `SynthesisError` where the board cannot be drawn.
+        """
+        limit, fab = self.choices.brief.board.size_limit, self.choices.fab.max_board
+        for _ in range(FITTINGS):
+            dimensions = self.variables.dimensions(place, rounding=rounding)
+            if limit is None and max(loop_height(dimensions), dimensions[LOOP]) < AMPLE * min(fab):
+                return place
+            loop = (dimensions[LOOP], loop_height(dimensions))
+            size = draw(self.choices, dimensions, lettered_board=False).layout.size
+            limits = [] if limit is None else list(zip(size, limit, loop, strict=True))
+            limits += zip(sorted(size), sorted(fab), sorted(loop), strict=True)
+            over = max((side - most) / along for side, most, along in limits)
+            if over <= TOUCHING:
+                return place
+            shorter = 1.0 - over - STEP / min(loop)
+            if shorter <= 0.0:
+                raise SynthesisError("the board exceeds its size limit whatever the loop")
+            place = place.copy()
+            place[0] += math.log(shorter) / self.variables.scales[0]
+        raise SynthesisError("the board exceeds its size limit")
 
     def terms(self, places: list[Array]) -> list[Complex | None]:
         """Terms of the boards at `places`, None where one cannot be drawn or solved."""
@@ -87,9 +120,10 @@ class Bench:
 def _terms(task: tuple[Choices, dict[str, float], Effort, Goal]) -> Complex | None:
     choices, dimensions, effort, goal = task
     try:
-        return goal.terms(solve_trial(choices, dimensions, effort).band)
-    except SynthesisError:
+        terms = goal.terms(solve_trial(choices, dimensions, effort).band)
+    except (PlanarError, np.linalg.LinAlgError):
         return None
+    return terms if np.isfinite(terms).all() else None
 
 
 @dataclass(frozen=True, eq=False)
@@ -97,7 +131,7 @@ class Sized:
     """Where sizing stands on one mesh.
 
     `place` (x,) of the variables, `model` of the terms there, `width` of the span (over the centre frequency) sized
-    for, and how many `boards` were solved.
+    for, and how many `boards` were solved on this mesh for it.
     """
 
     bench: Bench
@@ -182,6 +216,7 @@ def _started(variables: Variables, goal: Goal, workers: Workers) -> Sized:
     choices = variables.choices
     reach = max(CENTRING, half_span(choices) + CENTRING - 0.5 * CENTRING_WIDTH)
     wide = effort_over(choices, COARSER, reach, FINE_NODES + 2 * math.ceil(10.0 * (reach - CENTRING) - 1e-9))
+    place = np.clip(place, variables.low, variables.high)
     band = solve_trial(choices, variables.dimensions(place), wide).band
     room = CENTRING - 0.5 * CENTRING_WIDTH
     shifts = np.linspace(1.0 - room, 1.0 + room, 65).tolist()
@@ -189,15 +224,18 @@ def _started(variables: Variables, goal: Goal, workers: Workers) -> Sized:
     place[0] = np.clip(math.log(best) / variables.scales[0], variables.low[0], variables.high[0])
     effort = effort_over(choices, COARSER, SPAN, COARSE_NODES)
     bench = Bench(variables, goal, effort, workers)
-    values = goal.terms(solve_trial(choices, variables.dimensions(place), effort).band)
+    place = bench.fitted(place)
+    (values,) = bench.terms([place])
+    if values is None:
+        raise SynthesisError("the field solver cannot take the first dimensions")
     model = LinearModel(values, bench.slopes(place, values))
-    return _rewidened(Sized(bench, place, model, WIDTHS[0], 2 + len(place)), FIRST_REACH)
+    return _rewidened(Sized(bench, place, model, goal.widths[0], 2 + len(place)), FIRST_REACH)
 
 
 def _rewidened(sized: Sized, reach: float) -> Sized:
     """The same, judged over the widest span its model can bring inside the limits within `reach`."""
-    width = WIDTHS[0]
-    for number, each in enumerate(WIDTHS):
+    width = sized.bench.goal.widths[0]
+    for number, each in enumerate(sized.bench.goal.widths):
         step = _step(sized, each, reach)
         if number > 0 and sized.bench.goal.worst(sized.model.at(step), each) > COMFORTABLE:
             break
@@ -216,7 +254,9 @@ def _step(sized: Sized, width: float, reach: float) -> Array:
 def _round(sized: Sized, reach: float) -> tuple[Sized, float, float]:
     """The outcome of one round, the worst term it promised, and the one its best board had."""
     goal, width = sized.bench.goal, sized.width
-    steps = [_step(sized, width, half * reach) for half in HALVES]
+    steps = _fitted_steps(sized, [_step(sized, width, half * reach) for half in HALVES])
+    if not steps:
+        return sized, sized.worst, math.inf
     promised = goal.worst(sized.model.at(steps[0]), width)
     found = sized.bench.terms([sized.place + step for step in steps])
     tried = [(step, values) for step, values in zip(steps, found, strict=True) if values is not None]
@@ -235,9 +275,20 @@ def _round(sized: Sized, reach: float) -> tuple[Sized, float, float]:
     return _rewidened(better, reach), promised, reached
 
 
+def _fitted_steps(sized: Sized, steps: list[Array]) -> list[Array]:
+    """Those of `steps` whose boards can be drawn, shortened to the size limit."""
+    fitted = []
+    for step in steps:
+        try:
+            fitted.append(sized.bench.fitted(sized.place + step) - sized.place)
+        except SynthesisError:
+            continue
+    return [step for step in fitted if step.any()]
+
+
 def _enough(sized: Sized) -> bool:
     """Whether another round is not worth its boards."""
-    if sized.worst < SATISFIED and sized.width == WIDTHS[-1]:
+    if sized.worst < SATISFIED and sized.width == sized.bench.goal.widths[-1]:
         return True
     step = _step(sized, sized.width, FIRST_REACH)
     promised = sized.bench.goal.worst(sized.model.at(step), sized.width)
@@ -249,9 +300,10 @@ def size_finely(coarse: Sized) -> Verified:
     effort = verifying_effort(coarse.bench.choices)
     goal = replace(coarse.bench.goal, centre_axial_ratio_db=FINAL_CENTRE_AXIAL_RATIO_DB)
     bench = replace(coarse.bench, goal=goal, effort=effort)
-    trial = _rounded_trial(bench, coarse.place)
+    place = bench.fitted(coarse.place, rounding=True)
+    trial = _rounded_trial(bench, place)
     model = LinearModel(goal.terms(trial.band), coarse.model.slopes)
-    sized = _rewidened(Sized(bench, coarse.place, model, coarse.width, 1), FIRST_REACH)
+    sized = _rewidened(Sized(bench, place, model, coarse.width, 1), FIRST_REACH)
     reach = FIRST_REACH
     for _ in range(FINE_ROUNDS):
         step = _step(sized, sized.width, reach)
@@ -259,6 +311,7 @@ def size_finely(coarse: Sized) -> Verified:
         if promised > sized.worst * (1.0 - (GENEROUS if sized.worst < 1.0 else ENOUGH)):
             break
         try:
+            step = bench.fitted(sized.place + step, rounding=True) - sized.place
             tried = _rounded_trial(bench, sized.place + step)
         except SynthesisError:
             sized, reach = replace(sized, boards=sized.boards + 1), 0.5 * reach

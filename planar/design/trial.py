@@ -1,7 +1,6 @@
 """One set of dimensions, drawn and solved over a span of frequencies: what sizing looks at.
 
-The mesh of a trial keeps its number of cells while the loop is scaled, so that dimensions can be compared to a
-fraction of the mesh's own error.
+Boards of one effort are meshed with the same step, so that they can be compared to a fraction of the mesh's own error.
 """
 
 from __future__ import annotations

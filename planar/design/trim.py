@@ -9,19 +9,22 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planar.copper.tabs import PAIRS
 from planar.design.choices import Choices
-from planar.design.shift import comparing_effort, reflection, shift, shift_frequencies
+from planar.design.shift import COARSER, NODES, SOLVED_SPAN, shift, shift_frequencies
+from planar.design.sizing import effort_over
 from planar.design.trial import Effort, solve_trial
 from planar.design.workers import Workers
 from planar.errors import Finding, PlanarError, Severity
+from planar.network.response import reflection
 from planar.units import SPEED_OF_LIGHT, show
 
+Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
 TAB_CUTS = {2: "upper pair of tabs", 1: "upper and middle pair of tabs", 0: "all three pairs of tabs"}
@@ -32,7 +35,7 @@ END_STEP = 0.003
 END_CUTS = (1, 2, 4)
 """Cuts of an open end in such steps."""
 POINTS = 961
-"""Frequencies in the solved span among which the best match is looked for: 0.025 % apart."""
+"""Frequencies in the solved span among which the best match is looked for."""
 BAND_POINTS = 41
 """Frequencies in the band, its ends among them, of which the worst reflection is taken."""
 ADVICE = (
@@ -45,14 +48,14 @@ ADVICE = (
 class Cut:
     """One way of trimming: `name` says what is cut off, `removed` m2 of copper is gone then.
 
-    `hz` is the shift of the response from the whole board, positive is up; `best_match_hz` and `worst_reflection_db`
-    over the band hold for the board after the cut.
+    `hz` is the shift of the response from the whole board, positive is up; `best_match_hz` (None
+    outside the span solved) and `worst_reflection_db` over the band hold for the board after the cut.
     """
 
     name: str
     removed: float
     hz: float
-    best_match_hz: float
+    best_match_hz: float | None
     worst_reflection_db: float
 
 
@@ -71,7 +74,7 @@ class _Answer:
 
     copper: float
     impedance: Complex
-    best_match_hz: float
+    best_match_hz: float | None
     worst_reflection_db: float
 
 
@@ -97,6 +100,9 @@ def cut_table(choices: Choices, dimensions: Mapping[str, float], workers: Worker
 
 def trim_finding(cuts: tuple[Cut, ...]) -> Finding:
     """How to use the table of `cuts`, with what the tabs and the line's end can do."""
+    if len(cuts) < 2:
+        got = "no cut of this board could be solved"
+        return Finding("trimming", "antenna.trim", got, "a table of cuts", "cut little and measure often")
     tabs = [cut.hz for cut in cuts if cut.name in TAB_CUTS.values()]
     ends = [cut.hz for cut in cuts if cut.removed > 0.0 and cut.name not in TAB_CUTS.values()]
     reach = {name: max(each, key=abs) for name, each in (("tabs", tabs), ("line's end", ends)) if each}
@@ -141,12 +147,17 @@ def _solved(task: tuple[Choices, _Board]) -> _Answer | None:
     return _Answer(
         sum(island.outline.area for island in trial.planned.layout.islands),
         trial.band.impedance(shift_frequencies(choices.centre)),
-        float(span[np.argmin(matched)]),
+        _inner_minimum(span, matched),
         20.0 * math.log10(worst),
     )
 
 
+def _inner_minimum(frequency: Array, values: Array) -> float | None:
+    """Where `values` are least, None where that is at an end."""
+    place = int(np.argmin(values))
+    return float(frequency[place]) if 0 < place < len(values) - 1 else None
+
+
 def _effort(choices: Choices) -> Effort:
     """That of every comparison, over the whole band where that is wider."""
-    effort, (low, high) = comparing_effort(choices.centre), choices.brief.target.band
-    return replace(effort, span=(min(effort.span[0], low), max(effort.span[1], high)))
+    return effort_over(choices, COARSER, SOLVED_SPAN, NODES)

@@ -15,7 +15,10 @@ from numpy.typing import NDArray
 
 from planar.design.choices import Choices
 from planar.design.first_order import detail_dimensions, stated_dimensions
-from planar.design.line_size import rounded, rounded_up
+from planar.design.line_size import LineSettings, line_settings, rounded, rounded_up
+from planar.errors import SynthesisError
+from planar.lines.line import line_kind
+from planar.units import show
 
 Array = NDArray[np.float64]
 
@@ -53,8 +56,10 @@ class Variables:
         }
         moved = {name: value * factors.get(name, 1.0) for name, value in moved.items()}
         if HEIGHT in factors:  # the loop as long as it was: only its proportions change
-            squeeze = factors[HEIGHT] ** -0.5
-            moved |= {name: moved[name] * squeeze for name in (LOOP, HEIGHT)}
+            width, height = (moved[name] * factors[HEIGHT] ** power for name, power in ((LOOP, -0.5), (HEIGHT, -0.5)))
+            longer = (moved[LOOP] + moved[HEIGHT] / factors[HEIGHT]) / (width + height)
+            moved |= {LOOP: width * longer, HEIGHT: height * longer}
+            moved["corner_radius"] = min(moved["corner_radius"], 0.5 * min(moved[LOOP], moved[HEIGHT]))
         if "end_width" in moved and self.choices.end == "open":  # the open end is the line gone on
             moved["end_width"] = moved["line_width"]
         if rounding:
@@ -68,30 +73,37 @@ class Variables:
         return tuple(name for name, held in zip(self.names, near, strict=True) if held)
 
 
-def variables_of(choices: Choices, start: Mapping[str, float], room: float = math.inf) -> Variables:
-    """What sizing moves of the dimensions `start`; the loop may grow by `room` m at most."""
+def variables_of(choices: Choices, start: Mapping[str, float]) -> Variables:
+    """What sizing moves of the dimensions `start`, and how far. Raises `SynthesisError` where bounds leave nothing."""
     stated = stated_dimensions(choices)
     fixed = {*stated, *(["loop_height"] if choices.brief.antenna.aspect_ratio is not None else [])}
     sized = [name for name in choices.family.sized(choices.traits) if name not in fixed]
     names = (LOOP, *sorted(sized))
     low, high = np.full(len(names), -math.log(REACH)), np.full(len(names), math.log(REACH))
-    high[0] = min(high[0], math.log(max(0.3, 1.0 + room / start[LOOP])))
+    settings = line_settings(choices)
     for number, name in enumerate(names[1:], start=1):
-        low[number] = max(low[number], math.log(_least(choices, name) / start[name]))
-        high[number] = min(high[number], math.log(_most(choices, name, start) / start[name]))
+        least, most = _bounds(choices, name, start, settings)
+        if least > most:
+            raise SynthesisError(
+                f"{name} would be at least {show(least, 'length', 3)} for the fab and the line formulas, and at most "
+                f"{show(most, 'length', 3)} under a trace of {show(start['trace_width'], 'length', 3)}: give "
+                "antenna.trace_width more, or choose a finer fab"
+            )
+        low[number] = max(low[number], math.log(least / start[name]))
+        high[number] = max(low[number], min(high[number], math.log(most / start[name])))
     scales = np.array([SCALES.get(name, 1.0) for name in names])
-    return Variables(choices, start, names, scales, np.minimum(low, high) / scales, high / scales)
+    return Variables(choices, start, names, scales, low / scales, high / scales)
 
 
-def _least(choices: Choices, name: str) -> float:
-    """Smallest value of a width or gap the fab etches, m; lengths have none."""
+def _bounds(choices: Choices, name: str, start: Mapping[str, float], settings: LineSettings) -> tuple[float, float]:
+    """Smallest and largest value, m: what the fab etches, line formulas cover, and the trace over which a line runs."""
     fab = choices.fab
-    if name.endswith("_width"):
-        return rounded_up(fab.min_track)
-    return rounded_up(fab.min_gap) if name.endswith("_gap") else 1e-6
-
-
-def _most(choices: Choices, name: str, start: Mapping[str, float]) -> float:
-    """Largest value, m: a line stays narrower than half the trace that is its ground."""
-    del choices
-    return 0.5 * start["trace_width"] if name in {"line_width", "transformer_width"} else math.inf
+    if name.endswith("_gap"):
+        return rounded_up(fab.min_gap), math.inf
+    if not name.endswith("_width"):
+        return 1e-6, math.inf
+    gap = start["strip_gap"] if name == "strip_width" else None
+    kind = line_kind("microstrip" if gap is None else "coplanar-strips")
+    low, high = kind.width_limits(gap, settings.substrate, settings.conductor, settings.frequency)
+    widest = 0.5 * start["trace_width"] if gap is None else math.inf
+    return max(rounded_up(fab.min_track), rounded_up(low)), min(high, widest)

@@ -1,16 +1,18 @@
 """Work shared among processes, one for each core, each with one thread for its linear algebra.
 
 Results do not depend on how many there are: the same function on the same items, in their order. Where there is one
-core or processes cannot be started, the work is done here, one item after the other.
+core, or processes cannot be started or die, the work is done here, one item after the other.
 """
 
 from __future__ import annotations
 
 import multiprocessing
 import os
+import signal
+import sys
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import ProcessPoolExecutor
-from contextlib import contextmanager
+from concurrent.futures import BrokenExecutor, ProcessPoolExecutor
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from typing import TypeVar
 
@@ -31,15 +33,24 @@ class Workers:
 
     def each(self, function: Callable[[Item], Result], items: Sequence[Item]) -> list[Result]:
         """`function`, a module's own, of every item."""
-        if self.pool is None or len(items) < 2:
-            return [function(item) for item in items]
-        return list(self.pool.map(function, items))
+        if self.pool is not None and len(items) > 1:
+            with suppress(BrokenExecutor):
+                return list(self.pool.map(function, items))
+        return [function(item) for item in items]
 
     def beside(self, function: Callable[[Item], Result], item: Item) -> Callable[[], Result]:
         """Begin `function` of `item`; call what is returned for the result."""
         if self.pool is None:
             return lambda: function(item)
-        return self.pool.submit(function, item).result
+        begun = self.pool.submit(function, item)
+
+        def result() -> Result:
+            try:
+                return begun.result()
+            except BrokenExecutor:
+                return function(item)
+
+        return result
 
 
 @contextmanager
@@ -47,12 +58,30 @@ def workers(count: int | None = None) -> Iterator[Workers]:
     """`Workers` on `count` processes, by default one for each core; linear algebra in one thread meanwhile."""
     processes = min(MOST, count or _cores())
     with threadpool_limits(1):
-        if processes < 2:
-            yield Workers(None)
-            return
-        method = "fork" if "fork" in multiprocessing.get_all_start_methods() else "spawn"
-        with ProcessPoolExecutor(processes, multiprocessing.get_context(method), threadpool_limits, (1,)) as pool:
+        pool = _pool(processes) if processes > 1 else None
+        try:
             yield Workers(pool)
+        finally:
+            if pool is not None:
+                pool.shutdown(cancel_futures=True)
+
+
+def _pool(processes: int) -> ProcessPoolExecutor | None:
+    """Processes that are ready, None where the system gives none."""
+    # a forked process starts at once; from Python 3.12 on forking beside threads is warned of
+    method = "fork" if sys.platform == "linux" and sys.version_info < (3, 12) else None
+    try:
+        pool = ProcessPoolExecutor(processes, multiprocessing.get_context(method), _begin)
+        pool.submit(_cores).result()
+    except (OSError, NotImplementedError, BrokenExecutor):
+        return None
+    return pool
+
+
+def _begin() -> None:
+    """In every process: one thread, and an interrupt is the parent's to handle."""
+    threadpool_limits(1)
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
 
 
 def _cores() -> int:

@@ -18,6 +18,7 @@ from planar.errors import RangeError
 from planar.field.medium import medium_of, surface_voltages
 from planar.field.moments import gap_excitation
 from planar.field.solver import FieldProblem, FieldSolution
+from planar.network.response import reflection
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -25,8 +26,8 @@ NODES = (5, 7, 10, 14)
 """Nodes tried for a band: five hold +-15 % to 1e-4."""
 TOLERANCE = 1e-3
 """Error of the reflection a checked band is solved to."""
-CHECKED_AT = 0.05
-"""Place of the check in the band."""
+CHECKED_AT = (0.05, 0.95)
+"""Places of the checks in the band: near its ends, where the error is largest."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -99,18 +100,20 @@ class BandSolution:
 def checked_band(problem: FieldProblem, low: float, high: float, *, reference: float) -> BandSolution:
     """Solution from `low` to `high` Hz with as many nodes as its reflection at `reference` ohm needs.
 
-    One more frequency is solved directly, between the outermost nodes, where such an error is largest. Raises
+    Two more frequencies are solved directly, near both ends, where such an error is largest. Raises
     `RangeError` when the most nodes tried do not bring it below the tolerance.
     """
-    check = low + CHECKED_AT * (high - low)
-    exact = problem.reaching(check).solve(check).impedance
+    checks = np.array([low + share * (high - low) for share in CHECKED_AT])
+    exact = np.array([problem.reaching(float(f)).solve(float(f)).impedance for f in checks])
     for nodes in NODES:
         band = BandSolution.between(problem, low, high, nodes)
-        here = complex(band.impedance(np.array([check]))[0])
-        error = abs((here - reference) / (here + reference) - (exact - reference) / (exact + reference))
+        missed = reflection(band.impedance(checks), reference) - reflection(exact, reference)
+        error = float(np.max(np.abs(missed)))
         if error < TOLERANCE:
             return band
-    raise RangeError(f"the reflection over the band is off by {error:.1e}, at most {TOLERANCE:.0e} is accepted")
+    raise RangeError(
+        f"the reflection over the band is off by {error:.1e}, at most {TOLERANCE:.0e} is accepted: ask for less at once"
+    )
 
 
 def axial_ratio_db(ratio: Complex) -> Array:

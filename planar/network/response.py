@@ -109,6 +109,13 @@ class Response:
         return size
 
 
+def reflection(impedance: ArrayLike, reference: float) -> Complex:
+    """Reflection (n,) of `impedance` (n,) ohm at a port of real `reference` ohm, (Z - z0)/(Z + z0)."""
+    z = np.asarray(impedance, dtype=np.complex128)
+    result: Complex = (z - reference) / (z + reference)
+    return result
+
+
 def _checked(frequency: ArrayLike, matrix: ArrayLike, name: str) -> tuple[Array, Complex]:
     """Copies of `frequency` (n,) and `matrix` as (n, p, p); raises `RangeError` where they are no response."""
     points = np.array(frequency, dtype=np.float64)

@@ -159,7 +159,7 @@ def _cut_table(cuts: Sequence[Cut]) -> Table:
             each.name,
             f"{each.removed * 1e6:.2f}",
             f"{each.hz / 1e6:+.3f}",
-            f"{each.best_match_hz / 1e6:.2f}",
+            "" if each.best_match_hz is None else f"{each.best_match_hz / 1e6:.2f}",
             f"{each.worst_reflection_db:.1f}",
         )
         for each in cuts

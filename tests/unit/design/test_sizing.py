@@ -15,9 +15,11 @@ from planar.brief import Brief
 from planar.design.choices import Choices, choose
 from planar.design.first_order import first_dimensions
 from planar.design.goal import Goal, share_of, wrong_share
-from planar.design.sizing import Sized, size_coarsely, size_finely
+from planar.design.sizing import Bench, Sized, size_coarsely, size_finely
+from planar.design.trial import Effort, draw
 from planar.design.variables import Variables, variables_of
 from planar.design.workers import Workers, workers
+from planar.errors import SynthesisError
 from planar.field.band import axial_ratio_db
 from planar.library import Library
 
@@ -25,8 +27,8 @@ MakeBrief = Callable[..., Brief]
 HERE = Workers(None)
 
 
-def variables(choices: Choices, room: float = math.inf) -> Variables:
-    return variables_of(choices, first_dimensions(choices)[0], room)
+def variables(choices: Choices) -> Variables:
+    return variables_of(choices, first_dimensions(choices)[0])
 
 
 def at(found: Variables, **steps: float) -> dict[str, float]:
@@ -66,7 +68,7 @@ def test_proportions_change_at_constant_length(brief: MakeBrief, library: Librar
     assert taller["loop_height"] / taller["loop_width"] == pytest.approx(
         math.exp(0.5) * start["loop_height"] / start["loop_width"]
     )
-    assert taller["loop_height"] * taller["loop_width"] == pytest.approx(start["loop_height"] * start["loop_width"])
+    assert taller["loop_height"] + taller["loop_width"] == pytest.approx(start["loop_height"] + start["loop_width"])
 
 
 def test_stated_values_stay(brief: MakeBrief, library: Library) -> None:
@@ -76,19 +78,50 @@ def test_stated_values_stay(brief: MakeBrief, library: Library) -> None:
     assert at(found, loop_width=0.5)["corner_radius"] == 6e-3
 
 
-def test_bounds_are_the_fabs(brief: MakeBrief, library: Library) -> None:
+def test_bounds_are_those_of_fab_and_formula(brief: MakeBrief, library: Library) -> None:
     choices = choose(brief(antenna={"family": "ring-guided", "end": "via"}), library)
     found = variables(choices)
     place = np.where(np.array(found.names) == "transformer_width", found.low, 0.0)
-    assert found.dimensions(place)["transformer_width"] == pytest.approx(choices.fab.min_track)
+    # the fab etches 0.15 mm, the microstrip formula begins at a tenth of the height (Hammerstad & Jensen 1980)
+    assert choices.fab.min_track < found.dimensions(place)["transformer_width"] == pytest.approx(0.16e-3)
     assert found.held(place) == ("transformer_width",)
 
 
-def test_room_bounds_the_loop(brief: MakeBrief, library: Library) -> None:
+@pytest.mark.parametrize("limit", [("88 mm", "300 mm"), ("300 mm", "90 mm")])
+def test_loop_is_shortened_to_the_size_limit(brief: MakeBrief, library: Library, limit: tuple[str, str]) -> None:
+    """The drawn board, rounded, keeps to the limit on both sides and comes within a millimetre of it on one."""
+    antenna = {"family": "ring-guided", "end": "via", "shape": "rectangle", "aspect_ratio": 1.2}
+    choices = choose(brief(antenna=antenna, board={"size_limit": list(limit)}), library)
+    found = variables(choices)
+    bench = Bench(found, Goal.of(choices), Effort(3.0, 4, (8e8, 1e9)), HERE)
+    place = bench.fitted(np.zeros(len(found.names)), rounding=True)
+    size = draw(choices, found.dimensions(place, rounding=True)).layout.size
+    spare = [float(most.split()[0]) * 1e-3 - side for most, side in zip(limit, size, strict=True)]
+    assert min(spare) >= -1e-9
+    assert min(spare) < 1e-3
+
+
+def test_board_without_limit_stays(brief: MakeBrief, library: Library) -> None:
     choices = choose(brief(antenna={"family": "plain"}), library)
-    found = variables(choices, room=-5e-3)
-    largest = found.dimensions(found.high)["loop_width"]
-    assert largest == pytest.approx(found.start["loop_width"] - 5e-3)
+    found = variables(choices)
+    bench = Bench(found, Goal.of(choices), Effort(3.0, 4, (8e8, 1e9)), HERE)
+    assert not bench.fitted(np.zeros(1)).any()
+
+
+def test_line_no_wider_than_half_a_narrow_trace(brief: MakeBrief, library: Library) -> None:
+    """A stated trace narrower than the line wants: the start is brought inside its bounds, and solved."""
+    antenna = {"family": "ring-guided", "end": "via", "trace_width": "3.5 mm"}
+    choices = choose(brief(antenna=antenna), library)
+    found = variables(choices)
+    start = np.clip(np.zeros(len(found.names)), found.low, found.high)
+    assert found.dimensions(start)["line_width"] == pytest.approx(1.75e-3)
+    assert np.all(found.low <= found.high)
+
+
+def test_impossible_bounds_are_refused(brief: MakeBrief, library: Library) -> None:
+    antenna = {"family": "ring-guided", "end": "via", "trace_width": "0.2 mm"}
+    with pytest.raises(SynthesisError, match=r"antenna\.trace_width"):
+        variables(choose(brief(antenna=antenna), library))
 
 
 @pytest.mark.parametrize("db", [0.0, 0.35, 3.0, 10.0])
