@@ -31,17 +31,22 @@ from planar.design.workers import workers
 from planar.errors import Finding, GeometryError, HandoffError, RangeError, SynthesisError
 from planar.field.result import PointResult
 from planar.handoff import (
+    FabricationFacts,
+    GerberFacts,
     ImpedanceLine,
+    ProjectFacts,
     SheetFacts,
     StackupSheet,
     check_destination,
+    check_fabrication_files,
     check_files,
-    check_stackup,
+    check_zip,
+    creation_date,
     packed,
     stackup_sheet,
+    write_fabrication_files,
     write_layout_files,
-    write_stackup_json,
-    write_stackup_markdown,
+    write_zip,
 )
 from planar.library import KINDS, Library
 from planar.library.reading import parse
@@ -51,6 +56,8 @@ from planar.network.touchstone import write_touchstone
 from planar.units import show
 
 Progress = Callable[[str], None]
+REVISION = "A"
+"""Of every design as planar makes it; a change of the brief is another design with another hash."""
 S_DIGITS = 9
 """Decimals of a predicted reflection: what lies beyond is rounding."""
 
@@ -247,11 +254,11 @@ def write_pack(design: Design, folder: Path) -> None:
     layout.mkdir()
     fabrication.mkdir()
     write_layout_files(design.layout, layout, status=design.status)
-    sheet = _sheet(design)
-    write_stackup_json(sheet, fabrication / "stackup.json")
-    write_stackup_markdown(sheet, fabrication / "stackup.md")
+    told = design_facts(design)
+    write_fabrication_files(design.layout, _sheet(design), fabrication, facts=_fabrication_facts(design, told["hash"]))
+    write_zip(fabrication, folder / f"{design.name}-fabrication.zip")
     (folder / "brief.toml").write_bytes(write_brief(design.choices.brief).encode("utf-8"))
-    summary = json.dumps(design_facts(design), indent=2, ensure_ascii=False) + "\n"
+    summary = json.dumps(told, indent=2, ensure_ascii=False) + "\n"
     (folder / "design.json").write_bytes(summary.encode("utf-8"))
     if design.prediction is not None:
         _write_prediction(design, design.prediction, folder)
@@ -276,7 +283,17 @@ def _write_prediction(design: Design, prediction: Prediction, folder: Path) -> N
 def check_pack(design: Design, folder: Path) -> None:
     """Read the written files again and compare. Raises `HandoffError` naming what differs."""
     check_files(design.layout, folder / "layout")
-    check_stackup(_sheet(design), folder / "fabrication" / "stackup.json")
+    facts = _fabrication_facts(design, design_facts(design)["hash"])
+    check_fabrication_files(design.layout, _sheet(design), folder / "fabrication", facts=facts)
+    check_zip(folder / "fabrication", folder / f"{design.name}-fabrication.zip")
+
+
+def _fabrication_facts(design: Design, digest: str) -> FabricationFacts:
+    choices = design.choices
+    project = ProjectFacts(design.name, REVISION, digest, creation_date())
+    ring = design.dimensions.get("via_ring", choices.fab.min_annular_ring)
+    gerber = GerberFacts(project, choices.masked, ring)
+    return FabricationFacts(gerber, choices.fab.min_track, choices.fab.min_gap, choices.fab.hole_tolerance)
 
 
 def _sheet(design: Design) -> StackupSheet:

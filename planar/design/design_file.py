@@ -17,7 +17,7 @@ from typing import Any
 
 from planar import __version__
 from planar.brief import check_brief, write_brief
-from planar.copper.layout import Layout
+from planar.copper.layout import Hole, Layout
 from planar.design.design import Design, make_design
 from planar.design.equivalent import circuit_facts
 from planar.design.line_size import DesignLine
@@ -62,6 +62,7 @@ def design_facts(design: Design) -> dict[str, Any]:
         "cuts": [_cut_facts(each) for each in design.cuts],
         "lines": [_line_facts(line) for line in design.lines],
         "copper": _copper_facts(design.layout),
+        "holes": [_hole_facts(hole) for hole in design.layout.holes],
         "dc_short": design.layout.dc_short,
         "assumptions": list(choices.reasons),
         "findings": [asdict(finding) for finding in design.findings],
@@ -209,6 +210,16 @@ def _line_facts(line: DesignLine) -> dict[str, Any]:
         "quarter_wave_mm": line.line.quarter_wave * 1e3,
         "loss_db_per_m": line.line.loss_db_per_m,
         "reference": line.reference,
+    }
+
+
+def _hole_facts(hole: Hole) -> dict[str, Any]:
+    return {
+        "centre_mm": [round(value * 1e3, 6) for value in hole.centre],
+        "diameter_mm": round(hole.diameter * 1e3, 6),
+        "plated": hole.plated,
+        "purpose": hole.purpose,
+        "net": hole.net,
     }
 
 

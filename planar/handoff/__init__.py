@@ -3,10 +3,13 @@
 from planar.handoff.check import check_files
 from planar.handoff.content import Drill, FileContent, Label, file_content
 from planar.handoff.dxf import read_dxf, write_dxf, write_dxf_segments
+from planar.handoff.fabrication import FabricationFacts, check_fabrication_files, write_fabrication_files
 from planar.handoff.folder import write_layout_files
 from planar.handoff.gds import read_gds, write_gds
+from planar.handoff.gerber_attributes import ProjectFacts, creation_date
+from planar.handoff.gerber_content import GerberFacts
 from planar.handoff.layers import LAYERS, read_layers_csv, write_layers_csv
-from planar.handoff.pack import check_destination, packed, read_manifest, write_manifest
+from planar.handoff.pack import check_destination, check_zip, packed, read_manifest, write_manifest, write_zip
 from planar.handoff.preview import write_preview_svg
 from planar.handoff.readme import write_layout_readme
 from planar.handoff.stackup_files import check_stackup, read_stackup_json, write_stackup_json, write_stackup_markdown
@@ -15,15 +18,21 @@ from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, SheetLayer, 
 __all__ = [
     "LAYERS",
     "Drill",
+    "FabricationFacts",
     "FileContent",
+    "GerberFacts",
     "ImpedanceLine",
     "Label",
+    "ProjectFacts",
     "SheetFacts",
     "SheetLayer",
     "StackupSheet",
     "check_destination",
+    "check_fabrication_files",
     "check_files",
     "check_stackup",
+    "check_zip",
+    "creation_date",
     "file_content",
     "packed",
     "read_dxf",
@@ -34,6 +43,7 @@ __all__ = [
     "stackup_sheet",
     "write_dxf",
     "write_dxf_segments",
+    "write_fabrication_files",
     "write_gds",
     "write_layers_csv",
     "write_layout_files",
@@ -42,4 +52,5 @@ __all__ = [
     "write_preview_svg",
     "write_stackup_json",
     "write_stackup_markdown",
+    "write_zip",
 ]

@@ -92,7 +92,7 @@ def _file_mismatches(file: _File, path: Path, expected: FileContent) -> list[str
     for layer in expected.outlines:
         found += [
             f"{layer}: {text}"
-            for text in _outline_mismatches(got.outlines.get(layer, ()), expected.outlines[layer], file.chord_error)
+            for text in outline_mismatches(got.outlines.get(layer, ()), expected.outlines[layer], file.chord_error)
         ]
     for layer in sorted({*expected.drills, *got.drills}):
         found += [
@@ -102,7 +102,8 @@ def _file_mismatches(file: _File, path: Path, expected: FileContent) -> list[str
     return [f"{file.name}: {text}" for text in found]
 
 
-def _outline_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord_error: float) -> list[str]:
+def outline_mismatches(got: Sequence[Outline], expected: Sequence[Outline], chord_error: float) -> list[str]:
+    """How the outlines of one layer differ from those expected, arcs there within `chord_error` m of their chords."""
     found = []
     if len(got) != len(expected):
         found.append(f"{len(got)} outlines, expected {len(expected)}")

@@ -10,6 +10,7 @@ from __future__ import annotations
 import hashlib
 import shutil
 import tempfile
+import zipfile
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -18,6 +19,10 @@ from planar.errors import HandoffError
 
 MANIFEST = "SHA256SUMS"
 """Name of the list of our files, in the format `sha256sum -c` reads."""
+
+
+ZIP_DATE = (1980, 1, 1, 0, 0, 0)
+"""The first date an archive can hold: that of a file says nothing."""
 
 
 @contextmanager
@@ -94,6 +99,24 @@ def write_manifest(folder: Path) -> None:
     """Write `SHA256SUMS`: hash and path of every other file in `folder`, sorted by path."""
     lines = [f"{_hash(path)}  {name}\n" for name, path in _files(folder).items() if name != MANIFEST]
     (folder / MANIFEST).write_bytes("".join(lines).encode("utf-8"))
+
+
+def write_zip(folder: Path, path: Path) -> None:
+    """Write every file of `folder` into the archive `path`, sorted, with one date: the same files, the same bytes."""
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED, compresslevel=9) as archive:
+        for name, file in _files(folder).items():
+            entry = zipfile.ZipInfo(name, ZIP_DATE)
+            entry.compress_type = zipfile.ZIP_DEFLATED
+            entry.external_attr = 0o644 << 16
+            archive.writestr(entry, file.read_bytes())
+
+
+def check_zip(folder: Path, path: Path) -> None:
+    """Raise `HandoffError` unless the archive `path` holds the files of `folder` and no others."""
+    with zipfile.ZipFile(path) as archive:
+        held = {name: archive.read(name) for name in archive.namelist()}
+    if held != {name: file.read_bytes() for name, file in _files(folder).items()}:
+        raise HandoffError(f"{path.name} does not hold the files of {folder.name}")
 
 
 def read_manifest(folder: Path) -> dict[str, str]:

@@ -124,7 +124,15 @@ def test_pack_is_complete(pack: Path) -> None:
     layout = {"board.dxf", "board-segments.dxf", "board.gds", "layers.csv", "README.txt"}
     layout |= {f"preview-{level}.svg" for level in levels}
     expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir"}
-    expected |= {"fabrication/stackup.json", "fabrication/stackup.md"}
+    fabrication = {"stackup.json", "stackup.md", "job.gbrjob", "netlist.ipc", "drawing.pdf", "profile.gbr"}
+    stackup = json.loads((pack / "fabrication" / "stackup.json").read_text(encoding="utf-8"))
+    named = {layer["name"] for layer in stackup["layers"]}
+    for level in levels:
+        fabrication |= {f"{kind}-{level}.gbr" for kind in ("mask", "legend") if f"{kind}-{level}" in named}
+        fabrication.add(f"copper-{level}.gbr")
+    plated = {hole["plated"] for hole in facts(pack)["holes"]}  # type: ignore[attr-defined]
+    fabrication |= {f"drill-{'plated' if each else 'unplated'}.xnc" for each in plated}
+    expected |= {f"fabrication/{name}" for name in fabrication} | {f"{pack.name}-fabrication.zip"}
     files = tree(pack)
     assert files.keys() == expected | {f"layout/{name}" for name in layout}
     assert all(files.values())
@@ -486,7 +494,7 @@ def test_prediction_meets_the_brief(pack: Path) -> None:
     predicted, target = said["prediction"], brief["target"]
     assert predicted["worst_reflection_db"] <= float(target["match"].split()[0])
     assert 0.8 < predicted["power_balance"] <= 1.01  # what lacks to 1 is guided in the slab
-    assert predicted["convergence"] < 0.05
+    assert predicted["convergence"] < 0.075  # half of what is refused
     if target["polarisation"] == "linear":
         assert predicted["sense"] == "linear"
     else:

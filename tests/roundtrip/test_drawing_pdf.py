@@ -1,0 +1,371 @@
+"""The fabrication drawing, read back through another PDF reader: size on paper, curves, texts, refusals.
+
+Authority: ISO 216 (A4), ISO 5455 (scales), PDF's unit of 1/72 inch, the layout's own lengths, and the list of what
+every fabrication sheet must answer (common practice). The reader is pypdfium2, which knows nothing of this program.
+"""
+
+from __future__ import annotations
+
+import ctypes
+import math
+import re
+from collections.abc import Iterator
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+import pypdfium2
+import pypdfium2.raw as pdfium
+import pytest
+from numpy.typing import NDArray
+
+from planar.brief import check_brief
+from planar.copper.arc import Edge
+from planar.copper.layout import Layout, Level, bounds_of
+from planar.copper.outline import Outline
+from planar.copper.shapes import rounded_rectangle
+from planar.design.design import make_design
+from planar.errors import HandoffError
+from planar.handoff.drawing_figure import COPPER, drill_rows
+from planar.handoff.drawing_pdf import write_drawing
+from planar.handoff.fab_notes import QUESTIONS, DrawingFacts, fab_notes
+from planar.handoff.gerber_attributes import ProjectFacts, creation_date
+from planar.handoff.paper import arc_curves
+from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, StackupSheet, stackup_sheet
+from planar.library import Library, WidebandDebye
+from planar.stackup import Conductor, Layer, LayerKind, Stackup
+
+FREQUENCY = 868.3e6
+HASH = "0123456789abcdef" * 4
+MM_PER_POINT = 25.4 / 72.0
+LINES = (
+    ImpedanceLine("feed_line", "microstrip", 3.05e-3, None, "top", "bottom", 50.0, 5.0, True),
+    ImpedanceLine("transformer_of_the_line", "coplanar strips", 1.14e-3, 0.27e-3, "top", "none", 150.0, None, False),
+)
+LIBRARY = Library.open()
+
+
+def facts_for(name: str) -> DrawingFacts:
+    return DrawingFacts(ProjectFacts(name, "A", HASH, creation_date()), "netlist.ipc", 0.1e-3)
+
+
+def sheet_for(layout: Layout) -> StackupSheet:
+    """A stackup with as many copper levels as `layout` has."""
+    laminate = WidebandDebye.from_point(4.3, 0.02, at=FREQUENCY)
+    mask = WidebandDebye.from_point(3.5, 0.025, at=FREQUENCY)
+    bottom = [Layer("copper-bottom", LayerKind.COPPER, "copper", 43e-6)] if len(layout.levels) > 1 else []
+    layers = (
+        *bottom,
+        Layer("dielectric", LayerKind.DIELECTRIC, "woven glass & <epoxy>", 1.6e-3, laminate, 0.1, 0.05, 0.3),
+        Layer("copper-top", LayerKind.COPPER, "copper", 43e-6),
+        Layer("mask-top", LayerKind.MASK, "solder mask", 20e-6, mask, 0.5),
+    )
+    conductor = Conductor(base_thickness=35e-6, plating=8e-6, conductivity=5.8e7, roughness_rq=0.4e-6)
+    facts = SheetFacts(layout.name, FREQUENCY, "ENIG", "IPC-4101/126", 0.15e-3, dc_short=layout.dc_short)
+    return stackup_sheet(Stackup(layers, conductor, 0.1), LINES, facts=facts)
+
+
+@pytest.fixture(scope="module")
+def drawn() -> Layout:
+    data = {
+        "name": "ring",
+        "target": {"band": ["880 MHz", "920 MHz"]},
+        "board": {"laminate": "fr4-general", "thickness": "1.6 mm"},
+        "antenna": {"family": "ring-guided", "end": "via"},
+    }
+    return make_design(check_brief(data, "ring.toml", LIBRARY), LIBRARY, "ring.toml").layout
+
+
+@pytest.fixture(params=["two_level", "one_level", "drawn"])
+def board(request: pytest.FixtureRequest) -> Layout:
+    layout: Layout = request.getfixturevalue(request.param)
+    return layout
+
+
+def drawing(board: Layout, folder: Path) -> pypdfium2.PdfDocument:
+    path = folder / "drawing.pdf"
+    write_drawing(board, sheet_for(board), path, facts=facts_for(board.name))
+    return pypdfium2.PdfDocument(path)
+
+
+def text_of(document: pypdfium2.PdfDocument) -> str:
+    """All text, line breaks as blanks: a wrapped sentence is one sentence."""
+    pages = [page.get_textpage().get_text_bounded() for page in document]
+    return re.sub(r"\s+", " ", " ".join(pages))
+
+
+def filled_paths(page: pypdfium2.PdfPage, colour: str) -> Iterator[list[tuple[int, float, float]]]:
+    """Segments (type, x mm, y mm) of every path filled with `colour`."""
+    wanted = tuple(int(colour[i : i + 2], 16) for i in (1, 3, 5))
+    for item in page.get_objects(filter=[pdfium.FPDF_PAGEOBJ_PATH]):
+        mode, stroke = ctypes.c_int(), ctypes.c_int()
+        pdfium.FPDFPath_GetDrawMode(item, mode, stroke)
+        red, green, blue, alpha = (ctypes.c_uint() for _ in range(4))
+        pdfium.FPDFPageObj_GetFillColor(item, red, green, blue, alpha)
+        if not mode.value or (red.value, green.value, blue.value) != wanted:
+            continue
+        rows = []
+        for i in range(pdfium.FPDFPath_CountSegments(item)):
+            segment = pdfium.FPDFPath_GetPathSegment(item, i)
+            x, y = ctypes.c_float(), ctypes.c_float()
+            pdfium.FPDFPathSegment_GetPoint(segment, x, y)
+            kind = pdfium.FPDFPathSegment_GetType(segment)
+            rows.append((kind, MM_PER_POINT * x.value, MM_PER_POINT * y.value))
+        yield rows
+
+
+def copper_paths(page: pypdfium2.PdfPage, board: Layout, level: Level, steps: int = 200) -> list[NDArray[np.float64]]:
+    """Points (mm) along the islands of `level`, in the layout's order; the key's swatch comes after them."""
+    paths = list(filled_paths(page, COPPER[level]))
+    assert len(paths) == len(board.copper(level)) + 1
+    return [walked(rows, steps) for rows in paths[:-1]]
+
+
+def walked(rows: list[tuple[int, float, float]], steps: int) -> NDArray[np.float64]:
+    """Points (n, 2) in mm along a path, its curves by de Casteljau's polynomial."""
+    points: list[tuple[float, float]] = []
+    pending: list[tuple[float, float]] = []
+    for kind, x, y in rows:
+        if kind != pdfium.FPDF_SEGMENT_BEZIERTO:
+            points.append((x, y))
+            continue
+        pending.append((x, y))
+        if len(pending) == 3:
+            a, (b, c, d) = np.array(points[-1]), (np.array(p) for p in pending)
+            for t in np.linspace(0.0, 1.0, steps + 1)[1:]:
+                s = 1.0 - t
+                points.append(tuple(s**3 * a + 3 * s * s * t * b + 3 * s * t * t * c + t**3 * d))
+            pending = []
+    return np.array(points)
+
+
+def test_same_bytes_twice_and_nothing_of_the_clock(board: Layout, tmp_path: Path) -> None:
+    for name in ("one.pdf", "two.pdf"):
+        write_drawing(board, sheet_for(board), tmp_path / name, facts=facts_for(board.name))
+    data = (tmp_path / "one.pdf").read_bytes()
+    assert data == (tmp_path / "two.pdf").read_bytes()
+    assert set(re.findall(rb"\(D:(\d{4})", data)) <= {b"2000"}
+
+
+def test_pages_are_a4_one_for_each_level_and_one_of_tables(board: Layout, tmp_path: Path) -> None:
+    document = drawing(board, tmp_path)
+    assert len(document) == len(board.levels) + 1
+    for page in document:
+        assert sorted(MM_PER_POINT * side for side in page.get_size()) == pytest.approx([210.0, 297.0], abs=0.01)
+        text = page.get_textpage().get_text_bounded()
+        assert board.name in text
+        assert HASH in re.sub(r"\s", "", text)
+        assert re.search(rf"[1-9] of {len(document)}", text)
+
+
+def test_copper_has_its_true_size_on_paper(board: Layout, tmp_path: Path) -> None:
+    """At 1:1 the extents on paper are those of the board within 1 um, what curves may stray."""
+    document = drawing(board, tmp_path)
+    for page, level in zip(document, board.levels, strict=False):
+        assert re.search(r"\b1:1\b", page.get_textpage().get_text_bounded())
+        points = np.vstack(copper_paths(page, board, level))
+        x0, y0, x1, y1 = bounds_of(board.copper(level))
+        assert np.ptp(points, axis=0) == pytest.approx([1e3 * (x1 - x0), 1e3 * (y1 - y0)], abs=1e-3)
+
+
+def test_pixels_measure_the_same(two_level: Layout, tmp_path: Path) -> None:
+    """At 10 pixels to the millimetre the bottom copper's coloured extents are right to a pixel on each side."""
+    page = drawing(two_level, tmp_path)[1]
+    picture = np.asarray(page.render(scale=10.0 * MM_PER_POINT).to_pil().convert("RGB"), dtype=int)
+    colour = [int(COPPER[Level.BOTTOM][i : i + 2], 16) for i in (1, 3, 5)]
+    rows, columns = np.nonzero(np.all(np.abs(picture - colour) < 12, axis=2))
+    figure = rows < rows.max() - 200  # without the key, which stands below
+    x0, y0, x1, y1 = bounds_of(two_level.copper(Level.BOTTOM))
+    assert np.ptp(columns[figure]) / 10.0 == pytest.approx(1e3 * (x1 - x0), abs=0.3)
+    assert np.ptp(rows[figure]) / 10.0 == pytest.approx(1e3 * (y1 - y0), abs=0.3)
+
+
+def test_curves_stay_within_a_micrometre_of_the_arcs(board: Layout, tmp_path: Path) -> None:
+    """Every point of every copper path lies on the outline, found again by its origin on paper."""
+    document = drawing(board, tmp_path)
+    for page, level in zip(document, board.levels, strict=False):
+        for points, outline in zip(copper_paths(page, board, level, 8), board.copper(level), strict=True):
+            first = np.array(outline.edges[0].start)
+            metres = 1e-3 * (points - points[0]) + first
+            assert max(distance_to(outline, tuple(p)) for p in metres) < 1e-6
+
+
+def distance_to(outline: Outline, point: tuple[float, float]) -> float:
+    """Distance (m) of `point` to the nearest edge, arcs as arcs."""
+    return min(edge_distance(edge, point) for edge in outline.edges)
+
+
+def edge_distance(edge: Edge, point: tuple[float, float]) -> float:
+    fraction = min(1.0, max(0.0, edge.fraction_of(point)))
+    return math.dist(edge.point(fraction), point)
+
+
+@pytest.mark.parametrize("radius", [1e-3, 60e-3, 0.5])
+@pytest.mark.parametrize("bulge", [0.05, -0.4142, 1.0, -1.0])
+def test_curve_error_over_the_whole_arc(radius: float, bulge: float) -> None:
+    chord = 4.0 * abs(bulge) * radius / (1.0 + bulge * bulge)
+    edge = Edge((0.0, 0.0), (chord, 0.0), bulge)
+    start = np.array(edge.start)
+    worst = 0.0
+    for curve in arc_curves(edge):
+        b, c, d = (np.array(point) for point in curve)
+        for t in np.linspace(0.0, 1.0, 41):
+            s = 1.0 - t
+            point = s**3 * start + 3 * s * s * t * b + 3 * s * t * t * c + t**3 * d
+            worst = max(worst, abs(math.dist(point, edge.centre) - radius))
+        start = d
+    assert worst < 0.6e-6
+    assert tuple(start) == pytest.approx(edge.end, abs=1e-12)
+
+
+def test_large_board_is_reduced_to_a_scale_of_iso_5455(two_level: Layout, tmp_path: Path) -> None:
+    edge = rounded_rectangle(-0.15, -0.1, 0.15, 0.1, radius=3e-3)
+    page = drawing(replace(two_level, edge=edge, keepout=()), tmp_path)[0]
+    text = page.get_textpage().get_text_bounded()
+    assert re.search(r"\b1:2\b", text)
+    assert "100 mm = 50 mm on paper" in text
+    assert "300.000" in text
+    points = np.vstack(copper_paths(page, two_level, Level.TOP))
+    x0, y0, x1, y1 = bounds_of(two_level.copper(Level.TOP))
+    assert np.ptp(points, axis=0) == pytest.approx([500 * (x1 - x0), 500 * (y1 - y0)], abs=1e-3)
+
+
+def test_wide_board_lies_across_the_sheet(two_level: Layout, tmp_path: Path) -> None:
+    edge = rounded_rectangle(-0.12, -0.051, 0.12, 0.051, radius=3e-3)
+    width, height = drawing(replace(two_level, edge=edge, keepout=()), tmp_path)[0].get_size()
+    assert width > height
+
+
+def test_board_beyond_the_smallest_scale_is_refused(two_level: Layout, tmp_path: Path) -> None:
+    edge = rounded_rectangle(-8.0, -8.0, 8.0, 8.0, radius=3e-3)
+    with pytest.raises(HandoffError, match="too large"):
+        drawing(replace(two_level, edge=edge), tmp_path)
+
+
+def test_dimensions_drills_and_title(two_level: Layout, tmp_path: Path) -> None:
+    text = text_of(drawing(two_level, tmp_path))
+    for words in (
+        "125.000", "110.000", "60.000 mm from the left and 55.000 mm from the lower side",
+        "0.300 mm ±0.100 mm plated via", "2.500 mm ±0.100 mm unplated mounting hole",
+        "3.200 mm ±0.100 mm unplated mounting hole", "top copper, seen from the top",
+        "bottom copper, seen from the top", "keepout on every level", "100 mm = 100 mm on paper printed at 100 %",
+    ):  # fmt: skip
+        assert words in text
+    assert [row.letter for row in drill_rows(two_level)] == ["A", "B", "C"]
+
+
+def test_tables_and_notes(board: Layout, tmp_path: Path) -> None:
+    sheet = sheet_for(board)
+    text = text_of(drawing(board, tmp_path))
+    for words in (
+        "1600 µm ±10 %", "43 µm", "35 µm", "4.300 ±5 %", "0.0200 ±30 %", "woven glass & <epoxy>", "868.3 MHz",
+        "50.0 ±5.0 Ω", "150.0 Ω", "3.050 mm", "0.270 mm", "not controlled, do not adjust",
+        "Dimensions are finished copper at the foot of the conductor.", "no etch compensation included",
+        "35 µm base, 43 µm finished", "Solder mask over the antenna: top side.", "Surface finish: ENIG.",
+        "no thieving, teardrops, order number, width change or edge clip-back", "Board outline tolerance: ±0.15 mm.",
+        "IPC-4101/126", "Permittivity of the laminate: 4.300 ±5 % at 868.3 MHz.",
+        "Netlist supplied: netlist.ipc.", "electrical test of every board against it",
+    ):  # fmt: skip
+        assert words in text
+    notes = fab_notes(board, sheet, facts=facts_for(board.name))
+    for note in notes:
+        assert re.sub(r"\s+", " ", note.replace("+-", "±").replace(" um ", " µm ")) in text
+    short = "0 ohm between feed and ground is intended" in text
+    assert short == board.dc_short
+
+
+def test_no_text_leaves_the_frame(board: Layout, tmp_path: Path) -> None:
+    """The frame is 8 mm inside the sheet; letters keep within it."""
+    for page in drawing(board, tmp_path):
+        width, height = (MM_PER_POINT * side for side in page.get_size())
+        text = page.get_textpage()
+        for i in range(text.count_chars()):
+            left, bottom, right, top = (MM_PER_POINT * c for c in text.get_charbox(i))
+            assert left >= 8.0 - 0.01
+            assert right <= width - 8.0 + 0.01
+            assert bottom >= 8.0 - 0.01
+            assert top <= height - 8.0 + 0.01
+
+
+def test_many_lines_go_on_to_further_sheets(two_level: Layout, tmp_path: Path) -> None:
+    sheet = sheet_for(two_level)
+    lines = tuple(replace(LINES[1], name=f"line_{i}") for i in range(60))
+    write_drawing(
+        two_level, replace(sheet, impedance_lines=lines), tmp_path / "drawing.pdf", facts=facts_for(two_level.name)
+    )
+    document = pypdfium2.PdfDocument(tmp_path / "drawing.pdf")
+    assert len(document) > 3
+    assert all(f"line_{i} " in text_of(document) for i in range(60))
+    for page in document:
+        text = page.get_textpage()
+        search = text.search("line_")
+        while found := search.get_next():
+            assert MM_PER_POINT * text.get_charbox(found[0])[1] > 8.0 + 22.0  # above the title block
+
+
+def blank(layout: Layout, sheet: StackupSheet, **changes: object) -> tuple[StackupSheet, DrawingFacts]:
+    """The sheet and the facts with one answer changed."""
+    facts = facts_for(layout.name)
+    project = {k: v for k, v in changes.items() if k in ("revision", "name_of_project")}
+    if project:
+        named = {"name": project.get("name_of_project", layout.name), "revision": project.get("revision", "A")}
+        facts = replace(facts, project=replace(facts.project, **named))
+    own = {k: v for k, v in changes.items() if k in ("netlist", "hole_tolerance_m")}
+    facts = replace(facts, **own)
+    of_facts = {k: v for k, v in changes.items() if k in SheetFacts.__dataclass_fields__}
+    sheet = replace(sheet, facts=replace(sheet.facts, **of_facts))
+    rest = {k: v for k, v in changes.items() if k in ("notes", "layers", "thickness_tolerance")}
+    return replace(sheet, **rest), facts
+
+
+BLANKS: dict[str, tuple[dict[str, object], str]] = {
+    "revision": ({"revision": " "}, "revision is blank"),
+    "finish": ({"finish": ""}, "finish is blank"),
+    "specification": ({"specification": ""}, "laminate specification is blank"),
+    "netlist": ({"netlist": ""}, "netlist is blank"),
+    "outline tolerance": ({"outline_tolerance_m": 0.0}, "outline tolerance"),
+    "hole tolerance": ({"hole_tolerance_m": 0.0}, "no answer to: hole tolerance"),
+    "thickness tolerance": ({"thickness_tolerance": 0.0}, "no answer to: board thickness"),
+    "every note": ({"notes": ()}, "no answer to: mask over the antenna"),
+    "another project": ({"name_of_project": "other"}, "is called 'other'"),
+}
+
+
+@pytest.mark.parametrize("answer", BLANKS)
+def test_blank_answer_is_refused(two_level: Layout, tmp_path: Path, answer: str) -> None:
+    changes, words = BLANKS[answer]
+    sheet, facts = blank(two_level, sheet_for(two_level), **changes)
+    with pytest.raises(HandoffError, match=words):
+        write_drawing(two_level, sheet, tmp_path / "drawing.pdf", facts=facts)
+    assert not (tmp_path / "drawing.pdf").exists()
+
+
+def test_each_note_left_out_is_missed(two_level: Layout) -> None:
+    """Every note of the stackup sheet answers a question nobody else answers."""
+    sheet = sheet_for(two_level)
+    for note in sheet.notes:
+        rest = tuple(other for other in sheet.notes if other != note)
+        with pytest.raises(HandoffError, match="no answer to"):
+            fab_notes(two_level, replace(sheet, notes=rest), facts=facts_for(two_level.name))
+    assert len(QUESTIONS) >= len(sheet.notes)
+
+
+def test_layers_without_numbers_are_refused(two_level: Layout) -> None:
+    sheet = sheet_for(two_level)
+    for change, words in (
+        ({"base_copper_m": None}, "base copper of copper-top is blank"),
+        ({"thickness_m": 0.0}, "thickness of copper-top is blank"),
+        ({"material": " "}, "material of copper-top is blank"),
+    ):
+        layers = tuple(replace(a, **change) if a.name == "copper-top" else a for a in sheet.layers)
+        with pytest.raises(HandoffError, match=words):
+            fab_notes(two_level, replace(sheet, layers=layers), facts=facts_for(two_level.name))
+
+
+def test_sheet_of_another_board_is_refused(two_level: Layout, one_level: Layout) -> None:
+    with pytest.raises(HandoffError, match="1 copper layers, the layout 2"):
+        fab_notes(two_level, replace(sheet_for(one_level)), facts=facts_for(one_level.name))
+    other = sheet_for(two_level)
+    other = replace(other, facts=replace(other.facts, dc_short=not two_level.dc_short))
+    with pytest.raises(HandoffError, match="DC short"):
+        fab_notes(two_level, other, facts=facts_for(two_level.name))
