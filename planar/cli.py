@@ -39,6 +39,9 @@ def refusing(command: Command) -> Command:
     def wrapped(*args: Any, **kwargs: Any) -> Any:
         try:
             return command(*args, **kwargs)
+        except KeyboardInterrupt:
+            click.echo("interrupted: nothing was written", err=True)
+            sys.exit(130)
         except PlanarError as error:
             click.echo(f"refused: {error}", err=True)
             if kwargs.get("as_json"):

@@ -257,7 +257,7 @@ def write_pack(design: Design, folder: Path) -> None:
     told = design_facts(design)
     write_fabrication_files(design.layout, _sheet(design), fabrication, facts=_fabrication_facts(design, told["hash"]))
     write_zip(fabrication, folder / f"{design.name}-fabrication.zip")
-    (folder / "brief.toml").write_bytes(write_brief(design.choices.brief).encode("utf-8"))
+    (folder / "brief.toml").write_bytes(write_brief(design.brief).encode("utf-8"))
     summary = json.dumps(told, indent=2, ensure_ascii=False) + "\n"
     (folder / "design.json").write_bytes(summary.encode("utf-8"))
     if design.prediction is not None:

@@ -46,6 +46,9 @@ def read_brief(path: Path | str, library: KnownKeys) -> Brief:
     missing, of the wrong kind or out of range.
     """
     path = Path(path)
+    if path.suffix == ".json":
+        expected = "a brief (TOML): that of a pack is brief.toml beside its design.json, which planar solve reads"
+        raise _file_fault(path, "a JSON file", expected)
     try:
         text = path.read_bytes().decode("utf-8-sig")
     except UnicodeDecodeError as error:

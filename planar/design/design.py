@@ -53,7 +53,13 @@ class Design:
     prediction: Prediction | None = None
     sizing: SizingRecord | None = None
     sensitivities: tuple[Sensitivity, ...] = ()
+    asked: Brief | None = None
     cuts: tuple[Cut, ...] = ()
+
+    @property
+    def brief(self) -> Brief:
+        """The brief as it was asked: that of `choices` names the family where it was left open."""
+        return self.asked or self.choices.brief
 
     @property
     def name(self) -> str:

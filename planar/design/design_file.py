@@ -39,7 +39,7 @@ def design_facts(design: Design) -> dict[str, Any]:
     choices = design.choices
     facts: dict[str, Any] = {
         "name": design.name,
-        "brief": tomllib.loads(write_brief(choices.brief)),
+        "brief": tomllib.loads(write_brief(design.brief)),
         "planar_version": __version__,
         "status": design.status,
         "dimensions_given": design.given,

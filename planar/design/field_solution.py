@@ -20,6 +20,8 @@ from planar.field.result import PointResult, point_result
 from planar.field.solver import FieldProblem, default_settings
 from planar.network.response import Response
 
+SAME_MESH = 1.4
+"""Highest frequency over the centre up to which the mesh is that of the prediction."""
 Progress = Callable[[str], None]
 
 
@@ -55,15 +57,16 @@ def solve_design(
     stackup, layout = design.choices.stackup, design.layout
     highest = max([*frequencies, *(sweep[:2] if sweep else ())])
     progress("meshing")
-    problem = FieldProblem.prepare(layout, stackup, highest)
+    meshed_for = design.choices.centre if highest < SAME_MESH * design.choices.centre else highest
+    problem = FieldProblem.prepare(layout, stackup, highest, default_settings(layout, stackup, meshed_for))
     progress(f"solving {len(frequencies)} frequencies, {problem.basis.count} unknowns")
-    points = tuple(point_result(problem.solve(frequency)) for frequency in frequencies)
+    points = tuple(point_result(problem.reaching(frequency).solve(frequency)) for frequency in frequencies)
     progress("solving the bare loop and the coarser mesh")
     gap = tuple(point.input_impedance_ohm for point in points)
     if design.lines:  # without a line the board is the bare loop
         bare = FieldProblem.prepare(bare_loop_layout(design.choices, design.dimensions, layout), stackup, highest)
-        gap = tuple(bare.solve(frequency).impedance for frequency in frequencies)
-    convergence = _convergence(design, points[len(points) // 2], highest)
+        gap = tuple(bare.reaching(frequency).solve(frequency).impedance for frequency in frequencies)
+    convergence = _convergence(design, points[len(points) // 2], meshed_for)
     response = None
     if sweep is not None:
         progress("sweeping")
@@ -72,10 +75,12 @@ def solve_design(
     return Solution(points, gap, problem.basis.count, convergence, response, findings)
 
 
-def _convergence(design: Design, middle: PointResult, highest: float) -> float:
+def _convergence(design: Design, middle: PointResult, meshed_for: float) -> float:
     stackup = design.choices.stackup
-    coarse = default_settings(design.layout, stackup, highest, coarser=COARSER)
-    other = FieldProblem.prepare(design.layout, stackup, highest, coarse).solve(middle.frequency_hz).impedance
+    coarse = default_settings(design.layout, stackup, meshed_for, coarser=COARSER)
+    other = (
+        FieldProblem.prepare(design.layout, stackup, middle.frequency_hz, coarse).solve(middle.frequency_hz).impedance
+    )
     return moved(middle.input_impedance_ohm, other)
 
 

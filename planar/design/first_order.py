@@ -31,6 +31,7 @@ from planar.design.loop_size import (
 )
 from planar.errors import RangeError, SynthesisError
 from planar.lines.discontinuities import open_end_extension
+from planar.lines.line import line_kind
 from planar.lines.quarter_wave import quarter_wave_section
 from planar.units import SPEED_OF_LIGHT, show
 
@@ -228,23 +229,22 @@ def _strips(choices: Choices, dimensions: Dimensions, resistance: float, setting
     }
 
 
+def _start_width(impedance: float, settings: LineSettings, least: float) -> float:
+    """Width of a transformer of `impedance` ohm, or the narrowest the fab etches and formulas cover: sizing decides."""
+    substrate, conductor, frequency = settings.substrate, settings.conductor, settings.frequency
+    narrowest = line_kind("microstrip").width_limits(None, substrate, conductor, frequency)[0]
+    least = max(rounded_up(least), rounded_up(narrowest))
+    try:
+        return max(microstrip_width(impedance, settings), least)
+    except SynthesisError:
+        return least
+
+
 def _guided(choices: Choices, dimensions: Dimensions, resistance: float, settings: LineSettings) -> Dimensions:
     port = choices.brief.target.impedance
     impedance, length = quarter_wave_section(port, complex(resistance))
     line_width = microstrip_width(port, settings)
-    try:
-        narrow = microstrip_width(impedance, settings)
-    except SynthesisError as error:
-        raise SynthesisError(
-            f"target.impedance {port:g} ohm needs a transformer of {impedance:.0f} ohm for the {resistance:.0f} ohm at "
-            f"the gap: {error.reason}"
-        ) from error
-    if narrow < choices.fab.min_track:
-        least = show(choices.fab.min_track, "length")
-        raise SynthesisError(
-            f"the transformer of {impedance:.0f} ohm would be {show(narrow, 'length', 3)} wide, the fab etches "
-            f"{least}: choose a thicker board, a lower permittivity or a finer fab"
-        )
+    narrow = _start_width(impedance, settings, choices.fab.min_track)
     section = settings.analysed("microstrip", narrow)
     gap = _loop_gap(choices)
     sized = {

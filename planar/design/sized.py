@@ -55,7 +55,8 @@ def sized_design(brief: Brief, library: Library, where: str, progress: Progress 
         if brief.antenna.family is not None:
             progress("sizing on a coarse mesh")
             return _verified(*sized_coarsely(brief), (), progress)
-        return _best_verified(brief, rank(brief, sized_coarsely, progress), progress)
+        found = _best_verified(brief, rank(brief, sized_coarsely, progress), progress)
+        return replace(found, asked=brief)
 
 
 def _best_verified(brief: Brief, ranked: Ranked, progress: Progress) -> Design:
@@ -157,7 +158,7 @@ def _trimming(cuts: tuple[Cut, ...], *, asked: bool) -> tuple[Finding, ...]:
 def _with_reasons(choices: Choices, candidates: tuple[Candidate, ...]) -> Choices:
     if not candidates:
         return choices
-    others = ", ".join(each.name for each in candidates[1:] if each.margin is not None) or "nothing else that fits"
+    others = "; ".join(each.name for each in candidates[1:] if each.margin is not None) or "nothing else that fits"
     reason = f"{candidates[0].name} chosen over {others}: it meets the brief, first without a balun, then by its margin"
     return replace(choices, reasons=(*choices.reasons, reason))
 
@@ -181,7 +182,8 @@ def _context(prediction: Prediction, choices: Choices) -> list[Finding]:
     """What explains a miss: the impedance the copper came to, and a poor efficiency."""
     z = prediction.centre.input_impedance_ohm
     got = f"{z.real:.0f}{z.imag:+.0f}j ohm at the centre"
-    note = Finding("impedance", "pads", got, f"{choices.brief.target.impedance:g} ohm", "", Severity.NOTE)
+    limit = f"for information; the port is {choices.brief.target.impedance:g} ohm"
+    note = Finding("impedance", "pads", got, limit, "", Severity.NOTE)
     return [note, *(each for each in power_findings([prediction.centre]) if each.severity is Severity.WARN)]
 
 

@@ -8,8 +8,8 @@ from pathlib import Path
 from planar.brief import Brief
 from planar.design.option_reader import OptionReader
 
-WIDEST = 2.0
-"""Highest over lowest frequency asked for in one run: the kernels' tables cover that."""
+WIDEST = 8.0
+"""Highest over lowest frequency asked for in one run: the mesh of the highest serves all of them."""
 MOST_POINTS = 10_001
 
 
@@ -49,8 +49,10 @@ def read_question(question: SolveQuestion, brief: Brief) -> tuple[tuple[float, .
     if not ask.faults:
         asked = [*frequencies, *(sweep[:2] if sweep else ())]
         if max(asked) > WIDEST * min(asked) * (1.0 - 1e-9):
-            ask.fault(
-                "at", ", ".join(question.at) or "the band", "all frequencies of one run lie within a factor of two"
+            expected = f"all frequencies of one run, the band where none is asked for, within a factor of {WIDEST:g}"
+            option, text = (
+                ("sweep", " ".join(map(str, question.sweep))) if question.sweep else ("at", ", ".join(question.at))
             )
+            ask.fault(option, text, expected)
     ask.raise_faults()
     return frequencies, sweep

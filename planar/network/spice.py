@@ -56,8 +56,16 @@ def _loop(circuit: Circuit, node: str) -> list[str]:
     """The branches in parallel between `node` and ground."""
     lines: list[str] = []
     if circuit.dc is not None:
-        lines += _element(f"Rdc {node} dc", circuit.dc.resistance, "loop at direct current: resistance")
-        lines += _element("Ldc dc ground", circuit.dc.inductance, "loop at direct current: inductance")
+        lines += _element(
+            f"Rdc {node} dc",
+            circuit.dc.resistance,
+            "inductive branch of the loop: resistance",
+        )
+        lines += _element(
+            "Ldc dc ground",
+            circuit.dc.inductance,
+            "inductive branch of the loop: known in the span only",
+        )
     for number, mode in enumerate(circuit.modes, 1):
         lines += _mode(mode, f"m{number}", node)
     if circuit.static_capacitance > 0.0:

@@ -124,7 +124,9 @@ def _prediction_table(design: Design, prediction: Prediction) -> Table:
     if spare.band is not None:
         ends = f"{show(spare.band.low, 'frequency', 4)} to {show(spare.band.high, 'frequency', 4)}"
         asked = " to ".join(show(end, "frequency", 4) for end in target.band)
-        rows.append((f"below {target.match_db:g} dB", f"{ends}, {100.0 * spare.band.fraction:.1f} %", asked))
+        low, high = prediction.trusted
+        beyond = "" if low <= spare.band.low and spare.band.high <= high else "; ends beyond the finely solved span"
+        rows.append((f"below {target.match_db:g} dB", f"{ends}, {100.0 * spare.band.fraction:.1f} %{beyond}", asked))
     rows.append(("gap of the bare loop at centre", f"{_ohm(prediction.gap_impedance_ohm)} ohm", ""))
     rows.append(("input impedance at centre", f"{_ohm(point.input_impedance_ohm)} ohm", f"{target.impedance:g} ohm"))
     if prediction.worst_axial_ratio_db is not None:
@@ -135,7 +137,8 @@ def _prediction_table(design: Design, prediction: Prediction) -> Table:
             width = 100.0 * (high - low) / design.choices.centre
             ends = f"{show(low, 'frequency', 4)} to {show(high, 'frequency', 4)}, {width:.1f} %"
             rows.append(("axial ratio below 3 dB", ends, ""))
-    rows.append(("gain, efficiency", f"{point.gain_dbi:.2f} dBi, {100.0 * point.efficiency:.0f} %", ""))
+    guided = f"{100.0 * point.surface_wave_share:.0f} % of the power guided in the slab among it, not in the gain"
+    rows.append(("gain, efficiency", f"{point.gain_dbi:.2f} dBi, {100.0 * point.efficiency:.0f} %; {guided}", ""))
     rows.append(("Q of the port", f"{prediction.quality:.1f}", ""))
     return _text_table(("predicted", "", "asked"), rows)
 
@@ -172,11 +175,12 @@ def _candidate_table(candidates: Sequence[Candidate]) -> Table:
     rows = []
     for each in candidates:
         size = "" if each.size is None else f"{each.size[0] * 1e3:.0f} x {each.size[1] * 1e3:.0f}"
-        margin = "" if each.margin is None else f"{100.0 * each.margin:.1f}"
+        margin = "" if each.margin is None else f"{100.0 * each.margin:.1f}" if each.margin > -1.0 else "no match"
         verdict = "meets" if each.meets else "misses" if each.margin is not None else "not sized"
         balun = "needs a balun; " if each.needs_balun else ""
         rows.append((each.name, verdict, margin, size, balun + each.remark))
-    return _text_table(("considered", "brief", "margin %", "board mm", "remark"), rows, right=(2,))
+    heads = ("considered", "brief", "margin after\ntolerances %", "board mm", "remark")
+    return _text_table(heads, rows, right=(2,))
 
 
 def _dimension_table(design: Design) -> Table:

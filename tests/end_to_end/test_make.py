@@ -126,7 +126,7 @@ def test_pack_is_complete(pack: Path) -> None:
     expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir"}
     fabrication = {"stackup.json", "stackup.md", "job.gbrjob", "netlist.ipc", "drawing.pdf", "profile.gbr"}
     stackup = json.loads((pack / "fabrication" / "stackup.json").read_text(encoding="utf-8"))
-    named = {layer["name"] for layer in stackup["layers"]}
+    named = {layer["name"] for layer in stackup["layers_top_to_bottom"]}
     for level in levels:
         fabrication |= {f"{kind}-{level}.gbr" for kind in ("mask", "legend") if f"{kind}-{level}" in named}
         fabrication.add(f"copper-{level}.gbr")
