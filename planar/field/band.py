@@ -22,8 +22,8 @@ from planar.network.response import reflection
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
-NODES = (5, 7, 10, 14)
-"""Nodes tried for a band: five hold +-15 % to 1e-4."""
+NODES = (4, 6, 9, 13)
+"""Nodes tried for a band: four hold +-15 % of a loop to some 1e-4."""
 TOLERANCE = 1e-3
 """Error of the reflection a checked band is solved to."""
 CHECKED_AT = (0.05, 0.95)

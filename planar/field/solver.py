@@ -8,12 +8,14 @@ far field follow.
 from __future__ import annotations
 
 import math
+from contextlib import nullcontext
 from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy import sparse
+from threadpoolctl import ThreadpoolController
 
 from planar.copper.layout import Layout
 from planar.errors import GeometryError
@@ -34,6 +36,10 @@ Complex = NDArray[np.complex128]
 
 STEPS_PER_WAVELENGTH = 40.0
 """Mesh steps along the copper in a free-space wavelength, or round its box where that is less."""
+BLAS = ThreadpoolController()
+"""The libraries of linear algebra, to hold them to one thread."""
+SMALL = 800
+"""Unknowns below which a second thread only gets in the way: it waits busily beside the fill."""
 LARGEST = 6000
 """Unknowns beyond which a problem is refused: its matrix would take more than half a gigabyte."""
 LARGEST_EXTENT = 4.0
@@ -140,8 +146,9 @@ class FieldProblem:
         sheet = 0.0j if lossless else self.sheet_impedance(frequency)
         if lossless:
             medium = without_loss(medium)
-        matrix = self.with_copper(self.matrix(frequency, medium), sheet)
-        currents = np.asarray(np.linalg.solve(matrix, self.excitations.T), dtype=np.complex128)
+        with BLAS.limit(limits=1) if self.basis.count < SMALL else nullcontext():
+            matrix = self.with_copper(self.matrix(frequency, medium), sheet)
+            currents = np.asarray(np.linalg.solve(matrix, self.excitations.T), dtype=np.complex128)
         return FieldSolution(self, frequency, medium, currents, sheet)
 
 
