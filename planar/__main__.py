@@ -2,4 +2,5 @@
 
 from planar.cli import main
 
-main()
+if __name__ == "__main__":  # processes that share work import this module too
+    main()

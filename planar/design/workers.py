@@ -69,7 +69,8 @@ def workers(count: int | None = None) -> Iterator[Workers]:
 def _pool(processes: int) -> ProcessPoolExecutor | None:
     """Processes that are ready, None where the system gives none."""
     # a forked process starts at once; from Python 3.12 on forking beside threads is warned of
-    method = "fork" if sys.platform == "linux" and sys.version_info < (3, 12) else None
+    forking = sys.platform == "linux" and sys.version_info < (3, 12)
+    method = "fork" if forking else "forkserver" if os.name == "posix" else "spawn"
     try:
         pool = ProcessPoolExecutor(processes, multiprocessing.get_context(method), _begin)
         pool.submit(_cores).result()
