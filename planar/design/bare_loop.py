@@ -11,6 +11,11 @@ from planar.copper.shapes import rectangle
 from planar.design.choices import Choices
 
 
+def has_line(dimensions: Mapping[str, float]) -> bool:
+    """Whether a board of `dimensions` has a line between its pads and the gap: a guided one or strips."""
+    return bool({"line_width", "strip_width"} & set(dimensions))
+
+
 def bare_loop_layout(choices: Choices, dimensions: Mapping[str, float], layout: Layout) -> Layout:
     """The loop alone with a port across its gap: no line, no strips, no connector."""
     level = choices.levels[-1]

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planar.design import accuracy
-from planar.design.bare_loop import bare_loop_layout
+from planar.design.bare_loop import bare_loop_layout, has_line
 from planar.design.choices import Choices
 from planar.design.equivalent import fitted_circuit
 from planar.design.goal import Goal
@@ -91,14 +91,14 @@ def wide_response(task: tuple[Choices, Mapping[str, float]]) -> Wide:
     """The board of these dimensions from nearly DC to over twice the frequency, or as far as the solver takes it."""
     choices, dimensions = task
     centre = choices.centre
-    x0, y0, x1, y1 = draw(choices, dimensions, lettered_board=False).layout.copper_bounds
+    layout = draw(choices, dimensions, lettered_board=False).layout
+    x0, y0, x1, y1 = layout.copper_bounds
     around = 2.0 * (x1 - x0 + y1 - y0) * centre / SPEED_OF_LIGHT
     highest = min(HIGHEST, 0.98 * LARGEST_EXTENT / around)
     band = solve_trial(choices, dimensions, Effort(COARSER, WIDE_NODES, (LOWEST * centre, highest * centre))).band
     half = _solved_half(choices)
     near = np.linspace(1.0 - half, min(1.0 + half, highest), FINE_POINTS)
     shares = np.unique(np.round(np.concatenate([np.linspace(LOWEST, highest, WIDE_POINTS), near]), 6))
-    layout = draw(choices, dimensions, lettered_board=False).layout
     settings = default_settings(layout, choices.stackup, centre, coarser=accuracy.COARSER)
     other = FieldProblem.prepare(layout, choices.stackup, centre, settings).solve(centre).impedance
     return Wide(dimensions, shares, band.impedance(centre * shares), other)
@@ -143,7 +143,7 @@ def predict(choices: Choices, fine: Trial, wide: Wide) -> Prediction:
 
 def _gap_impedance(choices: Choices, fine: Trial) -> complex:
     """What an ideal source across the gap of the bare loop sees at the centre; without a line that is the board."""
-    if not {"line_width", "strip_width"} & set(fine.dimensions):
+    if not has_line(fine.dimensions):
         return complex(fine.band.impedance(np.array([choices.centre]))[0])
     bare = bare_loop_layout(choices, fine.dimensions, fine.planned.layout)
     settings = replace(default_settings(bare, choices.stackup, choices.centre, coarser=GAP_COARSER), crossed=False)

@@ -12,6 +12,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from planar.design.bare_loop import has_line
 from planar.design.choices import Choices
 from planar.design.shift import comparing_effort, shift, shift_frequencies
 from planar.design.trial import solve_trial
@@ -125,7 +126,7 @@ def _solved(task: tuple[Choices, Mapping[str, float]]) -> _Answer | None:
         band = solve_trial(choices, dimensions, comparing_effort(centre)).band
     except PlanarError:
         return None
-    bare = not choices.circular and not {"line_width", "strip_width"} & set(dimensions)
+    bare = not choices.circular and not has_line(dimensions)
     return _Answer(band.impedance(shift_frequencies(centre)), _mode_resonance(band.problem, centre) if bare else None)
 
 

@@ -212,11 +212,10 @@ def size_coarsely(variables: Variables, workers: Workers) -> Sized:
 
 def _started(variables: Variables, goal: Goal, workers: Workers) -> Sized:
     """The start with its loop scaled to where it works best, and the derivatives there."""
-    place = np.zeros(len(variables.names))
+    place = np.clip(np.zeros(len(variables.names)), variables.low, variables.high)
     choices = variables.choices
     reach = max(CENTRING, half_span(choices) + CENTRING - 0.5 * CENTRING_WIDTH)
     wide = effort_over(choices, COARSER, reach, FINE_NODES + 2 * math.ceil(10.0 * (reach - CENTRING) - 1e-9))
-    place = np.clip(place, variables.low, variables.high)
     band = solve_trial(choices, variables.dimensions(place), wide).band
     room = CENTRING - 0.5 * CENTRING_WIDTH
     shifts = np.linspace(1.0 - room, 1.0 + room, 65).tolist()

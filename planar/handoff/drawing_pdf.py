@@ -14,7 +14,8 @@ from planar.copper.layout import Layout, Level
 from planar.handoff.drawing_figure import A4, draw_level, fitting_figure
 from planar.handoff.fab_notes import DrawingFacts, fab_notes
 from planar.handoff.paper import BOLD, PLAIN, Paper, Pen, text_width, wrapped
-from planar.handoff.stackup_sheet import ImpedanceLine, SheetLayer, StackupSheet
+from planar.handoff.sheet_cells import layer_cells, line_cells, with_spread
+from planar.handoff.stackup_sheet import StackupSheet
 from planar.units import show
 
 MARGIN = 8.0
@@ -111,19 +112,19 @@ def _text_sheets(sheet: StackupSheet, notes: Sequence[str]) -> Iterator[_Sheet]:
 def _stackup_blocks(sheet: StackupSheet) -> Iterator[_Block]:
     at = show(sheet.facts.frequency_hz, "frequency")
     yield _heading(f"Stackup, top to bottom; permittivity εr and loss tangent tan δ at {at}")
-    yield from _table(_LAYER_HEAD, [_layer_cells(layer) for layer in sheet.layers], _LAYER_COLUMNS)
-    total = _spread(show(sheet.total_thickness_m, "length"), sheet.thickness_tolerance)
+    yield from _table(_LAYER_HEAD, [layer_cells(layer, _um, "±") for layer in sheet.layers], _LAYER_COLUMNS)
+    total = with_spread(show(sheet.total_thickness_m, "length"), sheet.thickness_tolerance, "±")
     masked = show(sheet.masked_thickness_m, "length")
     yield _paragraph(f"Total {total} with copper, without mask; {masked} with mask. Copper thickness is finished.")
     if sheet.surroundings:
         yield _heading("Around the board: not made by the fab, the antenna is designed for it")
-        yield from _table(_LAYER_HEAD, [_layer_cells(layer) for layer in sheet.surroundings], _LAYER_COLUMNS)
+        yield from _table(_LAYER_HEAD, [layer_cells(layer, _um, "±") for layer in sheet.surroundings], _LAYER_COLUMNS)
 
 
 def _impedance_blocks(sheet: StackupSheet) -> Iterator[_Block]:
     yield _heading("Impedance")
     if sheet.impedance_lines:
-        yield from _table(_LINE_HEAD, [_line_cells(line) for line in sheet.impedance_lines], _LINE_COLUMNS)
+        yield from _table(_LINE_HEAD, [line_cells(line, "±", "Ω") for line in sheet.impedance_lines], _LINE_COLUMNS)
     else:
         yield _paragraph("No line on this board has a stated impedance.")
 
@@ -134,37 +135,8 @@ def _note_blocks(notes: Sequence[str]) -> Iterator[_Block]:
         yield _paragraph(note, mark=f"{number}.")
 
 
-def _layer_cells(layer: SheetLayer) -> tuple[str, ...]:
-    return (
-        layer.name,
-        layer.material,
-        "" if layer.thickness_m == 0.0 else _spread(_um(layer.thickness_m), layer.thickness_tolerance),
-        "" if layer.base_copper_m is None else _um(layer.base_copper_m),
-        "" if layer.eps_r is None else _spread(f"{layer.eps_r:.3f}", layer.eps_r_tolerance),
-        "" if layer.tan_d is None else _spread(f"{layer.tan_d:.4f}", layer.tan_d_tolerance),
-    )
-
-
-def _line_cells(line: ImpedanceLine) -> tuple[str, ...]:
-    tolerance = "" if line.tolerance_ohm is None else f" ±{line.tolerance_ohm:.1f}"
-    return (
-        line.name,
-        line.kind,
-        f"{1e3 * line.width_m:.3f} mm",
-        "" if line.gap_m is None else f"{1e3 * line.gap_m:.3f} mm",
-        line.level,
-        line.reference,
-        f"{line.impedance_ohm:.1f}{tolerance} Ω",
-        line.instruction,
-    )
-
-
 def _um(length: float) -> str:
     return f"{1e6 * length:.6g} µm"
-
-
-def _spread(text: str, tolerance: float | None) -> str:
-    return text if tolerance is None else f"{text} ±{show(tolerance, 'fraction')}"
 
 
 def _heading(text: str) -> _Block:

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from planar.copper.layout import Layout
 from planar.errors import HandoffError
 from planar.handoff.gerber_attributes import ProjectFacts
+from planar.handoff.sheet_cells import with_spread
 from planar.handoff.stackup_sheet import StackupSheet
 from planar.stackup import LayerKind
 from planar.units import show
@@ -65,18 +66,14 @@ def _added_notes(sheet: StackupSheet, facts: DrawingFacts) -> Iterator[str]:
     at = show(sheet.facts.frequency_hz, "frequency")
     cores = [layer for layer in sheet.layers if layer.kind == LayerKind.DIELECTRIC]
     if cores and all(layer.eps_r is not None for layer in cores):
-        values = ", ".join(_with_spread(f"{layer.eps_r:.3f}", layer.eps_r_tolerance) for layer in cores)
+        values = ", ".join(with_spread(f"{layer.eps_r:.3f}", layer.eps_r_tolerance) for layer in cores)
         yield f"Permittivity of the laminate: {values} at {at}. Do not substitute another laminate."
     if sheet.thickness_tolerance > 0.0:
-        total = _with_spread(show(sheet.total_thickness_m, "length"), sheet.thickness_tolerance)
+        total = with_spread(show(sheet.total_thickness_m, "length"), sheet.thickness_tolerance)
         yield f"Board thickness: {total}, copper included, mask excluded."
     if facts.hole_tolerance_m > 0.0:
         yield f"All hole diameters: finished, +-{show(facts.hole_tolerance_m, 'length')}."
     yield f"Netlist supplied: {facts.netlist}. Do a bare-board electrical test of every board against it."
-
-
-def _with_spread(text: str, tolerance: float | None) -> str:
-    return text if tolerance is None else f"{text} +-{show(tolerance, 'fraction')}"
 
 
 def _blank_fields(sheet: StackupSheet, facts: DrawingFacts) -> Iterator[str]:

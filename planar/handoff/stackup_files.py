@@ -11,6 +11,7 @@ from pathlib import Path
 from typing import Any
 
 from planar.errors import HandoffError
+from planar.handoff.sheet_cells import layer_cells, line_cells, with_spread
 from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, SheetLayer, StackupSheet
 from planar.units import show
 
@@ -144,13 +145,13 @@ def write_stackup_markdown(sheet: StackupSheet, path: Path) -> None:
     parts = [
         f"# Stackup of {sheet.facts.name}",
         f"Seen from the side, top to bottom. Permittivity and loss tangent at {at}.",
-        _table(_LAYER_HEAD, [_layer_cells(layer) for layer in sheet.layers]),
-        f"Total {_length(sheet.total_thickness_m, sheet.thickness_tolerance)} with copper, without mask; "
+        _table(_LAYER_HEAD, [layer_cells(layer, _length, "+-") for layer in sheet.layers]),
+        f"Total {with_spread(_length(sheet.total_thickness_m), sheet.thickness_tolerance)} with copper, without mask; "
         f"{show(sheet.masked_thickness_m, 'length')} with mask.",
         f"Finish: {sheet.facts.finish}.",
     ]
     if sheet.surroundings:
-        surroundings = _table(_LAYER_HEAD, [_layer_cells(layer) for layer in sheet.surroundings])
+        surroundings = _table(_LAYER_HEAD, [layer_cells(layer, _length, "+-") for layer in sheet.surroundings])
         parts += ["## Around the board", "Not made by the fab; the antenna is designed for it.", surroundings]
     parts += ["## Impedance", *_impedance(sheet), "## Notes", "\n".join(f"- {note}" for note in sheet.notes)]
     path.write_bytes(("\n\n".join(parts) + "\n").encode("utf-8"))
@@ -163,32 +164,7 @@ _LINE_HEAD = ("line", "kind", "width", "gap", "level", "reference", "impedance",
 def _impedance(sheet: StackupSheet) -> list[str]:
     if not sheet.impedance_lines:
         return ["No line on this board has a stated impedance."]
-    return [_table(_LINE_HEAD, [_line_cells(line) for line in sheet.impedance_lines])]
-
-
-def _layer_cells(layer: SheetLayer) -> tuple[str, ...]:
-    return (
-        layer.name,
-        layer.material,
-        "" if layer.thickness_m == 0.0 else _length(layer.thickness_m, layer.thickness_tolerance),
-        "" if layer.base_copper_m is None else show(layer.base_copper_m, "length"),
-        "" if layer.eps_r is None else f"{layer.eps_r:.3f}{_spread(layer.eps_r_tolerance)}",
-        "" if layer.tan_d is None else f"{layer.tan_d:.4f}{_spread(layer.tan_d_tolerance)}",
-    )
-
-
-def _line_cells(line: ImpedanceLine) -> tuple[str, ...]:
-    tolerance = "" if line.tolerance_ohm is None else f" +-{line.tolerance_ohm:.1f}"
-    return (
-        line.name,
-        line.kind,
-        f"{1e3 * line.width_m:.3f} mm",
-        "" if line.gap_m is None else f"{1e3 * line.gap_m:.3f} mm",
-        line.level,
-        line.reference,
-        f"{line.impedance_ohm:.1f}{tolerance} ohm",
-        line.instruction,
-    )
+    return [_table(_LINE_HEAD, [line_cells(line, "+-", "ohm") for line in sheet.impedance_lines])]
 
 
 def _table(head: tuple[str, ...], rows: list[tuple[str, ...]]) -> str:
@@ -196,12 +172,8 @@ def _table(head: tuple[str, ...], rows: list[tuple[str, ...]]) -> str:
     return "\n".join("| " + " | ".join(cell.replace("|", "\\|") for cell in line) + " |" for line in lines)
 
 
-def _length(length: float, tolerance: float | None) -> str:
-    return f"{show(length, 'length')}{_spread(tolerance)}"
-
-
-def _spread(tolerance: float | None) -> str:
-    return "" if tolerance is None else f" +-{show(tolerance, 'fraction')}"
+def _length(length: float) -> str:
+    return show(length, "length")
 
 
 def _mm(length: float) -> float:

@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import pytest
 
+from planar.brief import check_brief
 from planar.copper.boolean import difference
 from planar.copper.layout import Hole, Island, Layout, Level, Marking, Pad, Port, Role
 from planar.copper.lettering import lettered
 from planar.copper.path import band, loop_path, stepped_band
 from planar.copper.shapes import circle, rectangle, rounded_rectangle
+from planar.design.design import make_design
+from planar.library import Library
 
 GAP = 2e-3
 
@@ -74,6 +77,19 @@ def one_level() -> Layout:
         edge=rounded_rectangle(-0.02, -0.02, 0.02, 0.02, radius=1e-3),
         keepout=(rectangle(-0.025, -0.025, 0.025, 0.025),),
     ).snapped()
+
+
+@pytest.fixture(scope="session")
+def drawn() -> Layout:
+    """A designed ring-guided board: a via at the line's end makes feed and ground one net; ground vias, four holes."""
+    data = {
+        "name": "ring",
+        "target": {"band": ["880 MHz", "920 MHz"]},
+        "board": {"laminate": "fr4-general", "thickness": "1.6 mm"},
+        "antenna": {"family": "ring-guided", "end": "via"},
+    }
+    library = Library.open()
+    return make_design(check_brief(data, "ring.toml", library), library, "ring.toml").layout
 
 
 @pytest.fixture(params=["two_level", "one_level"])

@@ -19,12 +19,10 @@ import pypdfium2.raw as pdfium
 import pytest
 from numpy.typing import NDArray
 
-from planar.brief import check_brief
 from planar.copper.arc import Edge
 from planar.copper.layout import Layout, Level, bounds_of
 from planar.copper.outline import Outline
 from planar.copper.shapes import rounded_rectangle
-from planar.design.design import make_design
 from planar.errors import HandoffError
 from planar.handoff.drawing_figure import COPPER, drill_rows
 from planar.handoff.drawing_pdf import write_drawing
@@ -32,7 +30,7 @@ from planar.handoff.fab_notes import QUESTIONS, DrawingFacts, fab_notes
 from planar.handoff.gerber_attributes import ProjectFacts, creation_date
 from planar.handoff.paper import arc_curves
 from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, StackupSheet, stackup_sheet
-from planar.library import Library, WidebandDebye
+from planar.library import WidebandDebye
 from planar.stackup import Conductor, Layer, LayerKind, Stackup
 
 FREQUENCY = 868.3e6
@@ -42,7 +40,6 @@ LINES = (
     ImpedanceLine("feed_line", "microstrip", 3.05e-3, None, "top", "bottom", 50.0, 5.0, True),
     ImpedanceLine("transformer_of_the_line", "coplanar strips", 1.14e-3, 0.27e-3, "top", "none", 150.0, None, False),
 )
-LIBRARY = Library.open()
 
 
 def facts_for(name: str) -> DrawingFacts:
@@ -63,17 +60,6 @@ def sheet_for(layout: Layout) -> StackupSheet:
     conductor = Conductor(base_thickness=35e-6, plating=8e-6, conductivity=5.8e7, roughness_rq=0.4e-6)
     facts = SheetFacts(layout.name, FREQUENCY, "ENIG", "IPC-4101/126", 0.15e-3, dc_short=layout.dc_short)
     return stackup_sheet(Stackup(layers, conductor, 0.1), LINES, facts=facts)
-
-
-@pytest.fixture(scope="module")
-def drawn() -> Layout:
-    data = {
-        "name": "ring",
-        "target": {"band": ["880 MHz", "920 MHz"]},
-        "board": {"laminate": "fr4-general", "thickness": "1.6 mm"},
-        "antenna": {"family": "ring-guided", "end": "via"},
-    }
-    return make_design(check_brief(data, "ring.toml", LIBRARY), LIBRARY, "ring.toml").layout
 
 
 @pytest.fixture(params=["two_level", "one_level", "drawn"])

@@ -15,13 +15,10 @@ from pathlib import Path
 
 import pytest
 
-from planar.brief import check_brief
 from planar.copper.layout import Hole, Layout
-from planar.design.design import make_design
 from planar.errors import HandoffError
 from planar.handoff.drill_file import DRILL_FILES, drill_mismatches, read_drill, write_drill, write_drills
 from planar.handoff.gerber_attributes import ProjectFacts, creation_date
-from planar.library import Library
 
 with warnings.catch_warnings():
     warnings.simplefilter("ignore", DeprecationWarning)  # raised inside the reader's own imports
@@ -30,19 +27,6 @@ with warnings.catch_warnings():
 
 PROJECT = ProjectFacts("two level, 868 MHz", "A", "0123456789abcdef" * 4, creation_date())
 PLATED, UNPLATED = DRILL_FILES[True], DRILL_FILES[False]
-
-
-@pytest.fixture(scope="module")
-def drawn() -> Layout:
-    """A ring-guided board with a via at the line's end, ground vias and four mounting holes."""
-    data = {
-        "name": "ring",
-        "target": {"band": ["880 MHz", "920 MHz"]},
-        "board": {"laminate": "fr4-general", "thickness": "1.6 mm"},
-        "antenna": {"family": "ring-guided", "end": "via"},
-    }
-    library = Library.open()
-    return make_design(check_brief(data, "ring.toml", library), library, "ring.toml").layout
 
 
 @pytest.fixture(params=["two_level", "drawn"])

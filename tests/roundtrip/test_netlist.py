@@ -14,17 +14,14 @@ from pathlib import Path
 
 import pytest
 
-from planar.brief import check_brief
 from planar.copper.boolean import contains
 from planar.copper.layout import Hole, Island, Layout, Level, Marking, Pad
 from planar.copper.shapes import circle, rectangle
-from planar.design.design import make_design
 from planar.errors import HandoffError
 from planar.handoff.gerber_attributes import ProjectFacts, creation_date
 from planar.handoff.gerber_content import GerberFacts
 from planar.handoff.netlist import NETLIST, netlist_mismatches, netlist_records, read_netlist, write_netlist
 from planar.handoff.netlist_record import record_line
-from planar.library import Library
 
 with warnings.catch_warnings():
     warnings.simplefilter("ignore", DeprecationWarning)  # raised inside the reader's own imports
@@ -36,19 +33,6 @@ PROJECT = ProjectFacts("orchard", "A", "0123456789abcdef" * 4, creation_date())
 FACTS = GerberFacts(PROJECT, (Level.TOP, Level.BOTTOM), 0.15e-3)
 HALF_STEP = 0.501e-3
 """mm, half the format's step."""
-
-
-@pytest.fixture(scope="module")
-def drawn() -> Layout:
-    """A ring-guided board whose line ends in a via: feed and ground are one net."""
-    data = {
-        "name": "ring",
-        "target": {"band": ["880 MHz", "920 MHz"]},
-        "board": {"laminate": "fr4-general", "thickness": "1.6 mm"},
-        "antenna": {"family": "ring-guided", "end": "via"},
-    }
-    library = Library.open()
-    return make_design(check_brief(data, "ring.toml", library), library, "ring.toml").layout
 
 
 @pytest.fixture(params=["two_level", "one_level", "drawn"])
