@@ -1,0 +1,50 @@
+"""What all commands share: options of one name, and the way a refusal is told."""
+
+from __future__ import annotations
+
+import functools
+import json
+import sys
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any, TypeVar
+
+import click
+
+from planar.errors import PlanarError
+
+Command = TypeVar("Command", bound=Callable[..., Any])
+
+library_option = click.option(
+    "--library",
+    "library_folder",
+    type=click.Path(path_type=Path),
+    help="Folder searched before the shipped laminates, fabs, connectors, covers and families.",
+)
+json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON instead of a table.")
+
+
+def refusing(command: Command) -> Command:
+    """Turn a `PlanarError` into its message on stderr and exit code 1."""
+
+    @functools.wraps(command)
+    def wrapped(*args: Any, **kwargs: Any) -> Any:
+        try:
+            return command(*args, **kwargs)
+        except KeyboardInterrupt:
+            click.echo("interrupted: nothing was written", err=True)
+            sys.exit(130)
+        except PlanarError as error:
+            click.echo(f"refused: {error}", err=True)
+            if kwargs.get("as_json"):
+                click.echo(json.dumps({"refused": error.facts()}, indent=2))
+            sys.exit(1)
+
+    return wrapped  # type: ignore[return-value]
+
+
+sensitivities_option = click.option(
+    "--sensitivities",
+    is_flag=True,
+    help="Also solve every dimension and layer either way: MHz and ohm per mm.",
+)
