@@ -26,26 +26,42 @@ class Level(StrEnum):
 
 
 class Role(StrEnum):
-    """What an island is for."""
+    """What an island is for. A fiducial is a bare disc a camera looks for, a mark is copper that is read, not used."""
 
     RADIATOR = "radiator"
     LINE = "line"
     GROUND = "ground"
+    FIDUCIAL = "fiducial"
+    MARK = "mark"
+
+
+class Kind(StrEnum):
+    """What a layout is: one board, boards joined in a panel, or a board to measure on."""
+
+    SINGLE = "single"
+    ARRAY = "array"
+    COUPON = "coupon"
+
+
+ANTENNA = "ANT1"
+"""Reference designator of the antenna, an etched part; its lands are the pins."""
 
 
 @dataclass(frozen=True)
 class Island:
-    """One connected piece of copper on one level. `net` is filled in by `Layout.snapped`."""
+    """One connected piece of copper on one level. `net` is filled in by `Layout.snapped`; `part` is the reference
+    designator of the etched part a radiator belongs to."""
 
     level: Level
     outline: Outline
     role: Role
     net: str = ""
+    part: str = ANTENNA
 
 
 @dataclass(frozen=True)
 class Hole:
-    """A round hole of finished `diameter` m. `purpose`: "via" or "mounting"."""
+    """A round hole of finished `diameter` m. `purpose`: "via", "mounting", "tooling" or "perforation"."""
 
     centre: Point
     diameter: float
@@ -58,7 +74,8 @@ class Hole:
 class Pad:
     """Where something is soldered: `outline` lies on copper of its `level`.
 
-    `terminal` is "signal" or "return"; the two are the ends of the feed.
+    `terminal` is "signal" or "return"; the two are the ends of the feed. `part` is the reference designator of the
+    etched part whose pin the land is.
     """
 
     name: str
@@ -66,6 +83,7 @@ class Pad:
     outline: Outline
     terminal: str
     net: str = ""
+    part: str = ANTENNA
 
 
 @dataclass(frozen=True)
@@ -95,8 +113,20 @@ class Marking:
 
 
 @dataclass(frozen=True)
+class Score:
+    """A straight score line from edge to edge, `start` to `end` in m, cut from both sides."""
+
+    start: Point
+    end: Point
+
+
+@dataclass(frozen=True)
 class Layout:
-    """A board, snapped. `levels` lists the copper levels, top first."""
+    """A board, snapped. `levels` lists the copper levels, top first.
+
+    A panel is a layout too: its boards are explicit copies, `cutouts` the closed outlines routed out inside `edge`,
+    `scores` the lines it is scored along, `boards` the outlines of the boards in a panel.
+    """
 
     name: str
     levels: tuple[Level, ...]
@@ -108,6 +138,10 @@ class Layout:
     legend: tuple[Marking, ...]
     edge: Outline
     keepout: tuple[Outline, ...]
+    kind: Kind = Kind.SINGLE
+    cutouts: tuple[Outline, ...] = ()
+    scores: tuple[Score, ...] = ()
+    boards: tuple[Outline, ...] = ()
 
     def snapped(self) -> Layout:
         """The layout on the nanometre grid with its nets named. Raises `GeometryError` when copper is invalid."""

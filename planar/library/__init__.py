@@ -3,7 +3,7 @@
 from planar.library.dispersion import WidebandDebye
 from planar.library.families import Family
 from planar.library.inline import inline_laminate
-from planar.library.records import Body, Connector, Cover, Fab, GroundTab, Laminate, LandHole, LandPad
+from planar.library.records import Body, Connector, Cover, Fab, GroundTab, Laminate, LandHole, LandPad, Panelling
 from planar.library.store import KINDS, Library
 
 __all__ = [
@@ -18,6 +18,7 @@ __all__ = [
     "LandHole",
     "LandPad",
     "Library",
+    "Panelling",
     "WidebandDebye",
     "inline_laminate",
 ]

@@ -28,7 +28,7 @@ from planar.library.reading import (
     source_list,
     text,
 )
-from planar.library.records import Body, Connector, Cover, Fab, GroundTab, Laminate, LandHole, LandPad
+from planar.library.records import Body, Connector, Cover, Fab, GroundTab, Laminate, LandHole, LandPad, Panelling
 
 _FRACTION = measure("fraction", 0.0, 1.0)
 _FREQUENCY = measure("frequency", 1e4, 1e11)
@@ -77,6 +77,28 @@ COVER = Table({"title": Key(text), **_PERMITTIVITY})
 
 _MASK_KEYS = ("mask_thickness", "mask_eps_r", "mask_tan_d", "mask_expansion", "mask_web")
 _LEGEND_KEYS = ("legend_min_stroke",)
+_SCORE_KEYS = ("score_web", "score_least_thickness", "score_least_panel")
+_PERFORATION_KEYS = ("perforation_hole", "perforation_pitch", "perforation_wall")
+
+PANELLING = Table(
+    {
+        "rail_width": _sourced(measure("length", 3e-3, 5e-2)),
+        "tooling_hole": _sourced(_DETAIL),
+        "fiducial": _sourced(_DETAIL),
+        "fiducial_opening": _sourced(_DETAIL),
+        "score": _sourced(boolean),
+        "score_web": _sourced(number(0.1, 0.9), required=False),
+        "score_least_thickness": _sourced(_FROM_ZERO, required=False),
+        "score_least_panel": _sourced(pair_of(measure("length", 0.0, 2.0)), required=False),
+        "tab_width": _sourced(_DETAIL),
+        "tab_stretch": _sourced(measure("length", 5e-3, 1.0)),
+        "perforation_count": _sourced(count(0, 50)),
+        "perforation_hole": _sourced(_DETAIL, required=False),
+        "perforation_pitch": _sourced(_DETAIL, required=False),
+        "perforation_wall": _sourced(_FROM_ZERO, required=False),
+    },
+    required=False,
+)
 
 FAB = Table(
     {
@@ -112,6 +134,7 @@ FAB = Table(
         "legend": _sourced(boolean),
         "legend_min_stroke": _sourced(_DETAIL, required=False),
         "finishes": Table({"values": Key(list_of(text)), "source": Key(text)}),
+        "panelling": PANELLING,
     }
 )
 
@@ -203,7 +226,7 @@ def read_cover(key: str, raw: Mapping[str, Any], where: str) -> Cover:
 def read_fab(key: str, raw: Mapping[str, Any], where: str) -> Fab:
     """Fab from the parsed file `raw`; `where` names the file. Raises `LibraryError` with every fault."""
     found = read(raw, FAB, where)
-    _refuse(_offer_faults(raw, found, where))
+    _refuse(_offer_faults(raw, found, where) + _panelling_faults(raw, found, where))
     same_name = {name: table["value"] for name, table in found.items() if isinstance(table, dict) and "value" in table}
     mask_thickness = found["mask_thickness"] or {"value": 0.0, "tolerance": 0.0}
     mask_eps_r = found["mask_eps_r"] or {"value": 1.0, "at": 1e9}
@@ -217,8 +240,19 @@ def read_fab(key: str, raw: Mapping[str, Any], where: str) -> Fab:
         "mask_eps_r": mask_eps_r["value"],
         "mask_at": mask_eps_r["at"],
         "finishes": found["finishes"]["values"],
+        "panelling": found["panelling"] and _panelling(found["panelling"]),
     }
-    return Fab(key=key, title=found["title"], sources=source_list(raw), **fields)
+    below = tuple((f"panelling.{name}", source) for name, source in source_list(raw.get("panelling", {})))
+    return Fab(key=key, title=found["title"], sources=source_list(raw) + below, **fields)
+
+
+def _panelling(found: Mapping[str, Any]) -> Panelling:
+    """Record of a checked table; what is not offered is 0."""
+    not_offered: dict[str, Any] = {
+        **dict.fromkeys(_SCORE_KEYS + _PERFORATION_KEYS, 0.0),
+        "score_least_panel": (0.0, 0.0),
+    }
+    return Panelling(**not_offered | {name: table["value"] for name, table in found.items() if table is not None})
 
 
 def read_connector(key: str, raw: Mapping[str, Any], where: str) -> Connector:
@@ -278,6 +312,30 @@ def _offer_faults(raw: Mapping[str, Any], found: dict[str, Any], where: str) -> 
     if found["max_hole"]["value"] < found["min_hole"]["value"]:
         expected = f"at least min_hole, {raw['min_hole']['value']}, is needed"
         faults.append(Fault(where, "max_hole.value", raw["max_hole"]["value"], expected))
+    return faults
+
+
+def _panelling_faults(raw: Mapping[str, Any], found: Mapping[str, Any], where: str) -> list[Fault]:
+    """What scoring and perforation need where they are offered, and must not state where they are not."""
+    given = found["panelling"]
+    if given is None:
+        return []
+    faults = []
+    offers = (("score", _SCORE_KEYS), ("perforation_count", _PERFORATION_KEYS))
+    for offer, keys in offers:
+        offered = bool(given[offer]["value"])
+        for name in keys:
+            if offered and given[name] is None:
+                expected = f"this key is needed, since {offer} is not 0 or false"
+                faults.append(Fault(where, f"panelling.{name}", "(not given)", expected))
+            if not offered and given[name] is not None:
+                expected = f"leave it out, since {offer} is 0 or false"
+                faults.append(Fault(where, f"panelling.{name}", str(raw["panelling"][name]), expected))
+    opening, disc = given["fiducial_opening"]["value"], given["fiducial"]["value"]
+    if opening < disc:
+        expected = f"at least fiducial, {raw['panelling']['fiducial']['value']}, is needed"
+        written = raw["panelling"]["fiducial_opening"]["value"]
+        faults.append(Fault(where, "panelling.fiducial_opening.value", written, expected))
     return faults
 
 

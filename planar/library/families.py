@@ -35,7 +35,9 @@ class DimensionRule:
     """A dimension of a family, its meaning, and the traits a design must have to need it.
 
     `along` tells that it is a length along the loop. Sizing moves it where it is `sized` and the design has all
-    traits of `sized_with`.
+    traits of `sized_with`. Where every edge of the copper recedes by some length, the dimension grows by `etch` of them
+    (-2 a width, +2 a gap, -1 a free end, +1 where the wider copper it starts at recedes), in a design with all traits
+    of `etch_with`.
     """
 
     name: str
@@ -44,6 +46,8 @@ class DimensionRule:
     along: bool
     sized: bool
     sized_with: frozenset[str]
+    etch: int = 0
+    etch_with: frozenset[str] = frozenset()
 
 
 @dataclass(frozen=True)
@@ -96,6 +100,10 @@ class Family:
     def sized(self, traits: frozenset[str]) -> tuple[str, ...]:
         """Names of the dimensions sizing moves, beside the loop itself, in a design with `traits`."""
         return tuple(r.name for r in self.dimensions if r.sized and r.needs <= traits and r.sized_with <= traits)
+
+    def etched(self, traits: frozenset[str]) -> dict[str, int]:
+        """Edges by which each dimension a design with `traits` has grows where all copper edges recede; 0 left out."""
+        return {r.name: r.etch for r in self.dimensions if r.etch and r.needs <= traits and r.etch_with <= traits}
 
     def meaning(self, name: str) -> str:
         """What the dimension `name` is."""
@@ -162,6 +170,8 @@ _DIMENSION = Table(
         "along": Key(boolean, required=False),
         "sized": Key(boolean, required=False),
         "sized_with": Key(list_of(choice(*TRAITS)), required=False),
+        "etch": Key(count(-2, 2), required=False),
+        "etch_with": Key(list_of(choice(*TRAITS)), required=False),
     }
 )
 _START = Table(
@@ -196,6 +206,8 @@ def read_family(key: str, raw: Mapping[str, Any], where: str) -> Family:
             bool(rule["along"]),
             bool(rule["sized"]),
             frozenset(rule["sized_with"] or ()),
+            rule["etch"] or 0,
+            frozenset(rule["etch_with"] or ()),
         )
         for name, rule in values["dimensions"].items()
     )

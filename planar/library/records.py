@@ -69,13 +69,40 @@ class Cover:
 
 
 @dataclass(frozen=True)
+class Panelling:
+    """How a board maker joins boards in a panel. Lengths in m, holes are finished diameters.
+
+    `score` says whether boards can be scored apart; `score_web` is then the part of the thickness left between the
+    two cuts, `score_least_thickness` the thinnest board that can be scored, `score_least_panel` the smallest panel
+    (x, y) the scoring line takes; all are 0 where nothing is scored. A tab is `tab_width` at its narrowest and there
+    is at least one on each `tab_stretch` of a side. `perforation_count` holes stand on each break line, none where it
+    is 0; `perforation_wall` is the least board between two of them and between one and the slot.
+    """
+
+    rail_width: float
+    tooling_hole: float
+    fiducial: float
+    fiducial_opening: float
+    score: bool
+    score_web: float
+    score_least_thickness: float
+    score_least_panel: tuple[float, float]
+    tab_width: float
+    tab_stretch: float
+    perforation_count: int
+    perforation_hole: float
+    perforation_pitch: float
+    perforation_wall: float
+
+
+@dataclass(frozen=True)
 class Fab:
     """What a board maker can do. Lengths in m, holes are finished diameters.
 
     `levels` is the highest number of copper levels; `plating` the copper added on outer levels; `etch_tolerance`
     holds per conductor edge. Sizes are (x, y). Without mask (`mask` false) its thickness is 0 and its permittivity
     that of air; without legend its stroke is 0. `impedance_tolerance` is None where no controlled impedance is
-    offered.
+    offered, `panelling` where the file does not say how boards are joined in a panel.
     """
 
     key: str
@@ -113,6 +140,7 @@ class Fab:
     legend: bool
     legend_min_stroke: float
     finishes: tuple[str, ...]
+    panelling: Panelling | None
     sources: Sources
 
     @property

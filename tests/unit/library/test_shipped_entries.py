@@ -52,7 +52,8 @@ def test_the_demanded_classes_are_there() -> None:
 def test_every_value_has_its_source_and_tolerance(kind: str, key: str) -> None:
     raw = tomllib.loads(LIBRARY.source(kind, key).read_text(encoding="utf-8"))
     tables = [(name, row) for name, value in raw.items() for row in (value if isinstance(value, list) else [value])]
-    facts = [(name, table) for name, table in tables if name not in ("title", "class", "specification")]
+    tables += [(name, row) for _, value in tables if "rail_width" in value for name, row in value.items()]
+    facts = [(name, table) for name, table in tables if name not in ("title", "class", "specification", "panelling")]
     assert facts
     assert [name for name, table in facts if not table["source"].strip()] == []
     assert [name for name in TOLERANCED.get(kind, ()) if "tolerance" not in raw[name]] == []
@@ -123,6 +124,26 @@ def test_fab_does_not_contradict_itself(key: str) -> None:
     assert 2 * fab.etch_tolerance < fab.min_track
     assert 2 * fab.etch_tolerance < fab.min_gap
     assert fab.plated_holes == (fab.plating > 0.0)
+
+
+@pytest.mark.parametrize("key", FABS)
+def test_panelling_is_the_trades(key: str) -> None:
+    """Common practice, no source: rails of 5 to 10 mm, tooling holes of 2.0 or 3.2 mm, fiducials of 1 mm in an opening
+    of 2 to 3 mm, a third of the thickness left under a score, five holes of 0.5 mm at 0.8 mm on a tab."""
+    fab = LIBRARY.fab(key)
+    way = fab.panelling
+    assert way is not None
+    assert 5e-3 <= way.rail_width <= 10e-3
+    assert any(way.tooling_hole == pytest.approx(size) for size in (2.0e-3, 3.2e-3))
+    assert fab.min_hole <= way.tooling_hole <= fab.max_hole
+    assert way.fiducial == pytest.approx(1e-3)
+    assert 2e-3 <= way.fiducial_opening <= 3e-3
+    if way.score:
+        assert way.score_web == pytest.approx(1 / 3, rel=2e-3)
+    if way.perforation_count:
+        got = (way.perforation_count, way.perforation_hole, way.perforation_pitch)
+        assert got == pytest.approx((5, 0.5e-3, 0.8e-3))
+        assert way.perforation_pitch - way.perforation_hole >= way.perforation_wall
 
 
 def test_milled_board_has_neither_mask_nor_legend_nor_plating() -> None:

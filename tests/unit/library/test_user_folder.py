@@ -42,6 +42,13 @@ def test_user_folder_wins_and_adds(tmp_path: Path) -> None:
     assert library.fab("pool-two-layer") == SHIPPED.fab("pool-two-layer")
 
 
+def test_a_fab_without_panelling_is_whole(tmp_path: Path) -> None:
+    """A file from before there were panels still loads; `panelling` is then None."""
+    path = copy_of("fabs", "pool-two-layer", tmp_path)
+    path.write_text(path.read_text(encoding="utf-8").partition("[panelling]")[0], encoding="utf-8")
+    assert Library.open(tmp_path).fab("pool-two-layer").panelling is None
+
+
 def test_all_faults_of_a_laminate_at_once(tmp_path: Path) -> None:
     copy_of(
         "laminates",
@@ -108,6 +115,22 @@ def test_all_faults_of_a_laminate_at_once(tmp_path: Path) -> None:
             ("legend = { value = false", "legend = { value = true"),
             "legend_min_stroke",
             "is",
+        ),
+        ("fabs", "pool-two-layer", ("score_web =", "#"), "panelling.score_web", "since score is"),
+        (
+            "fabs",
+            "pool-two-layer",
+            ("count = { value = 5", "count = { value = 0"),
+            "panelling.perforation_hole",
+            "leave",
+        ),
+        ("fabs", "pool-two-layer", ("rail_width =", "rail_with ="), "panelling.rail_with", 'nearest is "rail_width"'),
+        (
+            "fabs",
+            "pool-two-layer",
+            ('opening = { value = "2', 'opening = { value = "0.2'),
+            "panelling.fiducial_opening.value",
+            "at",
         ),
         ("connectors", "edge-coax", ('net = "signal"', 'net = "signl"'), "pads[1].net", 'nearest is "signal"'),
         ("connectors", "edge-coax", ('net = "signal"', 'net = "ground"'), "pads", "one pad of the net signal"),
