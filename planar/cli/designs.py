@@ -8,7 +8,7 @@ from pathlib import Path
 
 import click
 
-from planar.cli.options import json_option, library_option, refusing, sensitivities_option
+from planar.cli.options import json_option, library_option, outputs_option, refusing, sensitivities_option
 
 
 @click.command()
@@ -27,13 +27,7 @@ def new(name: Path, as_json: bool) -> None:
 
 @click.command()
 @click.argument("brief", type=click.Path(path_type=Path))
-@click.option(
-    "--outputs",
-    type=click.Path(path_type=Path),
-    default=Path("outputs"),
-    show_default=True,
-    help="Folder the pack is written to, under the brief's name.",
-)
+@outputs_option
 @sensitivities_option
 @library_option
 @json_option

@@ -21,6 +21,13 @@ library_option = click.option(
     type=click.Path(path_type=Path),
     help="Folder searched before the shipped laminates, fabs, connectors, covers and families.",
 )
+outputs_option = click.option(
+    "--outputs",
+    type=click.Path(path_type=Path),
+    default=Path("outputs"),
+    show_default=True,
+    help="Folder results are written to, in a folder named after the brief.",
+)
 json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON instead of a table.")
 
 

@@ -56,9 +56,10 @@ class Workers:
 @contextmanager
 def workers(count: int | None = None) -> Iterator[Workers]:
     """`Workers` on `count` processes, by default one for each core; linear algebra in one thread meanwhile."""
-    processes = min(MOST, count or _cores())
+    inside = multiprocessing.parent_process() is not None  # one of many processes already: no more of them
+    processes = 1 if inside else min(MOST, count or cores())
     with threadpool_limits(1):
-        pool = _pool(processes) if processes > 1 else None
+        pool = process_pool(processes) if processes > 1 else None
         try:
             yield Workers(pool)
         finally:
@@ -66,14 +67,14 @@ def workers(count: int | None = None) -> Iterator[Workers]:
                 pool.shutdown(cancel_futures=True)
 
 
-def _pool(processes: int) -> ProcessPoolExecutor | None:
-    """Processes that are ready, None where the system gives none."""
+def process_pool(processes: int) -> ProcessPoolExecutor | None:
+    """Processes that are ready, each with one thread for its linear algebra; None where the system gives none."""
     # a forked process starts at once; from Python 3.12 on forking beside threads is warned of
     forking = sys.platform == "linux" and sys.version_info < (3, 12)
     method = "fork" if forking else "forkserver" if os.name == "posix" else "spawn"
     try:
         pool = ProcessPoolExecutor(processes, multiprocessing.get_context(method), _begin)
-        pool.submit(_cores).result()
+        pool.submit(cores).result()
     except (OSError, NotImplementedError, BrokenExecutor):
         return None
     return pool
@@ -85,7 +86,7 @@ def _begin() -> None:
     signal.signal(signal.SIGINT, signal.SIG_IGN)
 
 
-def _cores() -> int:
+def cores() -> int:
     """Cores this process may use."""
     if hasattr(os, "sched_getaffinity"):
         return len(os.sched_getaffinity(0))

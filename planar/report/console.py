@@ -61,6 +61,7 @@ def progress() -> Iterator[Callable[[str], None]]:
             sys.stderr.write(f"{time.monotonic() - started:6.2f} s  {stage}\n")
 
     yield step
+    step("done")
 
 
 def print_json(data: object) -> None:
@@ -70,7 +71,7 @@ def print_json(data: object) -> None:
 
 def print_design(design: Design, folder: Path | None = None) -> None:
     """Print dimensions, lines, findings and where the pack is."""
-    console = _console()
+    console = terminal()
     choices = design.choices
     polarisation = choices.brief.target.polarisation
     console.print(
@@ -90,8 +91,8 @@ def print_design(design: Design, folder: Path | None = None) -> None:
     if design.lines:
         console.print(_design_line_table(design))
     if design.findings:
-        console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in design.findings]))
-    console.print(_text_table(("assumed",), [(reason,) for reason in choices.reasons]))
+        console.print(text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in design.findings]))
+    console.print(text_table(("assumed",), [(reason,) for reason in choices.reasons]))
     console.print(design.status, highlight=False)
     if choices.brief.target.transmit:
         console.print(CAUTION_TRANSMIT, highlight=False)
@@ -140,7 +141,7 @@ def _prediction_table(design: Design, prediction: Prediction) -> Table:
     guided = f"{100.0 * point.surface_wave_share:.0f} % of the power guided in the slab among it, not in the gain"
     rows.append(("gain, efficiency", f"{point.gain_dbi:.2f} dBi, {100.0 * point.efficiency:.0f} %; {guided}", ""))
     rows.append(("Q of the port", f"{prediction.quality:.1f}", ""))
-    return _text_table(("predicted", "", "asked"), rows)
+    return text_table(("predicted", "", "asked"), rows)
 
 
 def _sensitivity_table(found: Sequence[Sensitivity]) -> Table:
@@ -153,7 +154,7 @@ def _sensitivity_table(found: Sequence[Sensitivity]) -> Table:
         ohm = _ohm(each.ohm_per_unit * scale)
         rows.append((each.name, value, unit, f"{each.hz_per_unit * scale / 1e6:+.3f}", ohm, uneven))
     heads = ("sensitivity", "is", "more by", "MHz", "ohm", "uneven %")
-    return _text_table(heads, rows, right=(1, 2, 3, 4, 5))
+    return text_table(heads, rows, right=(1, 2, 3, 4, 5))
 
 
 def _cut_table(cuts: Sequence[Cut]) -> Table:
@@ -168,7 +169,7 @@ def _cut_table(cuts: Sequence[Cut]) -> Table:
         for each in cuts
     ]
     heads = ("cut off, on the mesh of comparisons", "mm2", "shift MHz", "best match MHz", "worst in the band dB")
-    return _text_table(heads, rows, right=(1, 2, 3, 4))
+    return text_table(heads, rows, right=(1, 2, 3, 4))
 
 
 def _candidate_table(candidates: Sequence[Candidate]) -> Table:
@@ -180,13 +181,13 @@ def _candidate_table(candidates: Sequence[Candidate]) -> Table:
         balun = "needs a balun; " if each.needs_balun else ""
         rows.append((each.name, verdict, margin, size, balun + each.remark))
     heads = ("considered", "brief", "margin after\ntolerances %", "board mm", "remark")
-    return _text_table(heads, rows, right=(2,))
+    return text_table(heads, rows, right=(2,))
 
 
 def _dimension_table(design: Design) -> Table:
     family = design.choices.family
     rows = [(name, f"{value * 1e3:.3f}", family.meaning(name)) for name, value in design.dimensions.items()]
-    return _text_table(("dimension", "mm", "meaning"), rows, right=(1,))
+    return text_table(("dimension", "mm", "meaning"), rows, right=(1,))
 
 
 def _design_line_table(design: Design) -> Table:
@@ -204,12 +205,12 @@ def _design_line_table(design: Design) -> Table:
         for each in design.lines
     ]
     heads = ("line", "kind", "ohm", "+-ohm", "eps eff", "quarter wave mm", "loss dB/m", "against")
-    return _text_table(heads, rows, right=(2, 3, 4, 5, 6))
+    return text_table(heads, rows, right=(2, 3, 4, 5, 6))
 
 
 def print_solution(design: Design, solution: Solution) -> None:
     """Print a field solution: a row a frequency, the sweep in one line, what limits the numbers."""
-    console, port = _console(), design.choices.brief.target.impedance
+    console, port = terminal(), design.choices.brief.target.impedance
     rows = []
     for point, gap in zip(solution.points, solution.gap_impedance_ohm, strict=True):
         ratio = "linear" if point.sense == "linear" else f"{point.axial_ratio_db:.2f} {point.sense}"
@@ -226,14 +227,14 @@ def print_solution(design: Design, solution: Solution) -> None:
             )
         )
     heads = ("at", "bare loop's gap ohm", "input ohm", "reflection dB", "gain dBi", "efficiency %", "axial ratio dB")
-    console.print(_text_table((*heads, "copper / dielectric %"), rows, right=(1, 2, 3, 4, 5)))
+    console.print(text_table((*heads, "copper / dielectric %"), rows, right=(1, 2, 3, 4, 5)))
     if solution.sweep is not None:
         best = show(solution.sweep.best_match, "frequency", 5)
         bands = solution.sweep.band(design.choices.brief.target.match_db)
         texts = [f"{show(low, 'frequency', 5)} to {show(high, 'frequency', 5)}" for low, high in bands]
         level = f"{design.choices.brief.target.match_db:g} dB"
         console.print(f"best match at {best}; below {level}: {', '.join(texts) or 'nowhere'}", highlight=False)
-    console.print(_text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in solution.findings]))
+    console.print(text_table(("", "finding"), [(MARKS[f.severity], str(f)) for f in solution.findings]))
     console.print(
         f"{solution.unknowns} unknowns; the input impedance moves by {100.0 * solution.convergence:.1f} % from a "
         "coarser mesh; gain and axial ratio toward the top",
@@ -251,7 +252,7 @@ def print_lines(rows: Sequence[LineRow]) -> None:
     names = [name for name in HEADS if name not in empty]
     cells = [tuple(_line_cell(name, getattr(row, name)) for name in names) for row in rows]
     right = tuple(i for i, name in enumerate(names) if name not in {"kind", "laminate", "makeable", "note"})
-    _console().print(_text_table(tuple(HEADS[name] for name in names), cells, right=right))
+    terminal().print(text_table(tuple(HEADS[name] for name in names), cells, right=right))
 
 
 def _line_cell(name: str, value: object) -> str:
@@ -273,15 +274,15 @@ def print_entries(entries: Mapping[str, Sequence[Mapping[str, Any]]]) -> None:
     """Print library entries by kind: key and title, and where they come from."""
     for kind, found in entries.items():
         rows = [(entry["key"], entry["title"], entry["file"]) for entry in found]
-        _console().print(_text_table((kind, "title", "file"), rows))
+        terminal().print(text_table((kind, "title", "file"), rows))
 
 
 def print_entry(entry: Mapping[str, Any]) -> None:
     """Print one library entry: every value with its source."""
-    console = _console()
+    console = terminal()
     console.print(f"{entry['key']}: {entry['title']}\n{entry['file']}", highlight=False, soft_wrap=True)
     rows = [(name, _in_words(value["value"]), value["source"]) for name, value in entry["values"].items()]
-    console.print(_text_table(("name", "value", "source"), rows))
+    console.print(text_table(("name", "value", "source"), rows))
 
 
 def _in_words(value: object) -> str:
@@ -295,7 +296,8 @@ def _in_words(value: object) -> str:
     return str(value).lower() if isinstance(value, bool) else str(value)
 
 
-def _text_table(heads: Sequence[str], rows: Sequence[Sequence[str]], *, right: Sequence[int] = ()) -> Table:
+def text_table(heads: Sequence[str], rows: Sequence[Sequence[str]], *, right: Sequence[int] = ()) -> Table:
+    """A table without lines of the texts in `rows`, the columns numbered in `right` set to the right."""
     table = Table(box=None, pad_edge=False, header_style="bold")
     for i, head in enumerate(heads):
         table.add_column(head, justify="right" if i in right else "left", overflow="fold")
@@ -304,6 +306,7 @@ def _text_table(heads: Sequence[str], rows: Sequence[Sequence[str]], *, right: S
     return table
 
 
-def _console() -> Console:
+def terminal() -> Console:
+    """Where tables go: stdout, as wide as the terminal or `WIDTH` where it is none."""
     terminal = sys.stdout.isatty()
     return Console(file=sys.stdout, width=None if terminal else WIDTH, markup=False, emoji=False)

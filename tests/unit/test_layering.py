@@ -34,8 +34,14 @@ ONLY_IN = {
     "pydantic": ("brief",),
     "pydantic_core": ("brief",),
 }
-IMPORTS_LATE = {("units", "pint")}
-"""(part, module) imported inside a function outside cli: slow to load and seldom needed."""
+IMPORTS_LATE = {
+    ("units", "pint"),
+    ("design", "dask.distributed"),
+    ("design", "distributed.scheduler"),
+    ("pipeline", "pyarrow"),
+    ("pipeline", "pyarrow.parquet"),
+}
+"""(part, module) imported inside a function outside cli: slow to load and seldom needed, or not always installed."""
 
 Package = Mapping[str, str]
 Rule = Callable[[Package], list[str]]

@@ -1,0 +1,131 @@
+"""The files of one thing to be made (a board, a panel, a coupon): for the layout engineer, the fab, and as an archive.
+
+Written in one call, read back in another. They join the pack they belong to, or stand in a folder of their own.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+
+from planar.copper.layout import Layout
+from planar.design.choices import Choices
+from planar.design.design import Design
+from planar.handoff import (
+    FabricationFacts,
+    GerberFacts,
+    ImpedanceLine,
+    ProjectFacts,
+    SheetFacts,
+    StackupSheet,
+    check_fabrication_files,
+    check_files,
+    check_zip,
+    creation_date,
+    extended,
+    is_pack,
+    packed,
+    stackup_sheet,
+    write_fabrication_files,
+    write_layout_files,
+    write_zip,
+)
+from planar.stackup import Stackup
+
+REVISION = "A"
+"""Of every design as planar makes it; a change of the brief is another design with another hash."""
+DESIGN = "design.json"
+"""Name of a design in its pack."""
+
+
+@dataclass(frozen=True)
+class Making:
+    """What is to be made: `name` of its archive, a snapped layout, what the fab is told, how far numbers can be
+    trusted in one sentence."""
+
+    name: str
+    layout: Layout
+    sheet: StackupSheet
+    facts: FabricationFacts
+    status: str
+
+
+def write_making(making: Making, folder: Path) -> None:
+    """Write layout/, fabrication/ and the archive of the latter into the empty `folder`."""
+    layout, fabrication = folder / "layout", folder / "fabrication"
+    layout.mkdir()
+    fabrication.mkdir()
+    write_layout_files(making.layout, layout, status=making.status)
+    write_fabrication_files(making.layout, making.sheet, fabrication, facts=making.facts)
+    write_zip(fabrication, folder / f"{making.name}-fabrication.zip")
+
+
+def check_making(making: Making, folder: Path) -> None:
+    """Read the files of `write_making` again and compare. Raises `HandoffError` naming what differs."""
+    check_files(making.layout, folder / "layout")
+    check_fabrication_files(making.layout, making.sheet, folder / "fabrication", facts=making.facts)
+    check_zip(folder / "fabrication", folder / f"{making.name}-fabrication.zip")
+
+
+def gerber_facts(name: str, digest: str, choices: Choices, via_ring: float) -> GerberFacts:
+    """Project, masked sides and via ring (m) of the design whose hash is `digest`."""
+    return GerberFacts(ProjectFacts(name, REVISION, digest, creation_date()), choices.masked, via_ring)
+
+
+def design_ring(design: Design) -> float:
+    """Copper round the plated holes of a design, m."""
+    return design.dimensions.get("via_ring", design.choices.fab.min_annular_ring)
+
+
+def sheet_of(
+    layout: Layout, choices: Choices, stackup: Stackup, lines: Sequence[ImpedanceLine], *, name: str, dc_short: bool
+) -> StackupSheet:
+    """The stackup summary of `layout` on `stackup`; `dc_short` is that of one board, coupon aside."""
+    facts = SheetFacts(
+        name=name,
+        frequency_hz=choices.centre,
+        finish=choices.fab.finishes[0],
+        specification=choices.laminate.specification,
+        outline_tolerance_m=choices.fab.outline_tolerance,
+        dc_short=dc_short,
+        kind=layout.kind,
+    )
+    return stackup_sheet(stackup, tuple(lines), facts=facts)
+
+
+def impedance_lines(design: Design) -> tuple[ImpedanceLine, ...]:
+    """The lines of a design as the fab sheet shows them."""
+    return tuple(
+        ImpedanceLine(
+            name=line.name,
+            kind=line.line.kind,
+            width_m=line.line.width,
+            gap_m=line.line.gap,
+            level=line.level.value,
+            reference=line.reference,
+            impedance_ohm=line.line.impedance,
+            tolerance_ohm=line.tolerance_ohm,
+            controlled=False,  # no plane under it: a fab that adjusted the width would detune the antenna
+        )
+        for line in design.lines
+    )
+
+
+def design_file(path: Path) -> Path:
+    """The design.json meant by `path`: itself, or that of the pack in the folder `path`."""
+    return path / DESIGN if path.is_dir() else path
+
+
+@contextmanager
+def beside_design(source: Path, alone: Path, part: str) -> Iterator[tuple[Path, Path]]:
+    """A folder to write into and the folder it will be: `part` of the pack in which the design file `source` lies, or
+    `alone` where that is no pack. Raises `HandoffError` as `packed`."""
+    pack = source.absolute().parent
+    if source.name == DESIGN and is_pack(pack):
+        with extended(pack, part) as fresh:
+            yield fresh, source.parent / part
+    else:
+        with packed(alone) as fresh:
+            yield fresh, alone

@@ -1,0 +1,154 @@
+"""`planar panel`: the boards of a design joined for the fab, with files of their own beside those of the board."""
+
+from __future__ import annotations
+
+import json
+import re
+from collections.abc import Callable
+from dataclasses import asdict, dataclass, replace
+from pathlib import Path
+from typing import Any
+
+from planar.copper.outline import Outline
+from planar.copper.panel import PanelRequest, PlannedPanel, connector_box, plan_panel
+from planar.design.coupon import design_coupon
+from planar.design.design import Design
+from planar.design.design_file import read_design
+from planar.errors import BriefError, Fault
+from planar.handoff import FabricationFacts, PanelFacts
+from planar.library import Library
+from planar.pipeline.board_files import (
+    REVISION,
+    Making,
+    beside_design,
+    check_making,
+    design_file,
+    design_ring,
+    gerber_facts,
+    impedance_lines,
+    sheet_of,
+    write_making,
+)
+
+Progress = Callable[[str], None]
+PART = "panel"
+"""Folder of the panel in a pack."""
+_COUNT = re.compile(r"\s*(\d{1,3})\s*[x*]\s*(\d{1,3})\s*")
+
+
+@dataclass(frozen=True)
+class Panelled:
+    """A design, its panel and the folder the files of the panel were written to."""
+
+    design: Design
+    panel: PlannedPanel
+    folder: Path
+
+
+@dataclass(frozen=True)
+class PanelQuestion:
+    """What is asked of a panel: count of columns and rows such as "2x3", None for the most that fit; "score" or "tabs",
+    None for what suits the board; whether a coupon goes with it."""
+
+    count: str | None = None
+    separation: str | None = None
+    coupon: bool = False
+
+
+def panel(
+    path: Path, library: Library, outputs: Path, question: PanelQuestion, progress: Progress = lambda stage: None
+) -> Panelled:
+    """Plan the panel of the design at `path` (a design.json or the folder of its pack) and write its files.
+
+    They join the pack the design lies in, or stand alone in `outputs`/<name>-panel. Raises `PlanarError`; nothing is
+    then left behind.
+    """
+    source = design_file(path)
+    count = None if question.count is None else _read_count(question.count)
+    progress("drawing the board")
+    design = read_design(source, library)
+    digest = str(json.loads(source.read_bytes())["hash"])
+    progress("planning the panel")
+    coupon = design_coupon(design.choices, design.lines, library=library).layout if question.coupon else None
+    request = replace(_request(design, digest, count, question.separation), coupon=coupon)
+    planned = plan_panel(design.layout, design.choices.fab, request)
+    making = _making(design, planned, digest)
+    with beside_design(source, outputs / f"{design.name}-{PART}", PART) as (fresh, folder):
+        progress("writing files")
+        write_making(making, fresh)
+        told = json.dumps(panel_facts(design, planned), indent=2, ensure_ascii=False) + "\n"
+        (fresh / "panel.json").write_bytes(told.encode("utf-8"))
+        progress("reading the files back")
+        check_making(making, fresh)
+    return Panelled(design, planned, folder)
+
+
+def _read_count(text: str) -> tuple[int, int]:
+    found = _COUNT.fullmatch(text)
+    if found is None or not (int(found[1]) and int(found[2])):
+        raise BriefError([Fault("command line", "--count", text, 'columns and rows such as "2x3", each at least 1')])
+    return int(found[1]), int(found[2])
+
+
+def _request(design: Design, digest: str, count: tuple[int, int] | None, separation: str | None) -> PanelRequest:
+    choices = design.choices
+    return PanelRequest(
+        design.name,
+        REVISION,
+        digest,
+        choices.brief.board.thickness,
+        choices.masked,
+        count,
+        separation,
+        body=connector_box(choices.connector),
+    )
+
+
+def _making(design: Design, planned: PlannedPanel, digest: str) -> Making:
+    choices, fab, name = design.choices, design.choices.fab, f"{design.name}-{PART}"
+    panel = PanelFacts(
+        planned.columns,
+        planned.rows,
+        planned.board_size,
+        planned.score_web,
+        planned.tab_width,
+        bad_boards_allowed=True,
+        coupon_size_m=None if planned.coupon is None else _size(planned.coupon),
+    )
+    gerber = gerber_facts(name, digest, choices, design_ring(design))
+    facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance, panel)
+    dc_short = design.layout.dc_short
+    lines = impedance_lines(design)
+    sheet = sheet_of(planned.layout, choices, choices.stackup, lines, name=name, dc_short=dc_short)
+    return Making(name, planned.layout, sheet, facts, design.status)
+
+
+def panel_facts(design: Design, planned: PlannedPanel) -> dict[str, Any]:
+    """The panel in plain types, units in the names: what panel.json and `--json` say."""
+    return {
+        "name": design.name,
+        "columns": planned.columns,
+        "rows": planned.rows,
+        "boards": planned.boards,
+        "places": list(planned.places),
+        "board_turned": planned.turned,
+        "separation": planned.separation,
+        "panel_mm": _mm(planned.layout.size),
+        "board_mm": _mm(planned.board_size),
+        "spacing_mm": round(planned.spacing * 1e3, 6),
+        "score_web": planned.score_web,
+        "tab_width_mm": None if planned.tab_width is None else round(planned.tab_width * 1e3, 6),
+        "panels_per_fab_panel": planned.arrays_per_fab_panel,
+        "boards_per_fab_panel": planned.boards_per_fab_panel,
+        "used_share": round(planned.used_share, 4),
+        "findings": [asdict(finding) for finding in planned.findings],
+    }
+
+
+def _size(outline: Outline) -> tuple[float, float]:
+    x0, y0, x1, y1 = outline.bounds
+    return x1 - x0, y1 - y0
+
+
+def _mm(size: tuple[float, float]) -> list[float]:
+    return [round(side * 1e3, 6) for side in size]

@@ -1,0 +1,168 @@
+"""`planar sweep`: one row a design over any axes of a brief, kept as they come, written as tables and plots."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import tomllib
+from collections.abc import Callable, Generator, Mapping, Sequence
+from contextlib import closing
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from planar.brief import read_brief, write_brief
+from planar.design.design_file import design_facts, given_brief, read_design
+from planar.design.row_farm import cluster_rows, local_rows
+from planar.design.row_store import RowStore, row_store
+from planar.design.sized import sized_design
+from planar.design.sweep_axes import Axis, Row, read_axes, sweep_rows
+from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_key
+from planar.design.workers import cores
+from planar.handoff import check_destination, packed
+from planar.library import Library
+from planar.report.sweep_plot import PLOTTED, check_plots, write_sweep_plots
+
+Progress = Callable[[str], None]
+STORE = "rows.sqlite"
+"""Name of the file rows are kept in, in the folder of all outputs."""
+
+
+@dataclass(frozen=True)
+class SweepQuestion:
+    """What is asked of a sweep: texts of its axes, whether the dimensions of the base stay as they are, the quantities
+    to plot, the store (None: beside the outputs), processes (None: one for each core) or the scheduler of a cluster."""
+
+    vary: tuple[str, ...]
+    given: bool = False
+    plots: tuple[str, ...] = ()
+    store: Path | None = None
+    processes: int | None = None
+    scheduler: str | None = None
+
+
+@dataclass(frozen=True)
+class Swept:
+    """Axes, rows, what became of each row (in their order), how many were kept from before, and the folder."""
+
+    axes: tuple[Axis, ...]
+    rows: tuple[Row, ...]
+    facts: tuple[Mapping[str, Any], ...]
+    kept: int
+    folder: Path
+
+    @property
+    def table(self) -> list[dict[str, Any]]:
+        """A mapping of columns for each row: its number, the axes as given, what was found."""
+        pairs = zip(self.rows, self.facts, strict=True)
+        return [{"row": row.number, **row.settings, **row_columns(facts)} for row, facts in pairs]
+
+
+def sweep(
+    path: Path,
+    library_folder: Path | None,
+    outputs: Path,
+    question: SweepQuestion,
+    progress: Progress = lambda stage: None,
+) -> Swept:
+    """Work out every row of `question` on the brief, or the design, at `path`; write `outputs`/<name>-sweep.
+
+    Raises `PlanarError`. Rows done before an interruption stay in the store.
+    """
+    library = Library.open(library_folder)
+    axes = read_axes(question.vary)
+    check_plots(question.plots)
+    name, base = _base(path, library, question, progress)
+    folder = outputs / f"{name}-sweep"
+    check_destination(folder)
+    rows = sweep_rows(base, axes, str(path), library)
+    with row_store(question.store or outputs / STORE) as store:
+        found = _found(rows, name, library_folder, store, _Progressing(question, progress))
+    swept = Swept(axes, rows, found.facts, found.kept, folder)
+    progress("writing files")
+    with packed(folder) as fresh:
+        _write(swept, fresh, question.plots or PLOTTED)
+    return swept
+
+
+def _base(path: Path, library: Library, question: SweepQuestion, progress: Progress) -> tuple[str, Mapping[str, Any]]:
+    """Name and tables the rows start from; with the dimensions of a design where these stay."""
+    if path.suffix == ".json":
+        design = read_design(path, library)
+        return design.name, given_brief(json.loads(path.read_bytes()))
+    brief = read_brief(path, library)
+    if question.given and not brief.antenna.dimensions:
+        progress("sizing the board whose dimensions stay")
+        return brief.name, given_brief(design_facts(sized_design(brief, library, str(path))))
+    return brief.name, tomllib.loads(write_brief(brief))
+
+
+@dataclass(frozen=True)
+class _Progressing:
+    question: SweepQuestion
+    step: Progress
+
+    def work(self, tasks: Sequence[Task]) -> Generator[tuple[int, dict[str, Any]], None, None]:
+        """Index and facts of each task as it is done, here or on a cluster."""
+        if self.question.scheduler is not None and tasks:
+            return cluster_rows(row_facts, tasks, address=self.question.scheduler)
+        return local_rows(row_facts, tasks, processes=self.question.processes or cores())
+
+
+@dataclass(frozen=True)
+class _Found:
+    facts: tuple[Mapping[str, Any], ...]
+    kept: int
+
+
+def _found(rows: Sequence[Row], name: str, folder: Path | None, store: RowStore, progressing: _Progressing) -> _Found:
+    """Facts of every row, those in the store from there; equal rows are worked out once."""
+    library = Library.open(folder)
+    keys = [row_key(row.data, name, library) for row in rows]
+    known = {key: facts for key in dict.fromkeys(keys) if (facts := store.find(key)) is not None}
+    kept = len(known)
+    missing = list(dict.fromkeys(key for key in keys if key not in known))
+    progressing.step(f"{len(rows)} rows, {kept} known from before")
+    tasks = [(rows[keys.index(key)].data, name, folder) for key in missing]
+    with closing(progressing.work(tasks)) as done:
+        for count, (index, facts) in enumerate(done, start=1):
+            known[missing[index]] = facts
+            if facts["status"] != LOST:
+                store.keep(missing[index], facts)
+            progressing.step(
+                f"row {rows[keys.index(missing[index])].number} {facts['status']}, {count} of {len(tasks)}"
+            )
+    return _Found(tuple(known[key] for key in keys), kept)
+
+
+def _write(swept: Swept, folder: Path, plots: Sequence[str]) -> None:
+    """Tables for programs and people, and a plot for each quantity."""
+    table = swept.table
+    names = list(dict.fromkeys(name for row in table for name in row))
+    text = io.StringIO()
+    writer = csv.DictWriter(text, names, lineterminator="\n", restval="")
+    writer.writeheader()
+    writer.writerows(table)
+    (folder / "sweep.csv").write_bytes(text.getvalue().encode("utf-8"))
+    told = {
+        "axes": [{"key": axis.key, "values": list(axis.texts)} for axis in swept.axes],
+        "rows": [
+            {"row": row.number, "settings": dict(row.settings), **facts}
+            for row, facts in zip(swept.rows, swept.facts, strict=True)
+        ],
+    }
+    (folder / "sweep.json").write_bytes((json.dumps(told, indent=1, ensure_ascii=False) + "\n").encode("utf-8"))
+    _write_parquet(table, names, folder / "sweep.parquet")
+    write_sweep_plots(swept.axes, table, folder, plots)
+
+
+def _write_parquet(table: Sequence[Mapping[str, Any]], names: Sequence[str], path: Path) -> None:
+    """The table as Parquet where pyarrow is installed."""
+    try:
+        import pyarrow
+        import pyarrow.parquet
+    except ImportError:
+        return
+    columns = {name: [row.get(name) for row in table] for name in names}
+    pyarrow.parquet.write_table(pyarrow.table(columns), path)
