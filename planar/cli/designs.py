@@ -29,14 +29,18 @@ def new(name: Path, as_json: bool) -> None:
 @click.argument("brief", type=click.Path(path_type=Path))
 @outputs_option
 @sensitivities_option
+@click.option("--open", "opened", is_flag=True, help="Open the report in the browser.")
 @library_option
 @json_option
 @refusing
-def make(brief: Path, outputs: Path, sensitivities: bool, library_folder: Path | None, as_json: bool) -> None:
-    """Size, draw, check and write the pack for BRIEF."""
+def make(
+    brief: Path, outputs: Path, sensitivities: bool, opened: bool, library_folder: Path | None, as_json: bool
+) -> None:
+    """Size, draw, check and write the pack for BRIEF, with a report to decide from."""
     from planar.design.design_file import design_facts
     from planar.library import Library
     from planar.pipeline import designing
+    from planar.pipeline.reports import REPORT
     from planar.report import console
 
     with console.progress() as step:
@@ -46,6 +50,8 @@ def make(brief: Path, outputs: Path, sensitivities: bool, library_folder: Path |
         console.print_json(design_facts(made.design) | {"folder": str(made.folder)})
     else:
         console.print_design(made.design, made.folder)
+    if opened:
+        click.launch(str(made.folder / REPORT))
 
 
 @click.command()

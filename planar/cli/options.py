@@ -42,7 +42,7 @@ def refusing(command: Command) -> Command:
             click.echo("interrupted: nothing was written", err=True)
             sys.exit(130)
         except PlanarError as error:
-            click.echo(f"refused: {error}", err=True)
+            click.echo("\n".join([f"refused: {error}", *getattr(error, "__notes__", ())]), err=True)
             if kwargs.get("as_json"):
                 click.echo(json.dumps({"refused": error.facts()}, indent=2))
             sys.exit(1)

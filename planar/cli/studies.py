@@ -1,4 +1,4 @@
-"""Commands that look at many boards: sweep."""
+"""Commands that look at many boards: spread, sweep."""
 
 from __future__ import annotations
 
@@ -55,3 +55,41 @@ def sweep(
         console.print_json({"folder": str(swept.folder), "known_from_before": swept.kept, "rows": swept.table})
     else:
         study_console.print_sweep(swept.axes, swept.table, swept.folder)
+
+
+@click.command()
+@click.argument("design", metavar="DESIGN|BRIEF", type=click.Path(path_type=Path))
+@click.option("--samples", type=click.IntRange(100, 1_000_000), default=10_000, show_default=True, help="Boards drawn.")
+@click.option("--seed", type=int, default=1, show_default=True, help="Of the draw: the same seed, the same yield.")
+@click.option("--uncovered", is_flag=True, help="Half of the boards run without their cover.")
+@click.option("--recentre", is_flag=True, help="Move the dimensions to where most boards meet the brief.")
+@click.option("--write", type=click.Path(path_type=Path), help="Write the moved design as a brief; with --recentre.")
+@outputs_option
+@library_option
+@json_option
+@refusing
+def spread(
+    design: Path,
+    samples: int,
+    seed: int,
+    uncovered: bool,
+    recentre: bool,
+    write: Path | None,
+    outputs: Path,
+    library_folder: Path | None,
+    as_json: bool,
+) -> None:
+    """Tolerances of laminate, fab and surroundings: worst corners, yield, what dominates, and re-centring."""
+    if write is not None and not recentre:
+        raise click.UsageError("--write goes with --recentre")
+    from planar.library import Library
+    from planar.pipeline import spreading
+    from planar.report import console, study_console
+
+    question = spreading.SpreadQuestion(samples, seed, uncovered, recentre, write)
+    with console.progress() as step:
+        found = spreading.scatter(design, Library.open(library_folder), outputs, question, step)
+    if as_json:
+        console.print_json(found.facts | {"file": str(found.file)})
+    else:
+        study_console.print_spread(found.facts, found.file)

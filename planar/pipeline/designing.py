@@ -25,8 +25,11 @@ from planar.handoff import (
 from planar.library import Library
 from planar.network.touchstone import write_touchstone
 from planar.pipeline.packs import check_pack, write_pack
+from planar.pipeline.reports import write_pack_report, write_refusal
 
 Progress = Callable[[str], None]
+REFUSED = "-refused"
+"""End of the folder a refusal's page is written to."""
 
 
 @dataclass(frozen=True)
@@ -55,13 +58,20 @@ def make(
 ) -> Made:
     """The main job: brief in, pack out, at `outputs`/<name>, on wish with the table of sensitivities.
 
-    Raises `PlanarError`; nothing is then left behind.
+    Raises `PlanarError`; nothing is then left behind but, for a design that is refused, the page that says why, at
+    `outputs`/<name>-refused; a note of the exception names it.
     """
     progress("reading the brief")
     brief = read_brief(brief_path, library)
     folder = outputs / brief.name
     check_destination(folder)
-    design = _designed(brief, library, brief_path, progress)
+    try:
+        design = _designed(brief, library, brief_path, progress)
+    except SynthesisError as error:
+        text = brief_path.read_bytes().decode("utf-8-sig")
+        page = write_refusal(error, text, outputs / f"{brief.name}{REFUSED}")
+        error.add_note(f"as a page: {page}")
+        raise
     if sensitive:
         design = _with_sensitivities(design, progress)
     progress("writing files")
@@ -69,6 +79,8 @@ def make(
         write_pack(design, fresh)
         progress("reading the files back")
         check_pack(design, fresh)
+        progress("drawing the report")
+        write_pack_report(fresh, library)
     return Made(design, folder)
 
 

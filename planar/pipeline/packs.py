@@ -11,6 +11,7 @@ import numpy as np
 from planar.brief import write_brief
 from planar.design.design import Design
 from planar.design.design_file import design_facts
+from planar.design.portrait_file import write_portrait
 from planar.design.prediction import Prediction
 from planar.handoff import (
     FabricationFacts,
@@ -42,6 +43,8 @@ def write_pack(design: Design, folder: Path) -> None:
     (folder / "design.json").write_bytes(summary.encode("utf-8"))
     if design.prediction is not None:
         _write_prediction(design, design.prediction, folder)
+    if design.portrait is not None:
+        write_portrait(design.portrait, folder / "field.json")
 
 
 def _write_prediction(design: Design, prediction: Prediction, folder: Path) -> None:

@@ -22,6 +22,9 @@ from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_key
 from planar.design.workers import cores
 from planar.handoff import check_destination, packed
 from planar.library import Library
+from planar.report.page import write_report
+from planar.report.sweep_facts import asked_levels
+from planar.report.sweep_page import sweep_page
 from planar.report.sweep_plot import PLOTTED, check_plots, write_sweep_plots
 
 Progress = Callable[[str], None]
@@ -154,7 +157,9 @@ def _write(swept: Swept, folder: Path, plots: Sequence[str]) -> None:
     }
     (folder / "sweep.json").write_bytes((json.dumps(told, indent=1, ensure_ascii=False) + "\n").encode("utf-8"))
     _write_parquet(table, names, folder / "sweep.parquet")
-    write_sweep_plots(swept.axes, table, folder, plots)
+    write_sweep_plots(swept.axes, table, folder, plots, asked=asked_levels(told["rows"]))
+    name = swept.folder.name.removesuffix("-sweep")
+    write_report(sweep_page(swept.axes, told["rows"], name=name, plots=plots), folder / "sweep.html")
 
 
 def _write_parquet(table: Sequence[Mapping[str, Any]], names: Sequence[str], path: Path) -> None:

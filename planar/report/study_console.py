@@ -44,3 +44,80 @@ def _cell(row: Mapping[str, Any], name: str) -> str:
         return f"{value:.1f}" if name.endswith(("_mm", "_percent")) else f"{value:.2f}"
     text = "" if value is None else str(value)
     return f"{text[:REASON]} ..." if len(text) > REASON else text
+
+
+def print_spread(facts: Mapping[str, Any], file: Path) -> None:
+    """Print yield, what is typical, worst corners, contributors, and what re-centring brought."""
+    console = terminal()
+    console.print(text_table((f"{facts['name']}, {facts['samples']} boards", ""), _yield_rows(facts)))
+    console.print(text_table(("percentile", *(f"{p:g} %" for p in facts["percentiles"]["at_percent"])), _ranges(facts)))
+    console.print(text_table(("share of variance", "match %", "frequency %", "axial ratio %"), _shares(facts)))
+    corners = [(corner["name"], _result(corner["solved"]), _result(corner["modelled"])) for corner in facts["corners"]]
+    console.print(text_table(("worst corner", "solved", "by the model"), corners))
+    error = facts["model_error"]
+    if error is not None:
+        console.print(
+            f"model against {error['boards_checked']} boards drawn afresh and solved: reflection within "
+            f"{error['reflection']:.3f}, in the band {error['reflection_in_band']:.3f}",
+            highlight=False,
+        )
+    not_varied = ", ".join(each["what"] for each in facts["not_varied"])
+    console.print(f"not varied: {not_varied}", highlight=False)
+    if "recentred" in facts:
+        _print_recentred(facts["recentred"])
+    console.print(f"written to {file}", highlight=False, soft_wrap=True)
+
+
+def _yield_rows(facts: Mapping[str, Any]) -> list[tuple[str, str]]:
+    told = facts["yield"]
+    low, high = told["total_95_percent"]
+    bad, good = told["total_if_model_errs"]
+    rows = [
+        ("yield", f"{_percent(told['total'])}, 95 % sure of {_percent(low)} to {_percent(high)}"),
+        ("were the model off by its error", f"{_percent(bad)} to {_percent(good)}"),
+        ("match alone", _percent(told["match"])),
+    ]
+    return rows if told["axial_ratio"] is None else [*rows, ("axial ratio alone", _percent(told["axial_ratio"]))]
+
+
+def _ranges(facts: Mapping[str, Any]) -> list[tuple[str, ...]]:
+    names = {
+        "worst_reflection_db": "worst reflection, dB",
+        "shift_percent": "shift of the response, %",
+        "worst_axial_ratio_db": "worst axial ratio, dB",
+    }
+    found = [(words, facts["percentiles"][name]) for name, words in names.items()]
+    return [(words, *(f"{value:.2f}" for value in values)) for words, values in found if values is not None]
+
+
+def _shares(facts: Mapping[str, Any]) -> list[tuple[str, str, str, str]]:
+    keys = ("match_share", "frequency_share", "axial_ratio_share")
+    rows = [(each["name"], *(each[key] for key in keys)) for each in facts["contributors"]]
+    rows.append(("only together", *(facts["interactions"][key] for key in keys)))
+    return [
+        (name, *("" if share is None else f"{100.0 * share:.1f}" for share in shares))  # type: ignore[misc]
+        for name, *shares in rows
+    ]
+
+
+def _result(result: Mapping[str, Any] | None) -> str:
+    if result is None:
+        return "cannot be made"
+    axial = result["worst_axial_ratio_db"]
+    ratio = "" if axial is None else f", axial ratio {axial:.2f} dB"
+    return f"{result['worst_reflection_db']:.1f} dB, shift {result['shift_percent']:+.2f} %{ratio}"
+
+
+def _print_recentred(facts: Mapping[str, Any]) -> None:
+    console = terminal()
+    rows = [(name, f"{old:.3f}", f"{new:.3f}") for name, (old, new) in facts["changes_mm"].items()]
+    if rows:
+        console.print(text_table(("re-centred", "was mm", "is mm"), rows, right=(1, 2)))
+    console.print(
+        f"yield {_percent(facts['yield_before'])} before, {_percent(facts['yield_after'])} after; {facts['remark']}",
+        highlight=False,
+    )
+
+
+def _percent(share: float) -> str:
+    return f"{100.0 * share:.2f} %"
