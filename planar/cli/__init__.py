@@ -14,6 +14,7 @@ import click
 from planar import __version__
 from planar.cli.designs import make, new, size, solve
 from planar.cli.making import coupon, panel
+from planar.cli.measured import retune
 from planar.cli.pages import compare, report
 from planar.cli.studies import spread, sweep
 from planar.cli.tables import lines, show_library
@@ -30,5 +31,5 @@ def main() -> None:
         sys.stdout.reconfigure(errors="backslashreplace")
 
 
-for _command in (new, make, size, solve, panel, coupon, report, compare, spread, sweep, lines, show_library):
+for _command in (new, make, size, solve, panel, coupon, report, compare, spread, sweep, retune, lines, show_library):
     main.add_command(_command)

@@ -62,7 +62,7 @@ def scatter(
     Raises `PlanarError`; nothing is then left behind.
     """
     source = design_file(path)
-    design = _solved(source, library, progress)
+    design = solved_design(source, library, progress)
     request = SpreadRequest(question.samples, question.seed, uncovered=question.uncovered)
     with workers() as shared:
         found = spread(design, shared, request, progress)
@@ -82,8 +82,9 @@ def scatter(
     return Scattered(design, found, moved, folder / SPREAD)
 
 
-def _solved(source: Path, library: Library, progress: Progress) -> Design:
-    """The design with its prediction: sized from a brief, or solved anew with the dimensions it has."""
+def solved_design(source: Path, library: Library, progress: Progress) -> Design:
+    """The design with its prediction: sized from the brief at `source`, or that of a design.json solved anew with the
+    dimensions it has. Raises `PlanarError`."""
     if source.suffix != ".json":
         return sized_design(read_brief(source, library), library, str(source), progress)
     read_design(source, library)  # refuses a file that was changed

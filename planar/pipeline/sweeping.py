@@ -140,7 +140,7 @@ def _found(rows: Sequence[Row], name: str, folder: Path | None, store: RowStore,
 
 
 def _write(swept: Swept, folder: Path, plots: Sequence[str]) -> None:
-    """Tables for programs and people, and a plot for each quantity."""
+    """Tables for programs and people, a plot for each quantity, and the page."""
     table = swept.table
     names = list(dict.fromkeys(name for row in table for name in row))
     text = io.StringIO()

@@ -1,0 +1,138 @@
+"""`planar retune`: a measured board in, what happened and what to change out."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from planar.brief import write_brief
+from planar.design.option_reader import OptionReader
+from planar.design.retune.batch import LearntLaminate, learnt_laminate
+from planar.design.retune.facts import retune_facts
+from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, corrected_brief, retune
+from planar.design.retune.unknowns import Plane, coax_delay, plane_of_standards, stated_plane, unstated_plane
+from planar.design.workers import workers
+from planar.errors import HandoffError, PlanarError, SynthesisError
+from planar.handoff import packed
+from planar.library import Library
+from planar.network.measured import Measured, read_measured
+from planar.pipeline.board_files import design_file
+from planar.pipeline.spreading import solved_design
+
+Progress = Callable[[str], None]
+LONGEST = 2.0
+"""m of coax that may be stated to lie in front."""
+
+
+@dataclass(frozen=True)
+class RetuneQuestion:
+    """What is known beside the measured sweep: length of coax in front as a text, files of short, open and perhaps
+    load measured in the antenna's place, a second sweep; where to write the next brief, and the user's library folder
+    that learns the laminate."""
+
+    extension: str | None = None
+    standards: tuple[Path, ...] = ()
+    second: Path | None = None
+    write: Path | None = None
+    learn: Path | None = None
+
+
+@dataclass(frozen=True)
+class Retuning:
+    """A design, what its measurement says, and the folder of the results; `learnt` where the laminate was kept."""
+
+    retuned: Retuned
+    folder: Path
+    learnt: LearntLaminate | None
+
+    @property
+    def facts(self) -> dict[str, Any]:
+        """What retune.json and `--json` say."""
+        return retune_facts(self.retuned)
+
+
+def retune_board(
+    path: Path,
+    file: Path,
+    library: Library,
+    outputs: Path,
+    question: RetuneQuestion,
+    progress: Progress = lambda stage: None,
+) -> Retuning:
+    """Explain the sweep in `file`, measured on a board of the design at `path`, and say what to change.
+
+    Writes `outputs`/<name>-retune: retune.json, the next brief. Raises `PlanarError`; nothing is then left behind.
+    """
+    source = design_file(path)
+    progress("reading the measurement")
+    request, measured = _request(question, read_measured(file))
+    _check_new(question.write)
+    design = solved_design(source, library, progress)
+    with workers() as shared:
+        found = retune(design, measured, shared, request, progress)
+    brief = write_brief(corrected_brief(design, found.advice.best.dimensions, library))
+    learnt = None
+    if question.learn is not None:
+        learnt = learnt_laminate(found.inferred, design.name, _digest(source))
+    folder = outputs / f"{design.name}-retune"
+    with packed(folder) as fresh:
+        told = json.dumps(retune_facts(found), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+        (fresh / "retune.json").write_bytes(told.encode("utf-8"))
+        (fresh / "next.toml").write_bytes(brief.encode("utf-8"))
+    if question.write is not None:
+        _write_new(brief, question.write)
+    if question.learn is not None and learnt is not None:
+        _keep(learnt, question.learn)
+    return Retuning(found, folder, learnt)
+
+
+def _request(question: RetuneQuestion, measured: Measured) -> tuple[RetuneRequest, Measured]:
+    """What is known of the plane, and the sweep with standards taken off where they were measured."""
+    second = None if question.second is None else read_measured(question.second)
+    if not question.standards:
+        return RetuneRequest(_stated(question), second), measured
+    standards = [read_measured(each) for each in question.standards]
+    behind = behind_standards(measured, *standards)
+    return RetuneRequest(plane_of_standards(), None if second is None else behind_standards(second, *standards)), behind
+
+
+def _stated(question: RetuneQuestion) -> Plane:
+    if question.extension is None:
+        return unstated_plane()
+    reader = OptionReader()
+    length = reader.read("extension", question.extension, "length", (0.0, LONGEST))
+    reader.raise_faults()
+    return stated_plane(coax_delay(length))
+
+
+def _digest(source: Path) -> str:
+    """Hash of the design, none where dimensions come from a brief."""
+    return str(json.loads(source.read_bytes())["hash"]) if source.suffix == ".json" else "none"
+
+
+def _check_new(path: Path | None) -> None:
+    if path is not None and path.exists():
+        raise HandoffError(f"{path} exists already: choose another name or remove it")
+
+
+def _write_new(text: str, path: Path) -> None:
+    try:
+        with path.open("x", encoding="utf-8") as file:
+            file.write(text)
+    except OSError as error:
+        raise HandoffError(f"cannot write {path}: {error.strerror}") from error
+
+
+def _keep(learnt: LearntLaminate, folder: Path) -> None:
+    """Write the laminate into the user's library `folder`; an earlier one of the same board is replaced."""
+    try:
+        (folder / "laminates").mkdir(parents=True, exist_ok=True)
+        (folder / "laminates" / f"{learnt.key}.toml").write_bytes(learnt.text.encode("utf-8"))
+        Library.open(folder).laminate(learnt.key)
+    except OSError as error:
+        raise HandoffError(f"cannot write into {folder}: {error.strerror}") from error
+    except PlanarError as error:
+        raise SynthesisError(f"what was learnt is no laminate: {error}") from error
