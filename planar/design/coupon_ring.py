@@ -91,7 +91,7 @@ def _columns(frequency: Array, centre: float, q: float) -> Complex:
 def _linear(frequency: Array, s: Complex, centre: float, q: float) -> tuple[Complex, Complex]:
     """Coefficients and residual of the linear part."""
     columns = _columns(frequency, centre, q)
-    found = np.linalg.lstsq(columns, s, rcond=None)[0]
+    found = np.asarray(np.linalg.lstsq(columns, s, rcond=None)[0], dtype=np.complex128)
     return found, s - columns @ found
 
 

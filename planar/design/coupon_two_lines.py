@@ -62,7 +62,8 @@ class LineFit:
 
 def extra_length(short: Response, long: Response) -> Complex:
     """exp(+-gamma dl) as the pair of eigenvalues (n, 2) of T_long T_short^-1 at every frequency."""
-    return np.linalg.eigvals(_transmission(long.s) @ np.linalg.inv(_transmission(short.s)))
+    found = np.linalg.eigvals(_transmission(long.s) @ np.linalg.inv(_transmission(short.s)))
+    return np.asarray(found, dtype=np.complex128)
 
 
 def fit_lines(short: Response, long: Response, line: BareLine, difference: float, model: WidebandDebye) -> LineFit:
@@ -91,7 +92,7 @@ def fit_lines(short: Response, long: Response, line: BareLine, difference: float
         return left
 
     stride = max(1, len(frequency) // _SCAN_POINTS)
-    logs = np.linspace(*np.log(SCALES), _SCAN)
+    logs = np.linspace(math.log(SCALES[0]), math.log(SCALES[1]), _SCAN)
     start = min(logs, key=lambda log: float(np.sum(np.abs(residual(np.array([log, tan_d]), stride)) ** 2)))
     fit = least_squares(lambda unknowns: _split(residual(unknowns)), [float(start), tan_d], x_scale=0.01, method="lm")
     left = residual(fit.x)
@@ -129,8 +130,8 @@ class _ExtraLength:
     def exponent(self, scale: float, tan_d: float) -> Complex:
         """gamma dl (n,) on a laminate of `scale` times the nominal permittivity."""
         wavenumber, dielectric = self._wave(scale)
-        result: Complex = (self.conductor + tan_d * dielectric + 1j * wavenumber) * self.difference
-        return result
+        exponent = (self.conductor + tan_d * dielectric + 1j * wavenumber) * self.difference
+        return np.asarray(exponent, dtype=np.complex128)
 
     @property
     def conductor_share(self) -> float:

@@ -18,6 +18,7 @@ from planar.design.first_order import DETAILS, first_dimensions, given_dimension
 from planar.design.line_size import DesignLine, design_lines, line_settings
 from planar.design.loop_size import FORMULA_ERROR, LoopEstimate
 from planar.design.nearest import nearest_changes
+from planar.design.portrait import Portrait
 from planar.design.prediction import Prediction
 from planar.design.sensitivity import Sensitivity
 from planar.design.sizing_record import SizingRecord
@@ -40,7 +41,8 @@ class Design:
     `dimensions` name -> m; `bare_loop` is the first-order resonance of the loop alone, None where given dimensions
     are outside the formulas and where the field solver has sized it. `prediction` is what the solver says of the copper
     and `sizing` how it came to be, both None for a first-order design; `sensitivities` are empty unless asked for,
-    `cuts` unless the brief has trim tabs.
+    `cuts` unless the brief has trim tabs. `portrait` is what goes with a prediction to be looked at; it has a file of
+    its own.
     """
 
     choices: Choices
@@ -55,6 +57,7 @@ class Design:
     sensitivities: tuple[Sensitivity, ...] = ()
     asked: Brief | None = None
     cuts: tuple[Cut, ...] = ()
+    portrait: Portrait | None = None
 
     @property
     def brief(self) -> Brief:

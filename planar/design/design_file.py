@@ -21,12 +21,13 @@ from planar.copper.layout import Hole, Layout
 from planar.design.design import Design, make_design
 from planar.design.equivalent import circuit_facts
 from planar.design.line_size import DesignLine
-from planar.design.prediction import prediction_facts
+from planar.design.prediction import AXIAL_RATIO_DB, prediction_facts
 from planar.design.sensitivity import Sensitivity
 from planar.design.sizing_record import Candidate, SizingRecord
 from planar.design.trim import Cut
 from planar.errors import BriefError, Fault
 from planar.library import Library
+from planar.stackup import Layer, loss_tangent
 
 COMPUTED = ("prediction", "circuit", "sizing", "sensitivities", "cuts")
 """What the field solver says: its last digits are those of this or that machine."""
@@ -50,7 +51,10 @@ def design_facts(design: Design) -> dict[str, Any]:
         "connector": choices.connector.key,
         "fab": choices.fab.key,
         "band_hz": list(choices.brief.target.band),
+        "target": _target_facts(design),
         "dimensions_mm": {name: round(value * 1e3, 6) for name, value in design.dimensions.items()},
+        "dimension_meanings": {name: choices.family.meaning(name) for name in design.dimensions},
+        "dimension_tolerances_mm": _tolerances_mm(design),
         "board_mm": [round(side * 1e3, 6) for side in design.layout.size],
         "mean_line_mm": design.perimeter * 1e3,
         "first_order": _first_order_facts(design),
@@ -64,6 +68,8 @@ def design_facts(design: Design) -> dict[str, Any]:
         "copper": _copper_facts(design.layout),
         "holes": [_hole_facts(hole) for hole in design.layout.holes],
         "dc_short": design.layout.dc_short,
+        "layers": [_layer_facts(layer, choices.centre) for layer in choices.stackup.layers],
+        "sources": _source_facts(design),
         "assumptions": list(choices.reasons),
         "findings": [asdict(finding) for finding in design.findings],
     }
@@ -104,10 +110,10 @@ def read_design(path: Path, library: Library) -> Design:
     if facts["hash"] != _digest(facts):
         expected = "the file as planar wrote it: to change dimensions write a brief with [antenna.dimensions]"
         raise _no_design(path, "hash", f'"{facts["hash"]}"', expected)
-    return make_design(check_brief(_given(facts), str(path), library), library, str(path))
+    return make_design(check_brief(given_brief(facts), str(path), library), library, str(path))
 
 
-def _given(facts: Mapping[str, Any]) -> dict[str, Any]:
+def given_brief(facts: Mapping[str, Any]) -> dict[str, Any]:
     """The brief of a design with the family chosen and the dimensions found in their places."""
     brief: dict[str, Any] = dict(facts["brief"])
     kept = {k: v for k, v in brief.get("antenna", {}).items() if k not in {"trace_width", "corner_radius"}}
@@ -119,6 +125,54 @@ def _given(facts: Mapping[str, Any]) -> dict[str, Any]:
 
 def _no_design(path: Path, key: str, value: str, expected: str) -> BriefError:
     return BriefError([Fault(str(path), key, value, expected)])
+
+
+def _target_facts(design: Design) -> dict[str, Any]:
+    """What the brief asks, as numbers."""
+    target = design.choices.brief.target
+    return {
+        "impedance_ohm": target.impedance,
+        "match_db": target.match_db,
+        "axial_ratio_db": AXIAL_RATIO_DB if design.choices.circular else None,
+        "transmit": target.transmit,
+        "power_w": target.power,
+    }
+
+
+def _tolerances_mm(design: Design) -> dict[str, float | None]:
+    """How far etching or drilling may move each dimension either way, mm; None where neither moves it: a mean line
+    stays where the artwork has it, since its two edges move in opposite directions."""
+    choices = design.choices
+    edges = choices.family.etched(choices.traits)
+    reach = {name: abs(edges.get(name, 0)) * choices.fab.etch_tolerance for name in design.dimensions}
+    reach |= {name: choices.fab.hole_tolerance for name in reach if name.endswith("_drill")}
+    return {name: round(value * 1e3, 6) or None for name, value in reach.items()}
+
+
+def _layer_facts(layer: Layer, frequency: float) -> dict[str, Any]:
+    """A layer, its permittivity at `frequency` Hz; None for what it does not have. Tolerances are fractions."""
+    eps_r = None if layer.model is None else layer.permittivity(frequency)
+    return {
+        "name": layer.name,
+        "kind": layer.kind.value,
+        "material": layer.material,
+        "thickness_mm": round(layer.thickness * 1e3, 6),
+        "thickness_tolerance": layer.thickness_tolerance,
+        "eps_r": None if eps_r is None else _rounded(eps_r.real),
+        "eps_r_tolerance": None if eps_r is None else layer.eps_r_tolerance,
+        "loss_tangent": None if eps_r is None else _rounded(loss_tangent(eps_r)),
+        "loss_tangent_tolerance": None if eps_r is None else layer.tan_d_tolerance,
+    }
+
+
+def _source_facts(design: Design) -> dict[str, dict[str, str]]:
+    """Where the numbers of the library come from: kind of entry -> key in it -> source."""
+    choices = design.choices
+    return {
+        "laminate": dict(choices.laminate.sources),
+        "fab": dict(choices.fab.sources),
+        "connector": dict(choices.connector.sources),
+    }
 
 
 def _sensitivity_facts(each: Sensitivity) -> dict[str, Any]:

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from planar.design.choices import Choices
 from planar.design.first_order import loop_shape
 from planar.design.line_size import LineSettings, line_settings
-from planar.network.circuit import Circuit, LineSection, OpenEnd
+from planar.network.circuit import Branch, Circuit, Coupling, CouplingCapacitor, DcBranch, LineSection, OpenEnd
 from planar.network.circuit_fit import CircuitShape, fit_circuit
 from planar.units import SPEED_OF_LIGHT
 
@@ -78,6 +78,38 @@ def circuit_facts(circuit: Circuit) -> dict[str, Any]:
         "worst_reflection_error": circuit.deviation,
         "span_hz": list(circuit.span),
     }
+
+
+def circuit_of(facts: Mapping[str, Any]) -> Circuit:
+    """The circuit that `circuit_facts` told; lines without loss, as told."""
+    coupling: Coupling | None = None
+    told, dc = facts["coupling"], facts["dc"]
+    if told is not None:
+        whole = "capacitance_f" in told
+        coupling = CouplingCapacitor(told["capacitance_f"]) if whole else OpenEnd(_line_of(told))
+    modes = tuple(
+        Branch(
+            mode["name"],
+            mode["resistance_ohm"],
+            mode["inductance_h"],
+            mode["capacitance_f"],
+            mode["resistance_across_inductance_ohm"] or math.inf,
+        )
+        for mode in facts["modes"]
+    )
+    return Circuit(
+        tuple(_line_of(line) for line in facts["lines"]),
+        coupling,
+        dc and DcBranch(dc["resistance_ohm"], dc["inductance_h"]),
+        modes,
+        facts["static_capacitance_f"],
+        deviation=facts["worst_reflection_error"],
+        span=(facts["span_hz"][0], facts["span_hz"][1]),
+    )
+
+
+def _line_of(facts: Mapping[str, float]) -> LineSection:
+    return LineSection(facts["impedance_ohm"], facts["delay_s"])
 
 
 def _line_facts(line: LineSection) -> dict[str, float]:

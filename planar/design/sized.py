@@ -19,6 +19,8 @@ from planar.design.candidates import Ranked, rank
 from planar.design.choices import Choices
 from planar.design.design import Design, connector_impedance, make_design
 from planar.design.line_size import design_lines, line_settings
+from planar.design.portrait import portrait
+from planar.design.portrait_modes import loop_modes
 from planar.design.prediction import Prediction, predict, unmet, wide_response
 from planar.design.sizing import Sized, Verified, size_coarsely, size_finely, verifying_effort
 from planar.design.sizing_record import Candidate, SizingRecord
@@ -93,6 +95,7 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
     solutions = coarse.solutions + fine.sized.solutions
     record = SizingRecord(coarse.boards, fine.sized.boards, solutions, fine.sized.width, fine.held, candidates)
     progress("predicting")
+    modes = coarse.bench.workers.beside(loop_modes, (choices, trial.dimensions))
     same = trial.dimensions == coarse.rounded
     prediction = predict(choices, trial, early() if same else wide_response((choices, trial.dimensions)))
     rules = (*trial.planned.findings, *fab_findings(trial.planned.layout, choices.fab, choices.brief.board.size_limit))
@@ -122,6 +125,7 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
         prediction=prediction,
         sizing=record,
         cuts=cuts,
+        portrait=portrait(choices, trial, centre=prediction.centre, span=prediction.trusted, modes=modes()),
     )
 
 
@@ -131,8 +135,10 @@ def _analysed(design: Design, progress: Progress) -> Design:
     progress("solving the given dimensions")
     with workers() as shared:
         wide = shared.beside(wide_response, (choices, design.dimensions))
+        modes = shared.beside(loop_modes, (choices, design.dimensions))
         trial = solve_trial(choices, design.dimensions, verifying_effort(choices))
         prediction = predict(choices, trial, wide())
+        shown = portrait(choices, trial, centre=prediction.centre, span=prediction.trusted, modes=modes())
         cuts = _cuts(choices, design.dimensions, shared, progress)
     said = (
         *unmet(choices, prediction, Severity.WARN),
@@ -140,7 +146,7 @@ def _analysed(design: Design, progress: Progress) -> Design:
         *_trimming(cuts, asked=choices.brief.antenna.trim),
     )
     kept = [f for f in design.findings if f.rule not in {"match", "resonance", "polarisation", "axial ratio"}]
-    return replace(design, findings=(*said, *kept), prediction=prediction, cuts=cuts)
+    return replace(design, findings=(*said, *kept), prediction=prediction, cuts=cuts, portrait=shown)
 
 
 def _cuts(choices: Choices, dimensions: Mapping[str, float], shared: Workers, progress: Progress) -> tuple[Cut, ...]:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -16,6 +17,7 @@ from planar.design.design_file import read_design
 from planar.design.equivalent import circuit_of
 from planar.design.portrait import Portrait
 from planar.design.portrait_file import read_portrait
+from planar.design.spread_facts import read_spread
 from planar.errors import BriefError, Fault, PlanarError
 from planar.handoff import file_hashes, is_pack, packed, renewed
 from planar.library import Library
@@ -30,21 +32,23 @@ from planar.report.dimension_marks import board_marks
 from planar.report.page import report_page, write_report
 from planar.report.page_facts import page_facts
 from planar.report.plots import portrait_plots, response_plots
+from planar.report.plots_polar import peak_gain
 from planar.report.refusal_page import refusal_page
+from planar.report.spread_pictures import spread_envelope, spread_pictures
 from planar.report.stackup_picture import stackup_picture
 
 Progress = Callable[[str], None]
 REPORT, FIELD, RESPONSE, SPREAD = "report.html", "field.json", "antenna.s1p", "spread.json"
 """Names in a pack: the page, what only the field solution knows, the predicted reflection, how made boards scatter."""
-COMPARED = ("reflection", "board_top", "board_bottom", "cut-0")
+COMPARED = ("reflection", "board_top", "board_top-narrow", "board_bottom", "board_bottom-narrow", "cut-0")
 """Pictures a comparison shows of each design."""
 
 
 def write_pack_report(folder: Path, library: Library) -> None:
     """Write report.html from the files of the pack in `folder`. Raises `PlanarError`."""
-    facts, pictures = _told(folder / DESIGN, library)
+    told = _told(folder / DESIGN, library)
     files = {name: digest for name, digest in file_hashes(folder).items() if name != REPORT}
-    write_report(report_page(facts, pictures, files), folder / REPORT)
+    write_report(report_page(told.facts, told.pictures, files, told.spread, told.peak_gain_dbi), folder / REPORT)
 
 
 def report(path: Path, library: Library, progress: Progress = lambda stage: None) -> Path:
@@ -70,8 +74,8 @@ def compare(paths: Sequence[Path], library: Library, target: Path, progress: Pro
     for path in paths:
         progress(f"reading {path}")
         told.append(_told(design_file(path), library))
-    shown = [{name: each for name, each in pictures.items() if name in COMPARED} for _, pictures in told]
-    write_report(compare_page([facts for facts, _ in told], shown), target)
+    shown = [{name: each for name, each in one.pictures.items() if name in COMPARED} for one in told]
+    write_report(compare_page([one.facts for one in told], shown), target)
     return target
 
 
@@ -82,21 +86,45 @@ def write_refusal(error: PlanarError, brief_text: str, folder: Path) -> Path:
     return folder / REPORT
 
 
-def _told(source: Path, library: Library) -> tuple[dict[str, Any], dict[str, str]]:
-    """Facts and pictures of the design in the file `source` and the files beside it."""
+@dataclass(frozen=True)
+class _Told:
+    """What the files of a pack tell: content of design.json, pictures, the spread if there is one, the largest gain."""
+
+    facts: dict[str, Any]
+    pictures: dict[str, str]
+    spread: dict[str, Any] | None
+    peak_gain_dbi: float | None
+
+
+def _told(source: Path, library: Library) -> _Told:
+    """What the design in the file `source` and the files beside it tell."""
     design = read_design(source, library)
     facts = json.loads(source.read_bytes())
     field, response = source.with_name(FIELD), source.with_name(RESPONSE)
-    pictures = _board_pictures(design)
+    spread = _spread(source.with_name(SPREAD), facts["hash"])
+    pictures, peak = _board_pictures(design), None
     if facts["prediction"] is not None and response.is_file():
-        pictures |= response_plots(facts, read_touchstone(response))
+        cloud = None if spread is None else spread_envelope(spread)
+        pictures |= response_plots(facts, read_touchstone(response), cloud)
         pictures["circuit"] = circuit_picture(circuit_of(facts["circuit"]), design.choices.centre)
     if field.is_file():
-        pictures |= _field_pictures(facts, read_portrait(field))
+        portrait = read_portrait(field)
+        pictures |= _field_pictures(facts, portrait)
+        peak = peak_gain(portrait)
     bars = _sensitivity_bars(facts)
     if bars:
         pictures["sensitivities"] = ranked_bars(bars, f"{design.name}: shift by the tolerance of each")
-    return facts, pictures
+    if spread is not None:
+        pictures |= spread_pictures(spread)
+    return _Told(facts, pictures, spread, peak)
+
+
+def _spread(path: Path, digest: str) -> dict[str, Any] | None:
+    """The spread in the file `path`, where there is one and it is that of the design with the hash `digest`."""
+    if not path.is_file():
+        return None
+    spread = read_spread(path)
+    return spread if spread.get("design_hash") == digest else None
 
 
 def _board_pictures(design: Design) -> dict[str, str]:

@@ -72,8 +72,9 @@ def scatter(
     progress("writing files")
     pack = source.absolute().parent
     if source.name == DESIGN and is_pack(pack):
+        told = spread_facts(found) | {"design_hash": json.loads(source.read_bytes())["hash"]}
         with renewed(pack) as fresh:
-            write_spread(spread_facts(found), fresh / SPREAD)
+            write_spread(told, fresh / SPREAD)
             write_pack_report(fresh, library)
         return Scattered(design, found, moved, source.parent / SPREAD)
     folder = outputs / f"{design.name}-spread"

@@ -94,10 +94,7 @@ def _shares(facts: Mapping[str, Any]) -> list[tuple[str, str, str, str]]:
     keys = ("match_share", "frequency_share", "axial_ratio_share")
     rows = [(each["name"], *(each[key] for key in keys)) for each in facts["contributors"]]
     rows.append(("only together", *(facts["interactions"][key] for key in keys)))
-    return [
-        (name, *("" if share is None else f"{100.0 * share:.1f}" for share in shares))  # type: ignore[misc]
-        for name, *shares in rows
-    ]
+    return [(name, *("" if share is None else f"{100.0 * share:.1f}" for share in shares)) for name, *shares in rows]
 
 
 def _result(result: Mapping[str, Any] | None) -> str:

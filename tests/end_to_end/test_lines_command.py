@@ -8,7 +8,6 @@ import io
 import json
 import math
 import re
-import shutil
 import subprocess
 import sys
 import xml.etree.ElementTree as ET
@@ -337,13 +336,16 @@ def test_own_library_comes_first(own_library: Path) -> None:
 
 
 def test_make_uses_the_own_library(own_library: Path, tmp_path: Path) -> None:
+    """With given dimensions, which are not sized: where a laminate comes from does not depend on that."""
     brief = tmp_path / "b.toml"
-    shutil.copy(TEMPLATES.parent / "examples" / "greenhouse-telemetry.toml", brief)
-    text = brief.read_text(encoding="utf-8").replace("fr4-high-tg", "shelf-sheet")
-    brief.write_text(text, encoding="utf-8")
-    planar("make", brief, "--outputs", tmp_path / "out", expect=1)
+    text = (TEMPLATES.parent / "examples" / "workshop-loop.toml").read_text(encoding="utf-8")
+    own = re.sub(r"^laminate = .*$", 'laminate = "shelf-sheet"', text, flags=re.MULTILINE)
+    assert own != text
+    brief.write_text(own, encoding="utf-8")
+    refused = planar("make", brief, "--outputs", tmp_path / "out", expect=1)
+    assert "shelf-sheet" in refused.stderr
     planar("make", brief, "--outputs", tmp_path / "out", "--library", own_library)
-    assert "shelf-sheet" in (tmp_path / "out" / "greenhouse-telemetry" / "brief.toml").read_text(encoding="utf-8")
+    assert "shelf-sheet" in (tmp_path / "out" / "workshop-loop" / "brief.toml").read_text(encoding="utf-8")
 
 
 @pytest.mark.parametrize("given", ["pump-house", "pump-house.toml", "Pumpe Süd 2"])

@@ -12,7 +12,6 @@ import re
 import shutil
 import subprocess
 import sys
-import time
 import tomllib
 from pathlib import Path
 
@@ -56,41 +55,6 @@ REPEATED = {"greenhouse-telemetry", "orchard-gateway", "workshop-loop"}
 """Examples made a second time: one level, two levels, given dimensions."""
 
 
-def shared(factory: pytest.TempPathFactory) -> Path:
-    """A folder all processes of this test run share."""
-    own = factory.getbasetemp()
-    return own.parent if "PYTEST_XDIST_WORKER" in os.environ else own
-
-
-@pytest.fixture(scope="module", params=BRIEFS, ids=lambda path: path.stem)
-def pack(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """The pack of one example, made from another folder, once for all processes."""
-    elsewhere = shared(tmp_path_factory) / "elsewhere" / request.param.stem
-    printed = elsewhere / "printed.txt"
-    elsewhere.parent.mkdir(exist_ok=True)
-    try:
-        elsewhere.mkdir()
-    except FileExistsError:
-        wait_for(printed)
-    else:
-        stdout = "not made"
-        try:
-            stdout = run(elsewhere, "make", request.param).stdout
-        finally:
-            printed.with_suffix(".part").write_text(stdout, encoding="utf-8")
-            printed.with_suffix(".part").rename(printed)
-    assert printed.read_text(encoding="utf-8") != "not made"
-    return elsewhere / "outputs" / str(request.param.stem)
-
-
-def wait_for(path: Path) -> None:
-    for _ in range(1200):
-        if path.exists():
-            return
-        time.sleep(0.25)
-    pytest.fail(f"{path} was not made by the process that began it")
-
-
 def facts(pack: Path) -> dict[str, object]:
     found: dict[str, object] = json.loads((pack / "design.json").read_text(encoding="utf-8"))
     return found
@@ -121,7 +85,7 @@ def test_there_are_examples() -> None:
 
 def test_pack_is_complete(pack: Path) -> None:
     levels = {str(island["level"]) for island in facts(pack)["copper"]}  # type: ignore[attr-defined]
-    layout = {"board.dxf", "board-segments.dxf", "board.gds", "layers.csv", "README.txt"}
+    layout = {"board.dxf", "board-segments.dxf", "outline.dxf", "board.gds", "layers.csv", "README.txt"}
     layout |= {f"preview-{level}.svg" for level in levels}
     expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir"}
     fabrication = {"stackup.json", "stackup.md", "job.gbrjob", "netlist.ipc", "drawing.pdf", "profile.gbr"}

@@ -108,7 +108,7 @@ def test_a_coupon_comes_with_its_sheet_and_reads_its_measurement(pack: Path, tmp
     width = told["dimensions_mm"]["line_width"] * 1e-3
     frequency = skrf.Frequency(0.5, 3.0, 251, "GHz")
     line = skrf.media.MLine(
-        frequency, w=width, h=1.6e-3, t=55e-6, ep_r=4.5, tand=0.02, rho=1.72e-8, z0_port=50.0, 
+        frequency, w=width, h=1.6e-3, t=55e-6, ep_r=4.5, tand=0.02, rho=1.72e-8, z0_port=50.0,
         diel="djordjevicsvensson",
         f_epr_tand=866.5e6,
     )  # fmt: skip

@@ -247,8 +247,8 @@ def test_all_faults_at_once(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize(
     ("changes", "said"),
-    [(READ["inch for mm"][0], "did you mean 1.6 mm?"), (DESIGNED["too little room"][0], "limit 60 mm x 60 mm")],
-    ids=["inch for mm", "too little room"],
+    [(READ["inch for mm"][0], "did you mean 1.6 mm?"), (DESIGNED["mask at a fab without"][0], "no mask offered")],
+    ids=["inch for mm", "mask at a fab without"],
 )
 def test_as_a_user_meets_it(changes: Changes, said: str, tmp_path: Path) -> None:
     """The whole command in a folder of its own: the message on stderr, exit code 1, no folder `outputs`."""

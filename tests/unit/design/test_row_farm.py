@@ -57,7 +57,7 @@ def test_a_row_that_always_kills_is_reported_and_the_others_are_done(tmp_path: P
 
 def test_a_scheduler_that_does_not_answer_is_named(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("planar.design.row_farm._CONNECT", 0.2)
-    with pytest.raises(HandoffError, match="no scheduler answers at tcp://127.0.0.1:9"):
+    with pytest.raises(HandoffError, match=r"no scheduler answers at tcp://127\.0\.0\.1:9"):
         list(cluster_rows(squared, tasks(tmp_path), address="tcp://127.0.0.1:9"))
 
 

@@ -18,6 +18,7 @@ from planar.design.candidates import frequency_spread, line_error, realisations
 from planar.design.choices import choose
 from planar.design.design import Design
 from planar.design.first_order import first_dimensions
+from planar.design.prediction import prediction_facts
 from planar.design.sized import sized_design
 from planar.errors import Severity, SynthesisError
 from planar.library import Library
@@ -47,6 +48,20 @@ def test_prediction_is_that_of_the_copper(met: Design) -> None:
     assert prediction.circuit.deviation < 0.02
     low, high = prediction.trusted
     assert low < met.choices.brief.target.band[0] < met.choices.brief.target.band[1] < high
+
+
+def test_portrait_says_what_the_prediction_says(met: Design) -> None:
+    """Both are of one solution: the pictures and design.json may not differ by more than rounding."""
+    assert met.prediction is not None
+    assert met.portrait is not None
+    facts, shown = prediction_facts(met.prediction), met.portrait
+    middle = len(shown.frequency) // 2
+    assert shown.frequency[middle] == shown.centre == met.choices.centre
+    assert shown.gain_dbi[middle] == round(facts["gain_dbi"], 2)
+    assert shown.axial_ratio_db[middle] == min(40.0, round(met.prediction.centre.axial_ratio_db, 2))
+    assert 1.0 - shown.losses.copper - shown.losses.dielectric == pytest.approx(facts["efficiency"], abs=2e-4)
+    assert (shown.frequency[0], shown.frequency[-1]) == pytest.approx(met.prediction.trusted, abs=1.0)
+    assert len(shown.modes) == 2
 
 
 def test_gap_of_a_loop_without_line_is_its_port(met: Design) -> None:

@@ -67,8 +67,11 @@ def test_rows_are_all_combinations_the_last_axis_fastest(library: Library) -> No
     base = tomllib.loads(write_brief(check_brief(tomllib.loads(BRIEF), "brief", library)))
     rows = sweep_rows(base, axes, "brief", library)
     assert [tuple(row.settings.values()) for row in rows] == [
-        ("fr4-general", "0.8 mm"), ("fr4-general", "1.6 mm"), ("ptfe-glass-2-2", "0.8 mm"), ("ptfe-glass-2-2", "1.6 mm"),
-    ]  # fmt: skip
+        ("fr4-general", "0.8 mm"),
+        ("fr4-general", "1.6 mm"),
+        ("ptfe-glass-2-2", "0.8 mm"),
+        ("ptfe-glass-2-2", "1.6 mm"),
+    ]
     assert [row.number for row in rows] == [1, 2, 3, 4]
     assert rows[2].data["board"]["laminate"] == "ptfe-glass-2-2"
     assert base["board"]["laminate"] == "fr4-general"
