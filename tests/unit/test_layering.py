@@ -6,6 +6,7 @@ give none, and a package made to break the rule must give the breach, so that no
 
 import ast
 from collections.abc import Callable, Iterator, Mapping
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -58,6 +59,12 @@ def real_package() -> Package:
     return found
 
 
+@cache
+def parsed(text: str) -> ast.Module:
+    """The tree of a module, the same one for all rules: they only read it, and parsing is most of their time."""
+    return ast.parse(text)
+
+
 def part(module: str) -> str:
     """The folder or file right under planar that `module` belongs to."""
     return [*module.split("."), ""][1]
@@ -77,14 +84,14 @@ def imported(source: ast.AST, package: Package) -> Iterator[tuple[ast.stmt, str]
 
 def own_imports(package: Package) -> Iterator[tuple[str, str]]:
     """(module, imported module) inside planar, each once."""
-    pairs = {(name, to) for name, text in package.items() for _, to in imported(ast.parse(text), package)}
+    pairs = {(name, to) for name, text in package.items() for _, to in imported(parsed(text), package)}
     yield from sorted((name, to) for name, to in pairs if to == "planar" or to.startswith("planar."))
 
 
 def functions(package: Package) -> Iterator[tuple[str, Function]]:
     """Every function and method with where it stands."""
     for name, text in package.items():
-        for node in ast.walk(ast.parse(text)):
+        for node in ast.walk(parsed(text)):
             if isinstance(node, Function):
                 yield f"{name}:{node.lineno} {node.name}", node
 
@@ -114,7 +121,7 @@ def relative(package: Package) -> list[str]:
     return [
         f"{name}:{node.lineno}"
         for name, text in package.items()
-        for node, to in imported(ast.parse(text), package)
+        for node, to in imported(parsed(text), package)
         if to.startswith(".")
     ]
 
@@ -144,7 +151,7 @@ def strays(package: Package) -> list[str]:
     return [
         f"{name} imports {to}"
         for name, text in package.items()
-        for _, to in imported(ast.parse(text), package)
+        for _, to in imported(parsed(text), package)
         if part(name) not in ONLY_IN.get(to.split(".")[0], (part(name),))
     ]
 
@@ -180,7 +187,7 @@ def wide_classes(package: Package) -> list[str]:
     """Classes of more than 12 public methods; a property reads like a field and counts as one."""
     breaches = []
     for name, text in package.items():
-        for node in ast.walk(ast.parse(text)):
+        for node in ast.walk(parsed(text)):
             if isinstance(node, ast.ClassDef):
                 methods = [f for f in node.body if isinstance(f, Function) and not f.name.startswith("_")]
                 public = [f for f in methods if not decorated(f, {"property", "cached_property"})]
@@ -192,7 +199,7 @@ def undocumented(package: Package) -> list[str]:
     """Public modules, classes, functions and methods without a docstring; an empty file has nothing to say."""
     breaches = []
     for name, text in package.items():
-        tree = ast.parse(text)
+        tree = parsed(text)
         if tree.body and not ast.get_docstring(tree):
             breaches.append(name)
         for owner in (tree, *(n for n in tree.body if isinstance(n, ast.ClassDef) and not n.name.startswith("_"))):

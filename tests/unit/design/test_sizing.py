@@ -154,11 +154,15 @@ def sized(choices: Choices) -> Sized:
     return size_coarsely(variables(choices), HERE)
 
 
-def test_plain_loop_meets_its_port(brief: MakeBrief, library: Library) -> None:
+@pytest.fixture(scope="module")
+def plain_loop(brief: MakeBrief, library: Library) -> Sized:
+    """A circle to 115 ohm, sized in this process."""
+    return sized(choose(brief(target={"impedance": "115 ohm"}, antenna={"family": "plain"}), library))
+
+
+def test_plain_loop_meets_its_port(plain_loop: Sized) -> None:
     """A circle to 115 ohm (a full-wave loop is 95 to 140 ohm, fact of the trade): centred, wide, verified finely."""
-    choices = choose(brief(target={"impedance": "115 ohm"}, antenna={"family": "plain"}), library)
-    outcome = sized(choices)
-    fine = size_finely(outcome)
+    fine, choices = size_finely(plain_loop), plain_loop.bench.choices
     assert fine.sized.width >= 0.08
     assert fine.sized.worst < 1.0
     low, high = choices.brief.target.band
@@ -190,13 +194,11 @@ def test_rectangle_finds_its_proportions(brief: MakeBrief, library: Library) -> 
     assert outcome.dimensions["loop_height"] > 1.4 * outcome.dimensions["loop_width"]
 
 
-def test_processes_give_what_one_gives(brief: MakeBrief, library: Library) -> None:
-    choices = choose(brief(target={"impedance": "115 ohm"}, antenna={"family": "plain"}), library)
-    alone = sized(choices)
+def test_processes_give_what_one_gives(plain_loop: Sized) -> None:
     with workers(2) as shared:
-        together = size_coarsely(variables(choices), shared)
-    assert together.boards == alone.boards
-    assert together.place == pytest.approx(alone.place, abs=1e-9)
+        together = size_coarsely(variables(plain_loop.bench.choices), shared)
+    assert together.boards == plain_loop.boards
+    assert together.place == pytest.approx(plain_loop.place, abs=1e-9)
 
 
 def test_work_that_is_begun_can_be_asked_for() -> None:
