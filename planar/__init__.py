@@ -1,3 +1,3 @@
 """planar: from a band and a laminate to a tuned printed loop antenna."""
 
-__version__ = "0.3.0"
+__version__ = "0.4.0"

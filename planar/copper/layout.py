@@ -114,10 +114,18 @@ class Marking:
 
 @dataclass(frozen=True)
 class Score:
-    """A straight score line from edge to edge, `start` to `end` in m, cut from both sides."""
+    """A straight score line from edge to edge, `start` to `end` in m, cut from both sides.
+
+    Raises `GeometryError` where both ends are one place.
+    """
 
     start: Point
     end: Point
+
+    def __post_init__(self) -> None:
+        if all(on_grid(a) == on_grid(b) for a, b in zip(self.start, self.end, strict=True)):
+            x, y = (1e3 * c for c in self.start)
+            raise GeometryError(f"the score line at ({x:.3f}, {y:.3f}) mm has no length")
 
 
 @dataclass(frozen=True)
@@ -160,6 +168,8 @@ class Layout:
             legend=_normalised(self.legend),
             edge=self.edge.normalised(),
             keepout=tuple(outline.normalised() for outline in self.keepout),
+            cutouts=tuple(outline.normalised() for outline in self.cutouts),
+            boards=tuple(outline.normalised() for outline in self.boards),
         )
 
     def copper(self, level: Level) -> tuple[Outline, ...]:

@@ -7,22 +7,26 @@ scale bar and a 10 mm square, because importers take millimetres for inches or m
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from planar.copper.arc import Point
-from planar.copper.layout import Layout, Level, bounds_of
+from planar.copper.layout import Kind, Layout, Level, Pad, Score, bounds_of
 from planar.copper.outline import GRID, Outline, on_grid
-from planar.copper.shapes import rectangle
+from planar.copper.shapes import rectangle, turned_rectangle
 from planar.handoff.layers import LAYERS
+from planar.handoff.net_tie import net_ties
 
 LONG_BAR = 0.1
 SHORT_BAR = 0.01
 """m, length of the scale bar, and the one for boards smaller than the long one in both directions."""
 SQUARE = 0.01
 """m, side of the square beside the scale bar."""
+SCORE_WIDTH = 0.1e-3
+"""m, of the rectangle a score line is drawn as; the cut is its middle."""
 _CLEAR = 5e-3
 _BAR_HEIGHT = 1e-3
 
@@ -81,8 +85,10 @@ def file_content(layout: Layout) -> FileContent:
         outlines[f"COPPER_{side}"] = layout.copper(level)
         outlines[f"MASK_{side}"] = tuple(m.outline for m in layout.mask_openings if m.level == level)
         outlines[f"LEGEND_{side}"] = tuple(m.outline for m in layout.legend if m.level == level)
-    outlines["OUTLINE"] = (layout.edge,)
+    outlines["OUTLINE"] = (layout.edge, *layout.cutouts)
+    outlines["SCORE"] = tuple(_score_outline(score) for score in layout.scores)
     outlines["KEEPOUT"] = layout.keepout
+    outlines["NET_TIE"] = tuple(tie.outline for tie in net_ties(layout))
     outlines["DIMENSIONS"], scale_labels = _scale(layout)
     drills = {
         "DRILL_PLATED": tuple(Drill(h.centre, h.diameter) for h in layout.holes if h.plated),
@@ -96,12 +102,25 @@ def scale_bar_length(layout: Layout) -> float:
     return SHORT_BAR if max(layout.size) < LONG_BAR else LONG_BAR
 
 
+def _score_outline(score: Score) -> Outline:
+    (x0, y0), (x1, y1) = score.start, score.end
+    length = math.dist(score.start, score.end)
+    along = ((x1 - x0) / length, (y1 - y0) / length)
+    middle = (0.5 * (x0 + x1), 0.5 * (y0 + y1))
+    return turned_rectangle(middle, along, length=length, width=SCORE_WIDTH).normalised()
+
+
+def _called(layout: Layout, pad: Pad) -> str:
+    """Name of a terminal, with its part where there are several parts of one kind."""
+    return pad.name if layout.kind is Kind.SINGLE else f"{pad.part} {pad.name}"
+
+
 def _terminals(layout: Layout) -> tuple[Label, ...]:
     """The name of each pad, on the copper under it."""
     labels = []
     for pad in layout.pads:
         x, y = pad.outline.shape().representative_point().coords[0]
-        name = pad.name.encode("ascii", "replace").decode("ascii")  # the formats know no other letters
+        name = _called(layout, pad).encode("ascii", "replace").decode("ascii")  # the formats know no other letters
         labels.append(Label(f"COPPER_{pad.level.name}", name, (on_grid(x), on_grid(y))))
     return tuple(labels)
 

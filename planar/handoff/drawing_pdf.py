@@ -6,13 +6,16 @@ Every sheet carries the same title block (name, revision, hash, scale, sheet of 
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Sequence
+import re
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from planar.copper.layout import Layout, Level
-from planar.handoff.drawing_figure import A4, draw_level, fitting_figure
+from planar.copper.layout import Kind, Layout, Level
+from planar.handoff.drawing_figure import A4, Sheet, draw_figure, fitting_figure
 from planar.handoff.fab_notes import DrawingFacts, fab_notes
+from planar.handoff.kind_words import KIND_WORDS
+from planar.handoff.panel_notes import panel_rows
 from planar.handoff.paper import BOLD, PLAIN, Paper, Pen, text_width, wrapped
 from planar.handoff.sheet_cells import layer_cells, line_cells, with_spread
 from planar.handoff.stackup_sheet import StackupSheet
@@ -29,8 +32,11 @@ _CELL_PAD = 1.2
 _WIDTH = A4[0] - 2.0 * MARGIN - 6.0
 _LEAST = 4.5
 
+_MICRO, _OHM = re.compile(r"(?<=\d) um\b"), re.compile(r"(?<=\d) ohm\b")
 _LAYER_HEAD = ("layer", "material", "thickness", "base copper", "εr", "tan δ")
 _LAYER_COLUMNS = (26.0, 54.0, 34.0, 24.0, 26.0, 24.0)
+_PANEL_HEAD = ("panel", "what the files hold")
+_PANEL_COLUMNS = (40.0, 148.0)
 _LINE_HEAD = ("line", "kind", "width", "gap", "level", "reference", "impedance", "instruction")
 _LINE_COLUMNS = (32.0, 24.0, 18.0, 17.0, 14.0, 27.0, 25.0, 31.0)
 
@@ -45,7 +51,7 @@ class _Block:
 
 
 @dataclass(frozen=True)
-class _Sheet:
+class _Page:
     """A sheet: what the title block calls it, its size in mm, what draws it above the title block."""
 
     title: str
@@ -62,7 +68,8 @@ def write_drawing(layout: Layout, sheet: StackupSheet, path: Path, *, facts: Dra
     """
     notes = fab_notes(layout, sheet, facts=facts)
     paper = Paper(path, title=f"{sheet.facts.name}, fabrication drawing", creator=_made_with(facts))
-    sheets = [*_figures(layout, facts), *_text_sheets(sheet, notes)]
+    title = "stackup, impedance, notes" if facts.panel is None else "panel, stackup, impedance, notes"
+    sheets = [*_figures(layout, facts), *_text_sheets(title, _blocks(layout, sheet, facts, notes))]
     for number, page in enumerate(sheets, 1):
         paper.sheet(*page.size)
         page.draw(paper)
@@ -76,49 +83,61 @@ def _made_with(facts: DrawingFacts) -> str:
     return f"{application} {version}"
 
 
-def _figures(layout: Layout, facts: DrawingFacts) -> Iterator[_Sheet]:
-    figure = fitting_figure(layout, TITLE_HEIGHT, MARGIN)
+def _figures(layout: Layout, facts: DrawingFacts) -> Iterator[_Page]:
+    levels: tuple[Level | None, ...] = ((None,) if layout.kind is Kind.ARRAY else ()) + layout.levels
+    sheets = [Sheet(layout, level, facts.hole_tolerance_m) for level in levels]
+    figure = fitting_figure(sheets, TITLE_HEIGHT, MARGIN)
     corner = (MARGIN + 3.0, MARGIN + TITLE_HEIGHT)
-    for level in layout.levels:
+    for sheet in sheets:
 
-        def draw(paper: Paper, level: Level = level) -> None:
-            draw_level(paper, layout, level, figure=figure, corner=corner, hole_tolerance=facts.hole_tolerance_m)
+        def draw(paper: Paper, sheet: Sheet = sheet) -> None:
+            draw_figure(paper, sheet, figure=figure, corner=corner)
 
-        yield _Sheet(f"{level} copper, seen from the top", figure.scale_text, figure.size, draw)
+        yield _Page(sheet.title, figure.scale_text, figure.size, draw)
 
 
-def _text_sheets(sheet: StackupSheet, notes: Sequence[str]) -> Iterator[_Sheet]:
-    """Stackup, impedance and notes, as many sheets as they need."""
+def _blocks(layout: Layout, sheet: StackupSheet, facts: DrawingFacts, notes: Sequence[str]) -> Iterator[_Block]:
+    if facts.panel is not None:
+        yield _heading("Panel")
+        yield from _table(_PANEL_HEAD, tuple(panel_rows(layout, facts.panel)), _PANEL_COLUMNS)
+    yield from _stackup_blocks(sheet)
+    yield from _impedance_blocks(sheet)
+    yield from _note_blocks(notes)
+
+
+def _text_sheets(title: str, blocks: Iterable[_Block]) -> Iterator[_Page]:
+    """Tables and notes, as many sheets as they need."""
     room = A4[1] - 2.0 * MARGIN - TITLE_HEIGHT - 4.0
     pages: list[list[_Block]] = [[]]
     used = 0.0
-    for block in (*_stackup_blocks(sheet), *_impedance_blocks(sheet), *_note_blocks(notes)):
+    for block in blocks:
         if pages[-1] and used + block.height + block.keep > room:
             pages.append([])
             used = 0.0
         pages[-1].append(block)
         used += block.height
-    for blocks in pages:
+    for page in pages:
 
-        def draw(paper: Paper, blocks: list[_Block] = blocks) -> None:
+        def draw(paper: Paper, page: list[_Block] = page) -> None:
             top = A4[1] - MARGIN - 2.0
-            for block in blocks:
+            for block in page:
                 block.draw(paper, MARGIN + 3.0, top)
                 top -= block.height
 
-        yield _Sheet("stackup, impedance, notes", "-", A4, draw)
+        yield _Page(title, "none", A4, draw)
 
 
 def _stackup_blocks(sheet: StackupSheet) -> Iterator[_Block]:
     at = show(sheet.facts.frequency_hz, "frequency")
     yield _heading(f"Stackup, top to bottom; permittivity εr and loss tangent tan δ at {at}")
-    yield from _table(_LAYER_HEAD, [layer_cells(layer, _um, "±") for layer in sheet.layers], _LAYER_COLUMNS)
-    total = with_spread(show(sheet.total_thickness_m, "length"), sheet.thickness_tolerance, "±")
-    masked = show(sheet.masked_thickness_m, "length")
+    yield from _table(_LAYER_HEAD, [layer_cells(layer, _length, "±") for layer in sheet.layers], _LAYER_COLUMNS)
+    total = with_spread(_length(sheet.total_thickness_m), sheet.thickness_tolerance, "±")
+    masked = _length(sheet.masked_thickness_m)
     yield _paragraph(f"Total {total} with copper, without mask; {masked} with mask. Copper thickness is finished.")
     if sheet.surroundings:
-        yield _heading("Around the board: not made by the fab, the antenna is designed for it")
-        yield from _table(_LAYER_HEAD, [layer_cells(layer, _um, "±") for layer in sheet.surroundings], _LAYER_COLUMNS)
+        yield _heading(f"Around the board: not made by the fab, {KIND_WORDS[sheet.facts.kind].around}")
+        around = [layer_cells(layer, _length, "±") for layer in sheet.surroundings]
+        yield from _table(_LAYER_HEAD, around, _LAYER_COLUMNS)
 
 
 def _impedance_blocks(sheet: StackupSheet) -> Iterator[_Block]:
@@ -135,8 +154,13 @@ def _note_blocks(notes: Sequence[str]) -> Iterator[_Block]:
         yield _paragraph(note, mark=f"{number}.")
 
 
-def _um(length: float) -> str:
-    return f"{1e6 * length:.6g} µm"
+def _length(length: float) -> str:
+    return _signed(show(length, "length"))
+
+
+def _signed(text: str) -> str:
+    """`text` with the signs the font has where plain text has letters: plus-minus, micro, ohm."""
+    return _OHM.sub(" Ω", _MICRO.sub(" µm", text.replace("+-", "±")))
 
 
 def _heading(text: str) -> _Block:
@@ -148,7 +172,7 @@ def _heading(text: str) -> _Block:
 
 def _paragraph(text: str, *, mark: str = "") -> _Block:
     indent = 7.0 if mark else 0.0
-    lines = wrapped(text.replace("+-", "±").replace(" um ", " µm "), _BODY, _WIDTH - indent)
+    lines = wrapped(_signed(text), _BODY, _WIDTH - indent)
 
     def draw(paper: Paper, x: float, top: float) -> None:
         paper.text((x, top - 3.6), mark, _BODY)
@@ -166,7 +190,7 @@ def _table(head: Sequence[str], rows: Sequence[Sequence[str]], columns: Sequence
 
 def _row(cells: Sequence[str], columns: Sequence[float], *, font: str) -> _Block:
     pairs = zip(cells, columns, strict=True)
-    texts = [wrapped(cell, _BODY, width - 2.0 * _CELL_PAD, font=font) for cell, width in pairs]
+    texts = [wrapped(_signed(cell), _BODY, width - 2.0 * _CELL_PAD, font=font) for cell, width in pairs]
     height = _LINE * max(len(lines) for lines in texts) + 1.8
 
     def draw(paper: Paper, x: float, top: float) -> None:
@@ -181,7 +205,7 @@ def _row(cells: Sequence[str], columns: Sequence[float], *, font: str) -> _Block
 
 
 def _draw_title_block(
-    paper: Paper, page: _Sheet, number: tuple[int, int], sheet: StackupSheet, facts: DrawingFacts
+    paper: Paper, page: _Page, number: tuple[int, int], sheet: StackupSheet, facts: DrawingFacts
 ) -> None:
     """Frame of the sheet and two rows of cells at its foot."""
     width, height = page.size[0] - 2.0 * MARGIN, page.size[1] - 2.0 * MARGIN

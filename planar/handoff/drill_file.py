@@ -1,8 +1,8 @@
 """Drill files in XNC: plated and unplated holes apart, one tool per function and finished diameter.
 
-Millimetres with explicit decimal points, origin at the feed, seen from the top, like every other file of the
-pack. What a tool is for stands in attribute comments (`; #@!`). The reader takes only what the writer may write,
-and `drill_mismatches` compares the holes with the layout and with the copper they must meet.
+Millimetres with explicit decimal points, the origin of every other file of the pack, seen from the top. What a tool
+is for stands in attribute comments (`; #@!`). The reader takes only what the writer may write, and `drill_mismatches`
+compares the holes with the layout and with the copper they must meet.
 """
 
 from __future__ import annotations
@@ -17,14 +17,24 @@ from shapely.geometry import Point as ShapelyPoint
 
 from planar.copper.arc import Point
 from planar.copper.boolean import contains
-from planar.copper.layout import Hole, Layout
+from planar.copper.layout import Hole, Kind, Layout
 from planar.copper.outline import GRID
 from planar.errors import HandoffError
-from planar.handoff.gerber_attributes import Fields, ProjectFacts, attribute_fields, attribute_text, file_attributes
+from planar.handoff.gerber_attributes import (
+    Fields,
+    ProjectFacts,
+    attribute_fields,
+    attribute_mismatches,
+    attribute_text,
+    file_attributes,
+)
+from planar.handoff.kind_words import KIND_WORDS
 
 DRILL_FILES = {True: "drill-plated.xnc", False: "drill-unplated.xnc"}
 """File name by whether its holes are plated."""
 FILE_FUNCTIONS: dict[bool, Fields] = {True: ("Plated", "1", "2", "PTH"), False: ("NonPlated", "1", "2", "NPTH")}
+_BARE_FUNCTIONS = {"tooling": "MechanicalDrill,Tooling", "perforation": "MechanicalDrill,Breakout"}
+"""Purpose of a hole that is never plated -> its function; every other unplated hole is a mere one."""
 _SLACK = 2.0 * GRID
 """m, allowed on places and diameters for rounding to the grid."""
 _INCH = 25.4
@@ -53,9 +63,14 @@ class DrillFile:
 
 
 def drill_function(hole: Hole) -> str:
-    """What the drill of `hole` is for: via, a part's leg to be soldered, or a mere hole."""
+    """What the drill of `hole` is for: via, a part's leg to be soldered, tooling, breaking off, or a mere hole.
+
+    Raises `HandoffError` for plating in a hole that must have none.
+    """
     if not hole.plated:
-        return "MechanicalDrill"
+        return _BARE_FUNCTIONS.get(hole.purpose, "MechanicalDrill")
+    if hole.purpose in _BARE_FUNCTIONS:
+        raise HandoffError(f"a plated {hole.purpose} hole at {_place(hole.centre)}, expected an unplated one")
     return "ViaDrill" if hole.purpose == "via" else "ComponentDrill"
 
 
@@ -78,7 +93,7 @@ def write_drill(layout: Layout, path: Path, *, plated: bool, facts: ProjectFacts
     tools = drill_tools(layout, plated=plated)
     if not 1 <= len(tools) <= 99:
         raise HandoffError(f"{path.name} would have {len(tools)} tools, a drill file has 1 to 99")
-    lines = ["M48", *_head(plated, facts), "METRIC"]
+    lines = ["M48", *_head(layout.kind, plated, facts), "METRIC"]
     for number, (function, diameter, _) in enumerate(tools, 1):
         lines += [f"; #@! TA.AperFunction,{function}", f"T{number}C{_mm(diameter)}", "; #@! TD"]
     lines += ["%", "G05"]
@@ -90,16 +105,16 @@ def write_drill(layout: Layout, path: Path, *, plated: bool, facts: ProjectFacts
 def write_drills(layout: Layout, folder: Path, *, facts: ProjectFacts) -> None:
     """Write those of drill-plated.xnc and drill-unplated.xnc that have holes into `folder`."""
     for plated, name in DRILL_FILES.items():
-        if any(hole.plated == plated for hole in layout.holes):
+        if name in drill_names(layout):
             write_drill(layout, folder / name, plated=plated, facts=facts)
 
 
-def _head(plated: bool, project: ProjectFacts) -> list[str]:
+def _head(kind: Kind, plated: bool, project: ProjectFacts) -> list[str]:
     """Attributes of the file, as comments."""
-    attributes = file_attributes(project, FILE_FUNCTIONS[plated], "Positive")
+    attributes = file_attributes(project, FILE_FUNCTIONS[plated], "Positive", kind=kind)
     return [
         *(f"; #@! TF{attribute_text(name, fields)}" for name, fields in attributes.items()),
-        "; finished diameters; places from the feed, seen from the top",
+        f"; finished diameters; places from the {KIND_WORDS[kind].origin}, seen from the top",
     ]
 
 
@@ -184,29 +199,31 @@ def _read_body(body: Sequence[str], tools: _Tools, unit: float) -> tuple[list[Dr
     return hits, faults
 
 
-def drill_mismatches(layout: Layout, folder: Path) -> list[str]:
+def drill_names(layout: Layout) -> tuple[str, ...]:
+    """Names of the drill files of `layout`: those that have holes."""
+    return tuple(name for plated, name in DRILL_FILES.items() if any(hole.plated == plated for hole in layout.holes))
+
+
+def drill_mismatches(layout: Layout, folder: Path, *, facts: ProjectFacts) -> list[str]:
     """What the drill files in `folder` say otherwise than a snapped `layout`: each with what was expected."""
     return [
-        f"{name}: {text}" for plated, name in DRILL_FILES.items() for text in _file_mismatches(layout, folder, plated)
+        f"{name}: {text}"
+        for plated, name in DRILL_FILES.items()
+        if name in drill_names(layout)
+        for text in _file_mismatches(layout, folder / name, plated, facts)
     ]
 
 
-def _file_mismatches(layout: Layout, folder: Path, plated: bool) -> Iterator[str]:
-    path = folder / DRILL_FILES[plated]
+def _file_mismatches(layout: Layout, path: Path, plated: bool, facts: ProjectFacts) -> Iterator[str]:
     expected = [hole for hole in layout.holes if hole.plated == plated]
-    if not expected:
-        if path.exists():
-            yield "a file, expected none: the board has no such hole"
-        return
     try:
         got = read_drill(path)
     except HandoffError as error:
         yield str(error)
         return
     yield from got.faults
-    function, right = (",".join(f) for f in (got.attributes.get(".FileFunction", ("missing",)), FILE_FUNCTIONS[plated]))
-    if function != right:
-        yield f"file function {function}, expected {right}"
+    right = file_attributes(facts, FILE_FUNCTIONS[plated], "Positive", kind=layout.kind)
+    yield from attribute_mismatches(got.attributes, right)
     yield from _hole_mismatches(got.hits, expected)
     if plated:
         yield from _copper_mismatches(layout, got.hits)

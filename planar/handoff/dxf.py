@@ -25,6 +25,7 @@ from ezdxf.entities.text import Text
 from ezdxf.filemanagement import new, readfile
 from ezdxf.layouts.layout import Modelspace
 from ezdxf.lldxf.const import DXFError
+from numpy.typing import NDArray
 
 from planar.copper.layout import Layout
 from planar.copper.outline import Outline
@@ -46,6 +47,22 @@ def write_dxf(layout: Layout, path: Path) -> None:
 def write_dxf_segments(layout: Layout, path: Path) -> None:
     """Write a snapped `layout` with arcs as segments, 2 um chord error, for importers that drop bulges."""
     _write(file_content(layout).flattened(SEGMENT_CHORD), path)
+
+
+def outline_content(layout: Layout) -> FileContent:
+    """What outline.dxf of a snapped `layout` holds: edge, cut-outs and unplated holes, all of them to be cut.
+
+    The other layers of the table are listed empty. No scale bar: a mechanical drawing would take it for a cut.
+    """
+    whole = file_content(layout)
+    outlines = {name: found if name == "OUTLINE" else () for name, found in whole.outlines.items()}
+    drills = {name: found if name == "DRILL_UNPLATED" else () for name, found in whole.drills.items()}
+    return FileContent(outlines, drills)
+
+
+def write_outline_dxf(layout: Layout, path: Path) -> None:
+    """Write edge and unplated holes of a snapped `layout` alone, with true arcs, for a mechanical drawing."""
+    _write(outline_content(layout), path)
 
 
 def _write(content: FileContent, path: Path) -> None:
@@ -130,9 +147,13 @@ def read_dxf(path: Path) -> FileContent:
     )
 
 
+def _rows(polyline: LWPolyline) -> NDArray[np.float64]:
+    """x and y in mm, widths at start and end, bulge of each vertex: (n, 5)."""
+    return np.array(polyline.lwpoints.values, dtype=np.float64).reshape(-1, 5)
+
+
 def _outline(polyline: LWPolyline) -> Outline:
-    rows = np.array(polyline.get_points("xyb"), dtype=np.float64)
-    return Outline(rows * (1e-3, 1e-3, 1.0))
+    return Outline(_rows(polyline)[:, [0, 1, 4]] * (1e-3, 1e-3, 1.0))
 
 
 def _document_faults(document: Document) -> list[str]:
@@ -158,12 +179,12 @@ def _entity_faults(entity: DXFEntity) -> list[str]:
 
 def _polyline_faults(polyline: LWPolyline) -> list[str]:
     faults = []
-    rows = polyline.get_points("xyseb")
+    rows = _rows(polyline)
     if not polyline.closed:
         faults.append("an open polyline, expected closed")
-    if len(rows) < 2 or rows[0][:2] == rows[-1][:2]:
+    if len(rows) < 2 or np.array_equal(rows[0, :2], rows[-1, :2]):
         faults.append("a polyline that repeats its first vertex, expected the closed flag alone")
-    if polyline.dxf.const_width != 0.0 or any(row[2] or row[3] for row in rows):
+    if polyline.dxf.const_width != 0.0 or np.any(rows[:, 2:4]):
         faults.append("a polyline with a width, expected 0")
     if polyline.dxf.elevation != 0.0 or tuple(polyline.dxf.extrusion) != (0.0, 0.0, 1.0):
         faults.append("a polyline off the plane z = 0, expected z 0 seen from the top")

@@ -79,6 +79,7 @@ def _command(code: str, name: str, *fields: str) -> str:
 def _numbered(content: GerberContent) -> dict[tuple[Aperture, str], int]:
     """Apertures and their functions with their numbers, in the order of use."""
     drawn = [(track.aperture, track.tags.function) for track in content.tracks]
+    drawn += [(stroke.aperture, stroke.tags.function) for stroke in content.strokes]
     flashed = [(flash.aperture, flash.tags.function) for flash in content.flashes]
     used = dict.fromkeys([*drawn, *flashed])
     return {key: number for number, key in enumerate(used, start=_FIRST_APERTURE)}
@@ -105,6 +106,10 @@ def _objects(content: GerberContent, apertures: dict[tuple[Aperture, str], int])
     for track in content.tracks:
         yield f"D{apertures[track.aperture, track.tags.function]}*"
         yield from _tagged(track.tags, _contour(track.outline))
+    for stroke in content.strokes:
+        yield f"D{apertures[stroke.aperture, stroke.tags.function]}*"
+        ends = [_at(_place(end)) for end in (stroke.start, stroke.end)]
+        yield from _tagged(stroke.tags, [f"{ends[0]}D02*", "G01*", f"{ends[1]}D01*"])
     selected = 0
     for flash in content.flashes:
         number = apertures[flash.aperture, flash.tags.function]

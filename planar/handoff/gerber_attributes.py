@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from datetime import UTC, datetime
 
 from planar import __version__
+from planar.copper.layout import Kind
 from planar.errors import HandoffError
 
 FIXED_DATE = "2000-01-01T00:00:00+00:00"
@@ -22,6 +23,9 @@ FIXED_DATE = "2000-01-01T00:00:00+00:00"
 _HASH = re.compile(r"[0-9a-f]{32,}")
 _ESCAPE = re.compile(r"\\u([0-9A-Fa-f]{4})")
 _SPECIAL = frozenset("%*,\\")
+
+PARTS = {Kind.SINGLE: "Single", Kind.ARRAY: "Array", Kind.COUPON: "Coupon"}
+"""Kind of a layout -> value of the file attribute `.Part`."""
 
 Fields = tuple[str, ...]
 """The fields of an attribute, as meant, not as written."""
@@ -75,13 +79,16 @@ def creation_date() -> str:
         raise HandoffError(f"SOURCE_DATE_EPOCH is {seconds!r}, expected seconds since 1970") from error
 
 
-def file_attributes(project: ProjectFacts, function: Fields, polarity: str) -> dict[str, Fields]:
-    """Attributes of a file by name, in the order they are written; `function` such as ("Copper", "L1", "Top")."""
+def file_attributes(
+    project: ProjectFacts, function: Fields, polarity: str, *, kind: Kind = Kind.SINGLE
+) -> dict[str, Fields]:
+    """Attributes of a file of a layout of `kind` by name, in the order they are written; `function` such as
+    ("Copper", "L1", "Top")."""
     return {
         ".GenerationSoftware": project.software,
         ".CreationDate": (project.created,),
         ".ProjectId": (project.name, project.guid, project.revision),
-        ".Part": ("Single",),
+        ".Part": (PARTS[kind],),
         ".SameCoordinates": (project.design_hash[:16],),
         ".FileFunction": function,
         ".FilePolarity": (polarity,),

@@ -11,13 +11,14 @@ from collections import Counter
 from collections.abc import Sequence
 from pathlib import Path
 
+import numpy as np
 from shapely import difference
 from shapely.ops import unary_union
 
-from planar.copper.layout import Layout
+from planar.copper.layout import Layout, Role
 from planar.copper.outline import CHECK_CHORD, GRID, Outline
 from planar.errors import HandoffError
-from planar.handoff.check import OVERLAY_GRID, outline_mismatches
+from planar.handoff.check import OVERLAY_GRID, nested_mismatches, outline_mismatches
 from planar.handoff.gerber_attributes import attribute_mismatches
 from planar.handoff.gerber_content import (
     Flash,
@@ -25,6 +26,7 @@ from planar.handoff.gerber_content import (
     GerberFacts,
     GerberFile,
     Region,
+    Stroke,
     Tags,
     Track,
     gerber_content,
@@ -36,14 +38,10 @@ from planar.handoff.gerber_reader import read_gerber
 def gerber_mismatches(layout: Layout, folder: Path, *, facts: GerberFacts) -> list[str]:
     """What in the layer files of `folder` differs from `layout`, file by file; empty when all is right.
 
-    Missing files and layer files that do not belong to this board are reported too.
+    Missing files are reported too.
     """
     files = gerber_files(layout, facts)
-    stale = sorted({path.name for path in folder.glob("*.gbr")} - {file.name for file in files})
-    return [
-        *(f"{file.name}: {text}" for file in files for text in _file_mismatches(layout, file, folder, facts)),
-        *(f"{name}: a layer file this board does not have" for name in stale),
-    ]
+    return [f"{file.name}: {text}" for file in files for text in _file_mismatches(layout, file, folder, facts)]
 
 
 def _file_mismatches(layout: Layout, file: GerberFile, folder: Path, facts: GerberFacts) -> list[str]:
@@ -55,26 +53,37 @@ def _file_mismatches(layout: Layout, file: GerberFile, folder: Path, facts: Gerb
     return [
         *got.faults,
         *attribute_mismatches(got.attributes, expected.attributes),
-        *outline_mismatches(_shapes(got, file), _layout_shapes(layout, file), GRID),
+        *_shape_mismatches(layout, file, got),
         *_count_mismatches(got, expected),
         *_tag_mismatches([*got.regions, *got.tracks], [*expected.regions, *expected.tracks]),
         *_flash_mismatches(got, expected),
+        *_stroke_mismatches(got, expected),
         *(_added_copper(layout, file, got) if file.holds == "copper" else []),
     ]
 
 
+def _shape_mismatches(layout: Layout, file: GerberFile, got: GerberContent) -> list[str]:
+    """How the shapes of a file differ from those of the layout; edge, cutouts and boards lie in each other."""
+    if file.level is None:
+        return nested_mismatches([track.outline for track in got.tracks], _layout_lines(layout, file), GRID)
+    return outline_mismatches(_shapes(got, file), _layout_shapes(layout, file), GRID)
+
+
+def _layout_lines(layout: Layout, file: GerberFile) -> tuple[Outline, ...]:
+    """The outlines a file draws as closed lines."""
+    edges = (layout.edge, *layout.cutouts)
+    return {"profile": edges, "array": (*edges, *layout.boards)}.get(file.holds, ())
+
+
 def _shapes(content: GerberContent, file: GerberFile) -> tuple[Outline, ...]:
     """The outlines of a file that stand for those of the layout; lands lie on copper and add nothing."""
-    if file.holds == "mask":
-        return content.filled
-    return tuple(each.outline for each in (content.tracks if file.holds == "profile" else content.regions))
+    return content.filled if file.holds == "mask" else tuple(region.outline for region in content.regions)
 
 
 def _layout_shapes(layout: Layout, file: GerberFile) -> tuple[Outline, ...]:
-    if file.level is None:
-        return (layout.edge,)
     if file.holds == "copper":
-        return layout.copper(file.level)
+        islands = [i for i in layout.islands if i.level == file.level and i.role is not Role.FIDUCIAL]
+        return tuple(island.outline for island in islands)  # fiducials are flashes
     markings = layout.mask_openings if file.holds == "mask" else layout.legend
     return tuple(marking.outline for marking in markings if marking.level == file.level)
 
@@ -82,16 +91,20 @@ def _layout_shapes(layout: Layout, file: GerberFile) -> tuple[Outline, ...]:
 def _count_mismatches(got: GerberContent, expected: GerberContent) -> list[str]:
     counts = [
         ("regions", len(got.regions), len(expected.regions)),
-        ("drawn lines", len(got.tracks), len(expected.tracks)),
+        ("closed lines", len(got.tracks), len(expected.tracks)),
+        ("straight lines", len(got.strokes), len(expected.strokes)),
     ]
     return [f"{here} {what}, expected {right}" for what, here, right in counts if here != right]
 
 
 def _tag_mismatches(got: Sequence[Region | Track], expected: Sequence[Region | Track]) -> list[str]:
     """Attributes of each expected object against those of the object whose extents are nearest."""
+    if [_told(each) for each in got] == [_told(each) for each in expected]:
+        return []  # the files keep the layout's order: the search below is for those that do not
     found = []
+    extents = np.array([each.outline.bounds for each in got])  # a panel has thousands of letter strokes
     for right in expected if got else ():
-        here = min(got, key=lambda each: _apart(each.outline, right.outline))
+        here = got[int(np.abs(extents - right.outline.bounds).max(axis=1).argmin())]
         x, y = right.outline.vertices[0, :2].tolist()
         where = f"{type(right).__name__.lower()} at ({1e3 * x:.6f}, {1e3 * y:.6f}) mm"
         found += [f"{where}: {text}" for text in _differences(here.tags, right.tags)]
@@ -100,8 +113,10 @@ def _tag_mismatches(got: Sequence[Region | Track], expected: Sequence[Region | T
     return found
 
 
-def _apart(one: Outline, other: Outline) -> float:
-    return max(abs(a - b) for a, b in zip(one.bounds, other.bounds, strict=True))
+def _told(drawn: Region | Track) -> tuple[int, int, Tags, object]:
+    """Where an object starts (nm), what it is, what it is drawn with."""
+    x, y, _ = drawn.outline.vertices[0].tolist()
+    return round(x / GRID), round(y / GRID), drawn.tags, drawn.aperture if isinstance(drawn, Track) else None
 
 
 def _differences(got: Tags, expected: Tags) -> list[str]:
@@ -115,6 +130,19 @@ def _flash_mismatches(got: GerberContent, expected: GerberContent) -> list[str]:
     here, right = Counter(got.flashes), Counter(expected.flashes)
     missing = [f"{_shown(flash)}: no such flash, expected one" for flash in (right - here).elements()]
     return missing + [f"{_shown(flash)}: a flash, expected none" for flash in (here - right).elements()]
+
+
+def _stroke_mismatches(got: GerberContent, expected: GerberContent) -> list[str]:
+    """As for flashes: both sides are whole nanometres."""
+    here, right = Counter(got.strokes), Counter(expected.strokes)
+    missing = [f"{_line(stroke)}: no such line, expected one" for stroke in (right - here).elements()]
+    return missing + [f"{_line(stroke)}: a line, expected none" for stroke in (here - right).elements()]
+
+
+def _line(stroke: Stroke) -> str:
+    (a, b), (c, d) = ((_mm(x), _mm(y)) for x, y in (stroke.start, stroke.end))
+    width = _mm(stroke.aperture.size[0])
+    return f"line from ({a}, {b}) to ({c}, {d}) mm, {width} mm wide, {stroke.tags.function or 'no function'}"
 
 
 def _shown(flash: Flash) -> str:

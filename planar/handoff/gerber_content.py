@@ -1,32 +1,37 @@
-"""What the layer files of a board hold, free of their syntax, and the one table of these files.
+"""What the layer files of a board, panel or coupon hold, free of their syntax, and the one table of these files.
 
 `gerber_content(layout, file, facts)` says what belongs into a file; the writer puts exactly that down, the reader
 returns the same record. Islands are regions with true arcs; lands and via lands are flashes on top of them, because a
-fab takes every flash of a copper file for a pad. The loop and what it shorts are one net, named by the layout.
+fab takes every flash of a copper file for a pad. A fiducial is a flash alone, for the camera's sake. The loop and what
+it shorts are one net, named by the layout.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 
 from planar.copper.arc import Point
 from planar.copper.boolean import contains
-from planar.copper.layout import Hole, Island, Layout, Level, Pad, Role
+from planar.copper.layout import Hole, Island, Kind, Layout, Level, Pad, Role
 from planar.copper.outline import GRID, Outline, on_grid
 from planar.copper.shapes import centred_rectangle, circle
 from planar.errors import HandoffError
 from planar.handoff.gerber_attributes import Fields, ProjectFacts, file_attributes
 
-DESIGNATOR = "ANT1"
-"""Reference designator of the antenna, an etched component; its lands are the pins."""
 PROFILE_WIDTH = 0.1e-3
-"""m, line the board edge is drawn with; the edge is its middle."""
+"""m, line that edges and scores are drawn with; the cut is its middle."""
 PAD_CHORD = 0.1e-6
 """m, chord error of lands with curved sides: apertures have none. The copper below keeps its arcs."""
 _HALF_CIRCLE_SLACK = 1e-9
-_ROLES = {Role.RADIATOR: "EtchedComponent", Role.LINE: "Conductor", Role.GROUND: "Conductor"}
+_ROLES = {
+    Role.RADIATOR: "EtchedComponent",
+    Role.LINE: "Conductor",
+    Role.GROUND: "Conductor",
+    Role.MARK: "NonConductor",
+}
+"""Role of an island that is a region -> its function."""
 _HOLE_LANDS = {"via": "ViaPad", "mounting": "ComponentPad"}
 """Purpose of a plated hole -> function of the land round it; a plated mounting hole takes the leg of a part."""
 
@@ -89,6 +94,16 @@ class Track:
 
 
 @dataclass(frozen=True)
+class Stroke:
+    """A straight line drawn with an aperture from `start` to `end`, m."""
+
+    start: Point
+    end: Point
+    aperture: Aperture
+    tags: Tags
+
+
+@dataclass(frozen=True)
 class GerberContent:
     """File attributes by name, and the objects of each kind in the order of the file.
 
@@ -100,6 +115,7 @@ class GerberContent:
     flashes: tuple[Flash, ...] = ()
     tracks: tuple[Track, ...] = ()
     faults: tuple[str, ...] = ()
+    strokes: tuple[Stroke, ...] = ()
 
     @property
     def filled(self) -> tuple[Outline, ...]:
@@ -109,8 +125,8 @@ class GerberContent:
 
 @dataclass(frozen=True)
 class GerberFile:
-    """A layer file: what it `holds` ("copper", "mask", "legend", "profile"), its level (None for all), its function and
-    polarity."""
+    """A layer file: what it `holds` ("copper", "mask", "legend", "profile", "score", "array"), its level (None for
+    all), its function and polarity."""
 
     name: str
     holds: str
@@ -129,16 +145,29 @@ GERBER_FILES: tuple[GerberFile, ...] = (
     GerberFile("profile.gbr", "profile", None, ("Profile", "NP"), "Positive"),
 )
 """Every layer file a board may have. A mask file shows the openings, which its negative polarity says."""
+PANEL_FILES: tuple[GerberFile, ...] = (
+    GerberFile("score.gbr", "score", None, ("Vcut",), "Positive"),
+    GerberFile("array.gbr", "array", None, ("ArrayDrawing",), "Positive"),
+)
+"""Layer files that scored boards and panels have besides; scores without a side are cut from both."""
 
 
 @dataclass(frozen=True)
 class GerberFacts:
     """What the layer files say beside the layout: `masked` lists the sides under solder mask, `via_ring_m` is the width
-    of the ring round a plated hole that is shown as its land (m)."""
+    of the ring round a plated hole that is shown as its land (m), `coupon_ring_m` that of holes beside the boards of a
+    panel, None where they are alike."""
 
     project: ProjectFacts
     masked: tuple[Level, ...]
     via_ring_m: float
+    coupon_ring_m: float | None = None
+
+    def ring(self, layout: Layout, hole: Hole) -> float:
+        """Width of the ring shown round a plated `hole` of `layout`, m."""
+        if self.coupon_ring_m is None or any(contains(board, hole.centre) for board in layout.boards):
+            return self.via_ring_m
+        return self.coupon_ring_m
 
 
 def gerber_files(layout: Layout, facts: GerberFacts) -> tuple[GerberFile, ...]:
@@ -154,24 +183,27 @@ def gerber_files(layout: Layout, facts: GerberFacts) -> tuple[GerberFile, ...]:
         "mask": set(facts.masked),
         "legend": {marking.level for marking in layout.legend},
         "profile": {None},
+        "score": {None} if layout.scores else set(),
+        "array": {None} if layout.kind is Kind.ARRAY else set(),
     }
-    return tuple(file for file in GERBER_FILES if file.level in present[file.holds])
+    return tuple(file for file in (*GERBER_FILES, *PANEL_FILES) if file.level in present[file.holds])
 
 
 def gerber_content(layout: Layout, file: GerberFile, facts: GerberFacts) -> GerberContent:
-    """What `file` holds of a snapped `layout`."""
-    attributes = file_attributes(facts.project, file.function, file.polarity)
+    """What `file` holds of a snapped `layout`. Raises `HandoffError` for copper the format's functions cannot name."""
+    attributes = file_attributes(facts.project, file.function, file.polarity, kind=layout.kind)
     return _HOLDS[file.holds](layout, file, facts, attributes)
 
 
 def _copper(layout: Layout, file: GerberFile, facts: GerberFacts, attributes: Mapping[str, Fields]) -> GerberContent:
     islands = [island for island in layout.islands if island.level == file.level]
+    fiducials = [_fiducial_flash(island, layout.kind) for island in islands if island.role is Role.FIDUCIAL]
     pads = [_pad_flash(pad) for pad in layout.pads if pad.level == file.level]
     holes = [hole for hole in layout.holes if hole.plated and _has_copper(hole, islands)]
     return GerberContent(
         attributes,
-        tuple(Region(island.outline, _island_tags(island)) for island in islands),
-        (*pads, *(_hole_flash(hole, facts.via_ring_m) for hole in holes)),
+        tuple(Region(i.outline, _island_tags(i)) for i in islands if i.role is not Role.FIDUCIAL),
+        (*pads, *(_hole_flash(hole, facts.ring(layout, hole)) for hole in holes), *fiducials),
     )
 
 
@@ -180,19 +212,29 @@ def _has_copper(hole: Hole, islands: list[Island]) -> bool:
 
 
 def _island_tags(island: Island) -> Tags:
-    component = DESIGNATOR if island.role is Role.RADIATOR else ""
+    component = island.part if island.role is Role.RADIATOR else ""
     return Tags(_ROLES[island.role], island.net, component)
 
 
 def _pad_flash(pad: Pad) -> Flash:
     found = flashable(pad.outline) or _as_polygon(pad.outline)
     # the mask opening is larger than the land, so that copper defines what is soldered
-    return Flash(*found, Tags("SMDPad,CuDef", pad.net, DESIGNATOR, pad.name))
+    return Flash(*found, Tags("SMDPad,CuDef", pad.net, pad.part, pad.name))
+
+
+def _fiducial_flash(island: Island, kind: Kind) -> Flash:
+    found = flashable(island.outline)
+    if found is None or found[1].kind != "C":
+        x, y, _, _ = island.outline.bounds
+        raise HandoffError(f"the fiducial at ({1e3 * x:.3f}, {1e3 * y:.3f}) mm is no disc, which a camera looks for")
+    return Flash(*found, Tags(f"FiducialPad,{'Panel' if kind is Kind.ARRAY else 'Global'}"))
 
 
 def _hole_flash(hole: Hole, ring: float) -> Flash:
+    if hole.purpose not in _HOLE_LANDS:
+        raise HandoffError(f"a plated hole for {hole.purpose}, expected {' or '.join(_HOLE_LANDS)}")
     land = Aperture("C", (on_grid(hole.diameter + 2.0 * ring),))
-    return Flash(hole.centre, land, Tags(_HOLE_LANDS[hole.purpose], hole.net))
+    return Flash(_snapped(hole.centre), land, Tags(_HOLE_LANDS[hole.purpose], hole.net))
 
 
 def _openings(layout: Layout, file: GerberFile, _: GerberFacts, attributes: Mapping[str, Fields]) -> GerberContent:
@@ -212,8 +254,32 @@ def _legend(layout: Layout, file: GerberFile, _: GerberFacts, attributes: Mappin
 
 
 def _profile(layout: Layout, _: GerberFile, __: GerberFacts, attributes: Mapping[str, Fields]) -> GerberContent:
-    edge = Track(layout.edge, Aperture("C", (PROFILE_WIDTH,)), Tags("Profile"))
-    return GerberContent(attributes, tracks=(edge,))
+    return GerberContent(attributes, tracks=_tracks((layout.edge, *layout.cutouts), "Profile"))
+
+
+def _tracks(outlines: Iterable[Outline], function: str) -> tuple[Track, ...]:
+    pen = Aperture("C", (PROFILE_WIDTH,))
+    return tuple(Track(outline, pen, Tags(function)) for outline in outlines)
+
+
+def _strokes(layout: Layout) -> tuple[Stroke, ...]:
+    """The score lines on the grid; the standard has no function for them but "Other"."""
+    pen, tags = Aperture("C", (PROFILE_WIDTH,)), Tags("Other,ScoreLine")
+    return tuple(Stroke(_snapped(score.start), _snapped(score.end), pen, tags) for score in layout.scores)
+
+
+def _snapped(point: Point) -> Point:
+    return on_grid(point[0]), on_grid(point[1])
+
+
+def _scores(layout: Layout, _: GerberFile, __: GerberFacts, attributes: Mapping[str, Fields]) -> GerberContent:
+    return GerberContent(attributes, strokes=_strokes(layout))
+
+
+def _array(layout: Layout, _: GerberFile, __: GerberFacts, attributes: Mapping[str, Fields]) -> GerberContent:
+    """The panel as a drawing: its edge and cutouts, the outline of every board, the score lines."""
+    tracks = (*_tracks((layout.edge, *layout.cutouts), "Profile"), *_tracks(layout.boards, "Other,BoardOutline"))
+    return GerberContent(attributes, tracks=tracks, strokes=_strokes(layout))
 
 
 _HOLDS: dict[str, Callable[[Layout, GerberFile, GerberFacts, Mapping[str, Fields]], GerberContent]] = {
@@ -221,6 +287,8 @@ _HOLDS: dict[str, Callable[[Layout, GerberFile, GerberFacts, Mapping[str, Fields
     "mask": _openings,
     "legend": _legend,
     "profile": _profile,
+    "score": _scores,
+    "array": _array,
 }
 
 

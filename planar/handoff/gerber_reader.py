@@ -18,7 +18,7 @@ import numpy as np
 from planar.copper.outline import GRID, Outline
 from planar.errors import HandoffError
 from planar.handoff.gerber_attributes import Fields, attribute_fields
-from planar.handoff.gerber_content import Aperture, Flash, GerberContent, Region, Tags, Track
+from planar.handoff.gerber_content import Aperture, Flash, GerberContent, Region, Stroke, Tags, Track
 
 RADIUS_SLACK = 2.0
 """nm by which the two radii of an arc may differ; rounding the centre alone makes 1.4."""
@@ -64,7 +64,12 @@ def gerber_from_text(text: str) -> GerberContent:
     image.finish()
     image.faults += _signature_faults(joined)
     return GerberContent(
-        image.file_attributes, tuple(image.regions), tuple(image.flashes), tuple(image.tracks), tuple(image.faults)
+        image.file_attributes,
+        tuple(image.regions),
+        tuple(image.flashes),
+        tuple(image.tracks),
+        tuple(image.faults),
+        tuple(image.strokes),
     )
 
 
@@ -86,6 +91,7 @@ class _Image:
         self.regions: list[Region] = []
         self.flashes: list[Flash] = []
         self.tracks: list[Track] = []
+        self.strokes: list[Stroke] = []
         self.faults: list[str] = []
         self._attributes: dict[str, Fields] = {}
         self._macros: dict[str | None, tuple[float, ...]] = {}
@@ -284,18 +290,25 @@ class _Image:
         return math.tan(0.25 * turn)
 
     def _end_contour(self) -> None:
-        """Make a region or a track of the edges drawn since the last move; name it when it is open."""
+        """Make a region, a track or a stroke of the edges drawn since the last move; name it when it is open."""
         start, steps = self._start, self._steps
         self._start, self._steps = None, []
         if start is None:
             return
         self._contours += 1
-        if steps[-1][0] != start:
+        if len(steps) == 1 and steps[0][1] == 0.0 and not self._in_region and self._aperture is not None:
+            aperture, function = self._aperture
+            ends = self._point(start), self._point(steps[0][0])
+            self.strokes.append(Stroke(*ends, aperture, self._tags(function)))
+        elif steps[-1][0] != start:
             self.faults.append(f"an open contour from {self._shown(start)} to {self._shown(steps[-1][0])}")
-            return
-        if len(steps) < _FEWEST_CORNERS and not any(bulge for _, bulge in steps):
+        elif len(steps) < _FEWEST_CORNERS and not any(bulge for _, bulge in steps):
             self.faults.append(f"a contour without area at {self._shown(start)}")
-            return
+        else:
+            self._put_down(start, steps)
+
+    def _put_down(self, start: _Place, steps: list[_Step]) -> None:
+        """Make a region or a track of a closed contour."""
         corners = [start, *(place for place, _ in steps[:-1])]
         rows = [(*self._point(corner), bulge) for corner, (_, bulge) in zip(corners, steps, strict=True)]
         outline = Outline(np.array(rows))

@@ -33,10 +33,12 @@ LAYERS: tuple[Layer, ...] = (
     Layer("MASK_BOTTOM", 12, 0, 125, "openings in the bottom solder mask seen from the top"),
     Layer("LEGEND_TOP", 21, 0, 181, "legend printed on the top side"),
     Layer("LEGEND_BOTTOM", 22, 0, 153, "legend printed on the bottom side seen from the top"),
-    Layer("OUTLINE", 31, 0, 8, "board edge"),
+    Layer("OUTLINE", 31, 0, 8, "board edge, and beside it the outlines cut out inside it"),
+    Layer("SCORE", 32, 0, 150, "score lines drawn 0.1 mm wide, the cut is the middle"),
     Layer("DRILL_PLATED", 41, 0, 230, "plated holes, finished diameter"),
     Layer("DRILL_UNPLATED", 42, 0, 200, "unplated holes, finished diameter"),
     Layer("KEEPOUT", 51, 0, 20, "no copper but the antenna's own, no parts: on every level"),
+    Layer("NET_TIE", 52, 0, 112, "round the copper that joins signal and return on purpose, not to be made"),
     Layer("DIMENSIONS", 61, 0, 65, "scale bar and 10 mm square outside the board, not to be made"),
 )
 """Every layer an exchange file may hold, in the order they are listed everywhere."""

@@ -1,8 +1,9 @@
 """IPC-D-356A netlist for the bare-board test: every land and hole with its net, in 80 columns.
 
 A loop that is whole at DC joins signal and return, so both lands carry one net and both are end points: the tester
-then proves the loop instead of reporting a short. Vias are points between. Places are counted from the feed, seen
-from the top. The solder-mask digit names the sides on which mask covers the place.
+then proves the loop instead of reporting a short. Vias are points between. Places are counted from the origin of the
+files, seen from the top. Fiducials and marks belong to no net and are not tested. The solder-mask digit names the
+sides on which mask covers the place.
 """
 
 from __future__ import annotations
@@ -17,10 +18,11 @@ from shapely.geometry import Point as ShapelyPoint
 
 from planar.copper.arc import Point
 from planar.copper.boolean import contains
-from planar.copper.layout import Hole, Layout, Level, Pad
+from planar.copper.layout import Hole, Layout, Level, Pad, Role
 from planar.copper.outline import Outline
 from planar.errors import HandoffError
-from planar.handoff.gerber_content import DESIGNATOR, GerberFacts, flashable
+from planar.handoff.gerber_content import GerberFacts, flashable
+from planar.handoff.kind_words import KIND_WORDS
 from planar.handoff.netlist_record import (
     PLATED,
     STEP,
@@ -48,19 +50,25 @@ def write_netlist(layout: Layout, path: Path, *, facts: GerberFacts) -> None:
     Raises `HandoffError` when the format cannot hold a place or a hole, or when a net of the feed that is one
     at DC has fewer than two end points.
     """
-    records = netlist_records(layout, facts.masked, facts.via_ring_m)
+    records = netlist_records(layout, facts)
     too_few = _short_faults(layout, records)
     if too_few:
         raise HandoffError("\n".join(too_few))
-    short = short_names(record.net for record in records)
-    job = " ".join(facts.project.name.encode("ascii", "replace").decode("ascii").split())[:60]
-    lines = ["C  IPC-D-356A netlist; places from the feed, seen from the top"]
+    short = _short_names(layout)
+    job = _job_name(facts)
+    lines = [f"C  IPC-D-356A netlist; places from the {KIND_WORDS[layout.kind].origin}, seen from the top"]
     lines += [f"P  JOB {job}", "P  UNITS CUST 1"]
     lines += [f"C  {line}" for text in _remarks(layout) for line in textwrap.wrap(text, 77)]
-    lines += [line for i, pad in enumerate(layout.pads, 1) for line in named_lines(f"{DESIGNATOR}-{i}", pad.name)]
-    lines += [line for net, name in short.items() for line in named_lines(name, net)]
+    for pad, pin in zip(layout.pads, _pins(layout), strict=True):
+        lines += named_lines(f"{short.get(pad.part, pad.part)}-{pin}", pad.name)
+    lines += [line for full, name in short.items() for line in named_lines(name, full)]
     lines += [record_line(record, short) for record in records]
     path.write_bytes(("\n".join([*lines, "999"]) + "\n").encode("ascii"))
+
+
+def _job_name(facts: GerberFacts) -> str:
+    """The project's name in the letters and columns there are."""
+    return " ".join(facts.project.name.encode("ascii", "replace").decode("ascii").split())[:60]
 
 
 def read_netlist(path: Path) -> Netlist:
@@ -71,15 +79,16 @@ def read_netlist(path: Path) -> Netlist:
         raise HandoffError(f"{path.name} cannot be read as a netlist: {error}") from error
 
 
-def netlist_records(layout: Layout, masked: tuple[Level, ...], via_ring: float) -> tuple[NetRecord, ...]:
+def netlist_records(layout: Layout, facts: GerberFacts) -> tuple[NetRecord, ...]:
     """Records of a snapped `layout`: lands, plated holes, unplated holes.
 
-    `masked` are the sides with solder mask, `via_ring` the width (m) of the ring shown round a plated hole. Lands
-    are the pins 1, 2, ... of the antenna, in the layout's order.
+    Lands are the pins 1, 2, ... of their part, in the layout's order.
     """
-    lands = [_land(layout, pad, str(i), masked) for i, pad in enumerate(layout.pads, 1)]
+    masked = facts.masked
+    pairs = zip(layout.pads, _pins(layout), strict=True)
+    lands = [_land(layout, pad, pin, masked) for pad, pin in pairs]
     ends = Counter(record.net for record in lands)
-    vias = [_via(layout, hole, masked, via_ring) for hole in layout.holes if hole.plated]
+    vias = [_via(layout, hole, masked, facts.ring(layout, hole)) for hole in layout.holes if hole.plated]
     vias = [replace(via, midpoint=ends[via.net] >= 2) for via in vias]
     bare = [
         NetRecord(UNPLATED, "", "", "", False, hole.diameter, 0, hole.centre, None, None)
@@ -89,9 +98,26 @@ def netlist_records(layout: Layout, masked: tuple[Level, ...], via_ring: float) 
     return (*lands, *vias, *bare)
 
 
+def _short_names(layout: Layout) -> dict[str, str]:
+    nets = [*(pad.net for pad in layout.pads), *(hole.net for hole in layout.holes if hole.plated)]
+    return short_names(nets, (pad.part for pad in layout.pads))
+
+
+def _pins(layout: Layout) -> list[str]:
+    """Number of each land among those of its part, from 1."""
+    counts: Counter[str] = Counter()
+    pins = []
+    for pad in layout.pads:
+        counts[pad.part] += 1
+        pins.append(str(counts[pad.part]))
+    return pins
+
+
 def _remarks(layout: Layout) -> list[str]:
-    shorted = sorted(_shorted_nets(layout))
-    texts = [f"{net} joins feed and ground at DC: 0 ohm between its end points is intended" for net in shorted]
+    antennas = {island.part for island in layout.islands if island.role is Role.RADIATOR}
+    fed = {pad.net for pad in layout.pads if pad.part in antennas}
+    shorted = [(net, "feed and ground" if net in fed else "signal and return") for net in sorted(_shorted_nets(layout))]
+    texts = [f"{net} joins {ends} at DC: 0 ohm between its end points is intended" for net, ends in shorted]
     if any(max(_feature(pad)[1]) > WIDEST for pad in layout.pads):
         texts.append(f"lands larger than the columns hold are given as {WIDEST * 1e3:.3f} mm")
     return texts
@@ -107,7 +133,7 @@ def _land(layout: Layout, pad: Pad, pin: str, masked: tuple[Level, ...]) -> NetR
     at, size = _feature(pad)
     side = _SIDES[pad.level]
     held = (min(size[0], WIDEST), min(size[1], WIDEST))
-    return NetRecord(SURFACE, pad.net, DESIGNATOR, pin, False, None, side, at, held, _covered(layout, at, masked))
+    return NetRecord(SURFACE, pad.net, pad.part, pin, False, None, side, at, held, _covered(layout, at, masked))
 
 
 def _feature(pad: Pad) -> tuple[Point, tuple[float, float]]:
@@ -147,21 +173,16 @@ def _short_faults(layout: Layout, records: tuple[NetRecord, ...]) -> list[str]:
     return faults
 
 
-def netlist_mismatches(layout: Layout, folder: Path) -> list[str]:
-    """What the netlist in `folder` says otherwise than a snapped `layout`: each with what was expected.
-
-    Which sides carry mask and how wide the rings of vias are is taken from the file: a side is masked when any
-    record is covered there, the first via shows the ring of all. Everything else (units, nets, end points, places,
-    lands, holes, access, mask openings) comes from the layout.
-    """
+def netlist_mismatches(layout: Layout, folder: Path, *, facts: GerberFacts) -> list[str]:
+    """What the netlist in `folder` says otherwise than a snapped `layout` and `facts`: each with what was expected."""
     try:
         got = read_netlist(folder / NETLIST)
     except HandoffError as error:
         return [str(error)]
-    masked = tuple(level for level, bit in _SIDES.items() if any((r.covered or 0) & bit for r in got.records))
-    rings = [0.5 * (r.size[0] - r.hole) for r in got.records if r.code == PLATED and r.size and r.hole]
-    expected = netlist_records(layout, masked, rings[0] if rings else 0.0)
+    expected = netlist_records(layout, facts)
     found = list(got.faults) + _short_faults(layout, got.records)
+    if got.job != _job_name(facts):
+        found.append(f"job {got.job or 'missing'}, expected {_job_name(facts)}")
     for net in sorted({r.net for r in expected} - {r.net for r in got.records}):
         found.append(f"net {net} is missing")
     left = list(got.records)
@@ -173,8 +194,6 @@ def netlist_mismatches(layout: Layout, folder: Path) -> list[str]:
         left.remove(twin)
         found += _record_mismatches(twin, record)
     found += [f"{_called(record)}, expected none" for record in left]
-    if rings and rings[0] <= 0.0:
-        found.append(f"vias with a ring of {1e3 * rings[0]:.3f} mm, expected copper round the hole")
     found += _name_mismatches(layout, got)
     return [f"{NETLIST}: {text}" for text in found]
 
@@ -215,11 +234,12 @@ def _record_mismatches(got: NetRecord, expected: NetRecord) -> list[str]:
 
 
 def _name_mismatches(layout: Layout, got: Netlist) -> list[str]:
+    short = _short_names(layout)
     found = []
-    for i, pad in enumerate(layout.pads, 1):
-        name = got.named.get(f"{DESIGNATOR}-{i}")
+    for pad, pin in zip(layout.pads, _pins(layout), strict=True):
+        name = got.named.get(f"{short.get(pad.part, pad.part)}-{pin}")
         if name != pad.name:
-            found.append(f"pin {DESIGNATOR}-{i} is called {name}, expected {pad.name}")
+            found.append(f"pin {pad.part}-{pin} is called {name}, expected {pad.name}")
     return found
 
 

@@ -24,6 +24,8 @@ PLATED, SURFACE, UNPLATED = "317", "327", "367"
 _WIDTH = 80
 _CHUNK = 50
 _PLAIN_NET = re.compile(r"[!-~]{1,14}")
+_PLAIN_PART = re.compile(r"[!-~]{1,6}")
+_SHORT = re.compile(r"(?:NET|P)\d{5}")
 _RECORD = re.compile(
     r"(?P<code>317|327|367)(?P<net>.{14})   (?P<designator>.{6})[- ](?P<pin>.{4})(?P<midpoint>[M ])"
     r"(?:D(?P<hole>\d{4})(?P<plating>[PU])| {6})A(?P<access>0[0-2])X(?P<x>[+-]\d{6})Y(?P<y>[+-]\d{6})"
@@ -57,8 +59,8 @@ class NetRecord:
 class Netlist:
     """What a file holds: `job`, `units` as the file calls them, records, short name -> name, faults met.
 
-    `named` holds the pads' names by pin ("ANT1-1"). Nets in the records have their full names again. `faults` is
-    empty for a file that keeps the rules.
+    `named` holds the pads' names by pin ("ANT1-1"). Nets and parts in the records have their full names again.
+    `faults` is empty for a file that keeps the rules.
     """
 
     job: str
@@ -68,12 +70,18 @@ class Netlist:
     faults: tuple[str, ...]
 
 
-def short_names(nets: Iterable[str]) -> dict[str, str]:
-    """Net -> short name, for those nets that 14 columns of plain letters cannot hold."""
-    all_nets = sorted({net for net in nets if net})
-    plain = {net for net in all_nets if _PLAIN_NET.fullmatch(net)}
-    free = (name for i in range(1, 10**6) if (name := f"NET{i:05d}") not in plain)
-    return {net: next(free) for net in all_nets if net not in plain}
+def short_names(nets: Iterable[str], parts: Iterable[str] = ()) -> dict[str, str]:
+    """Net or part -> short name, for those parts that 6 columns of plain letters cannot hold and nets that 14 cannot.
+
+    A name of both a net and a part gets one short name that fits either.
+    """
+    both = {name for name in parts if name}, {name for name in nets if name}
+    taken = set().union(*both)
+    short: dict[str, str] = {}
+    for names, plain, stem in zip(both, (_PLAIN_PART, _PLAIN_NET), ("P", "NET"), strict=True):
+        free = (name for i in range(1, 10**5) if (name := f"{stem}{i:05d}") not in taken)
+        short |= {name: next(free) for name in sorted(names - short.keys()) if not plain.fullmatch(name)}
+    return short
 
 
 def named_lines(short: str, name: str) -> list[str]:
@@ -94,7 +102,8 @@ def record_line(record: NetRecord, short: Mapping[str, str]) -> str:
     covered = "  " if record.covered is None else f"S{record.covered}"
     dash = "-" if record.pin else " "
     line = (
-        f"{record.code}{short.get(record.net, record.net):<14}   {record.designator:<6}{dash}{record.pin:<4}"
+        f"{record.code}{short.get(record.net, record.net):<14}   "
+        f"{short.get(record.designator, record.designator):<6}{dash}{record.pin:<4}"
         f"{'M' if record.midpoint else ' '}{hole}A{record.access:02d}X{x:+07d}Y{y:+07d}{feature} {covered}"
     )
     return line.ljust(_WIDTH)
@@ -134,7 +143,7 @@ def parsed(lines: Sequence[str]) -> Netlist:
     if parameters.get("UNITS") != "CUST 1":
         faults.append(f"UNITS {parameters.get('UNITS', 'missing')}, expected CUST 1 (0.001 mm)")
     named = {short: text.encode("ascii", "replace").decode("unicode_escape") for short, text in names.items()}
-    full = tuple(_with_full_net(record, named) for record in records)
+    full = tuple(_with_full_names(record, named) for record in records)
     return Netlist(parameters.get("JOB", ""), parameters.get("UNITS", ""), full, named, tuple(faults))
 
 
@@ -162,5 +171,10 @@ def _record_faults(match: re.Match[str]) -> list[str]:
     return [f"record {match['code']} with plating {match['plating']}, expected {expected}"]
 
 
-def _with_full_net(record: NetRecord, named: Mapping[str, str]) -> NetRecord:
-    return replace(record, net=named.get(record.net, record.net))
+def _with_full_names(record: NetRecord, named: Mapping[str, str]) -> NetRecord:
+    full = {short: name for short, name in named.items() if _SHORT.fullmatch(short)}
+    return replace(
+        record,
+        net=full.get(record.net, record.net),
+        designator=full.get(record.designator, record.designator),
+    )

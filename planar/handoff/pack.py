@@ -11,6 +11,7 @@ import hashlib
 import shutil
 import tempfile
 import zipfile
+from collections import Counter
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -56,6 +57,30 @@ def packed(destination: Path) -> Iterator[Path]:
     _remove_aside(work, destination)
 
 
+@contextmanager
+def renewed(pack: Path) -> Iterator[Path]:
+    """A copy of the pack at `pack` to change, which takes its place when the block ends without an exception.
+
+    Raises `HandoffError` as `packed`.
+    """
+    with packed(pack) as fresh:
+        if pack.is_dir():
+            shutil.copytree(pack, fresh, dirs_exist_ok=True, ignore=shutil.ignore_patterns(MANIFEST))
+        yield fresh
+
+
+@contextmanager
+def extended(pack: Path, part: str) -> Iterator[Path]:
+    """An empty folder `part` to write into, which joins the pack at `pack` when the block ends without an exception.
+
+    The rest of the pack stays as it is, an earlier `part` is replaced. Raises `HandoffError` as `packed`.
+    """
+    with renewed(pack) as fresh:
+        shutil.rmtree(fresh / part, ignore_errors=True)
+        (fresh / part).mkdir()
+        yield fresh / part
+
+
 def check_destination(destination: Path) -> None:
     """Raise `HandoffError` where `packed` would refuse `destination`: worth asking before long work."""
     destination = destination.absolute()
@@ -95,9 +120,19 @@ def _remove_empty(folders: list[Path]) -> None:
         folder.rmdir()
 
 
+def is_pack(folder: Path) -> bool:
+    """Whether `folder` holds a result of ours: it has the list of its files."""
+    return (folder / MANIFEST).is_file()
+
+
+def file_hashes(folder: Path) -> dict[str, str]:
+    """Path relative to `folder` -> SHA-256 of every file in it but the list of them, sorted by path."""
+    return {name: _hash(path) for name, path in _files(folder).items() if name != MANIFEST}
+
+
 def write_manifest(folder: Path) -> None:
     """Write `SHA256SUMS`: hash and path of every other file in `folder`, sorted by path."""
-    lines = [f"{_hash(path)}  {name}\n" for name, path in _files(folder).items() if name != MANIFEST]
+    lines = [f"{digest}  {name}\n" for name, digest in file_hashes(folder).items()]
     (folder / MANIFEST).write_bytes("".join(lines).encode("utf-8"))
 
 
@@ -112,11 +147,23 @@ def write_zip(folder: Path, path: Path) -> None:
 
 
 def check_zip(folder: Path, path: Path) -> None:
-    """Raise `HandoffError` unless the archive `path` holds the files of `folder` and no others."""
-    with zipfile.ZipFile(path) as archive:
-        held = {name: archive.read(name) for name in archive.namelist()}
-    if held != {name: file.read_bytes() for name, file in _files(folder).items()}:
-        raise HandoffError(f"{path.name} does not hold the files of {folder.name}")
+    """Raise `HandoffError` naming what is wrong unless the archive `path` holds the files of `folder`, each once, and
+    no others."""
+    try:
+        with zipfile.ZipFile(path) as archive:
+            names = archive.namelist()
+            held = {name: archive.read(name) for name in names}
+    except (OSError, zipfile.BadZipFile) as error:
+        raise HandoffError(f"{path.name} cannot be read as an archive: {error}") from error
+    right = {name: file.read_bytes() for name, file in _files(folder).items()}
+    wrong = [
+        *(f"lacks {name}" for name in right if name not in held),
+        *(f"holds {name}, which is not there" for name in held if name not in right),
+        *(f"holds another {name}" for name in held if name in right and held[name] != right[name]),
+        *(f"holds {name} {count} times" for name, count in Counter(names).items() if count > 1),
+    ]
+    if wrong:
+        raise HandoffError(f"{path.name} does not hold the files of {folder.name}: {'; '.join(wrong)}")
 
 
 def read_manifest(folder: Path) -> dict[str, str]:
@@ -127,6 +174,23 @@ def read_manifest(folder: Path) -> dict[str, str]:
         return {name: digest for digest, name in pairs}
     except (OSError, ValueError) as error:
         raise HandoffError(f"{folder / MANIFEST} cannot be read: {error}") from error
+
+
+def check_manifest(folder: Path) -> None:
+    """Raise `HandoffError` naming what is wrong unless `folder` holds every file its `SHA256SUMS` lists, as listed, and
+    nothing beside."""
+    listed, files = read_manifest(folder), _files(folder)
+    wrong = [
+        *(f"{name}: listed, but not there" for name in listed if name not in files),
+        *(f"{name}: there, but not listed" for name in files if name not in listed and name != MANIFEST),
+        *(
+            f"{n}: changed since it was listed"
+            for n in sorted(listed.keys() & files)
+            if not _is_ours(files[n], listed[n])
+        ),
+    ]
+    if wrong:
+        raise HandoffError("\n".join([f"{folder / MANIFEST} does not agree with the folder:", *wrong]))
 
 
 def _files(folder: Path) -> dict[str, Path]:

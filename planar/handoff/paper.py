@@ -27,7 +27,11 @@ POINT_MM = 25.4 / 72.0
 CURVE_ERROR = 0.5e-6
 """m, how far a curve may stray from its arc, on the board."""
 PLAIN, BOLD = "DejaVuSans", "DejaVuSans-Bold"
-BLACK = "#000000"
+BLACK, WHITE = "#000000", "#ffffff"
+_HALO = 0.7
+"""mm, width of the white line round a letter, half of it outside."""
+_FILLED, _OUTLINES_ALONE = 0, 1
+"""How PDF renders text."""
 
 
 @dataclass(frozen=True)
@@ -130,16 +134,24 @@ class Paper:
         """Write the file."""
         self._canvas.save()
 
-    def text(self, at: Point, text: str, size: float, *, font: str = PLAIN, anchor: str = "left") -> None:
-        """A line of text at `size` points whose base line begins, is centred or ends at `at`."""
+    def text(
+        self, at: Point, text: str, size: float, *, font: str = PLAIN, anchor: str = "left", halo: bool = False
+    ) -> None:
+        """A line of text at `size` points whose base line begins, is centred or ends at `at`; a white `halo` keeps it
+        readable on lines."""
         draw = {
             "left": self._canvas.drawString,
             "centre": self._canvas.drawCentredString,
             "right": self._canvas.drawRightString,
         }
-        self._canvas.setFillColor(BLACK)
         self._canvas.setFont(font, size)
-        draw[anchor](at[0] / POINT_MM, at[1] / POINT_MM, text)
+        if halo:
+            self._canvas.setLineWidth(_HALO / POINT_MM)
+            self._canvas.setStrokeColor(WHITE)
+            self._canvas.setDash([])
+            draw[anchor](at[0] / POINT_MM, at[1] / POINT_MM, text, mode=_OUTLINES_ALONE)
+        self._canvas.setFillColor(BLACK)
+        draw[anchor](at[0] / POINT_MM, at[1] / POINT_MM, text, mode=_FILLED)
 
     def upright_text(self, at: Point, text: str, size: float) -> None:
         """A line of text turned to read from below, its middle at `at`."""
@@ -163,8 +175,15 @@ class Paper:
         path.rect(*(value / POINT_MM for value in (*corner, *size)))
         self._draw(path, pen)
 
-    def outlines(self, outlines: Sequence[Outline], view: View, pen: Pen) -> None:
-        """Outlines of the board, each a path of its own."""
+    def discs(self, centres: Iterable[Point], diameter: float, pen: Pen) -> None:
+        """Circles of a `diameter` in mm."""
+        path = self._canvas.beginPath()
+        for x, y in centres:
+            path.circle(x / POINT_MM, y / POINT_MM, 0.5 * diameter / POINT_MM)
+        self._draw(path, pen)
+
+    def outlines(self, outlines: Sequence[Outline], view: View, pen: Pen, *, inside: bool = False) -> None:
+        """Outlines of the board, each a path of its own; of a line drawn `inside` only its inner half is seen."""
         for outline in outlines:
             path = self._canvas.beginPath()
             path.moveTo(*self._point(outline.edges[0].start, view))
@@ -175,7 +194,11 @@ class Paper:
                     for curve in arc_curves(edge):
                         path.curveTo(*(c for point in curve for c in self._point(point, view)))
             path.close()
+            self._canvas.saveState()
+            if inside:
+                self._canvas.clipPath(path, stroke=0, fill=0)
             self._draw(path, pen)
+            self._canvas.restoreState()
 
     def _point(self, point: Point, view: View) -> Point:
         x, y = view.place(point)

@@ -33,8 +33,8 @@ def line_cells(line: ImpedanceLine, sign: str, ohm: str) -> tuple[str, ...]:
     """Name, kind, width, gap, level, reference, impedance and instruction of a line."""
     tolerance = "" if line.tolerance_ohm is None else f" {sign}{line.tolerance_ohm:.1f}"
     return (
-        line.name,
-        line.kind,
+        line.called,
+        line.kind.replace("-", " "),
         f"{1e3 * line.width_m:.3f} mm",
         "" if line.gap_m is None else f"{1e3 * line.gap_m:.3f} mm",
         line.level,

@@ -10,7 +10,9 @@ import json
 from pathlib import Path
 from typing import Any
 
+from planar.copper.layout import Kind
 from planar.errors import HandoffError
+from planar.handoff.kind_words import KIND_WORDS
 from planar.handoff.sheet_cells import layer_cells, line_cells, with_spread
 from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, SheetLayer, StackupSheet
 from planar.units import show
@@ -21,18 +23,21 @@ def write_stackup_json(sheet: StackupSheet, path: Path) -> None:
     path.write_bytes((json.dumps(_content(sheet), indent=2, ensure_ascii=False) + "\n").encode("utf-8"))
 
 
-def check_stackup(sheet: StackupSheet, path: Path) -> None:
-    """Read the JSON at `path` again. Raises `HandoffError` naming what differs from `sheet`."""
-    got, expected = _content(read_stackup_json(path)), _content(sheet)
-    wrong = [f"{path.name}: {k} is {got[k]}, expected {expected[k]}" for k in expected if got[k] != expected[k]]
-    if wrong:
-        raise HandoffError("\n".join(wrong))
+def stackup_mismatches(sheet: StackupSheet, path: Path) -> list[str]:
+    """What the JSON at `path` says otherwise than `sheet`: each with what was expected."""
+    try:
+        got, expected = _content(read_stackup_json(path)), _content(sheet)
+    except HandoffError as error:
+        return [str(error)]
+    pairs = [(key, got.get(key), expected.get(key)) for key in {**expected, **got}]
+    return [f"{path.name}: {key} is {here}, expected {right}" for key, here, right in pairs if here != right]
 
 
 def _content(sheet: StackupSheet) -> dict[str, Any]:
     facts = sheet.facts
     return {
         "name": facts.name,
+        **({} if facts.kind is Kind.SINGLE else {"kind": str(facts.kind)}),
         "frequency_hz": facts.frequency_hz,
         "finish": facts.finish,
         "laminate_specification": facts.specification,
@@ -65,6 +70,7 @@ def _sheet(content: dict[str, Any]) -> StackupSheet:
         content["laminate_specification"],
         content["outline_tolerance_mm"] * 1e-3,
         content["dc_short_between_feed_and_ground"],
+        Kind(content.get("kind", Kind.SINGLE)),
     )
     return StackupSheet(
         facts,
@@ -152,7 +158,7 @@ def write_stackup_markdown(sheet: StackupSheet, path: Path) -> None:
     ]
     if sheet.surroundings:
         surroundings = _table(_LAYER_HEAD, [layer_cells(layer, _length, "+-") for layer in sheet.surroundings])
-        parts += ["## Around the board", "Not made by the fab; the antenna is designed for it.", surroundings]
+        parts += ["## Around the board", f"Not made by the fab; {KIND_WORDS[sheet.facts.kind].around}.", surroundings]
     parts += ["## Impedance", *_impedance(sheet), "## Notes", "\n".join(f"- {note}" for note in sheet.notes)]
     path.write_bytes(("\n\n".join(parts) + "\n").encode("utf-8"))
 

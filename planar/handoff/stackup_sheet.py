@@ -9,9 +9,17 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from planar.copper.layout import Kind
+from planar.handoff.kind_words import KIND_WORDS
 from planar.stackup import Layer, LayerKind, Stackup, loss_tangent
 from planar.units import show
 
+_CALLED = {
+    "line_width": "feed line",
+    "transformer_width": "transformer",
+    "end_width": "line end",
+    "strip_width": "coplanar strips",
+}
 _OF_THE_BOARD = (LayerKind.LEGEND, LayerKind.MASK, LayerKind.COPPER, LayerKind.DIELECTRIC)
 
 
@@ -32,6 +40,11 @@ class ImpedanceLine:
     impedance_ohm: float
     tolerance_ohm: float | None
     controlled: bool
+
+    @property
+    def called(self) -> str:
+        """What people call it; `name` is that of its width among the dimensions."""
+        return _CALLED.get(self.name, self.name.replace("_", " "))
 
     @property
     def instruction(self) -> str:
@@ -63,7 +76,8 @@ class SheetFacts:
     """What a sheet says beside the stackup.
 
     `frequency_hz` is the design frequency; `specification` the laminate's IPC-4101 or IPC-4103 sheet, None if
-    unknown; `outline_tolerance_m` of the board edge; `dc_short` whether feed and ground are one net at DC.
+    unknown; `outline_tolerance_m` of the board edge; `dc_short` whether feed and ground are one net at DC; `kind`
+    that of the layout.
     """
 
     name: str
@@ -72,6 +86,7 @@ class SheetFacts:
     specification: str | None
     outline_tolerance_m: float
     dc_short: bool
+    kind: Kind = Kind.SINGLE
 
 
 @dataclass(frozen=True)
@@ -132,24 +147,21 @@ def _row(layer: Layer, stackup: Stackup, frequency: float) -> SheetLayer:
 def _notes(stackup: Stackup, lines: tuple[ImpedanceLine, ...], facts: SheetFacts) -> tuple[str, ...]:
     """What every fab sheet carries."""
     masked = [layer.name.removeprefix("mask-") for layer in stackup.layers if layer.kind is LayerKind.MASK]
-    controlled = [line.name for line in lines if line.controlled]
-    others = [line.name for line in lines if not line.controlled]
-    short = (
-        "The antenna is a DC short: 0 ohm between feed and ground is intended, not a fault to repair."
-        if facts.dc_short
-        else "Feed and ground are not connected at DC."
-    )
+    controlled = [line.called for line in lines if line.controlled]
+    others = [line.called for line in lines if not line.controlled]
+    words = KIND_WORDS[facts.kind]
     return (
         "Dimensions are finished copper at the foot of the conductor.",
         "Artwork is 1:1 with no etch compensation included; the fab applies its own.",
         f"Copper: {show(stackup.base_copper, 'length')} base, {show(stackup.finished_copper, 'length')} finished.",
-        f"Solder mask over the antenna: {' and '.join(sorted(masked, reverse=True)) + ' side' if masked else 'none'}. "
+        f"Solder mask over the {words.masked}: "
+        f"{' and '.join(sorted(masked, reverse=True)) + ' side' if masked else 'none'}. "
         "It is part of the design; do not add or remove it.",
         f"Surface finish: {facts.finish}.",
         f"Impedance-controlled: {', '.join(controlled) or 'none'}. "
         f"Not controlled, do not adjust: {', '.join(others) or 'none'}.",
-        short,
-        "Inside the antenna window: no thieving, teardrops, order number, width change or edge clip-back.",
+        words.short if facts.dc_short else words.no_short,
+        f"{words.window}: no thieving, teardrops, order number, width change or edge clip-back.",
         f"Board outline tolerance: +-{show(facts.outline_tolerance_m, 'length')}.",
         f"Laminate: {stackup.substrate.material}; {facts.specification or 'no specification sheet known'}.",
     )

@@ -21,7 +21,7 @@ from planar.handoff import (
     SheetFacts,
     StackupSheet,
     check_fabrication_files,
-    check_files,
+    check_layout_files,
     check_zip,
     creation_date,
     extended,
@@ -64,7 +64,7 @@ def write_making(making: Making, folder: Path) -> None:
 
 def check_making(making: Making, folder: Path) -> None:
     """Read the files of `write_making` again and compare. Raises `HandoffError` naming what differs."""
-    check_files(making.layout, folder / "layout")
+    check_layout_files(making.layout, folder / "layout", status=making.status)
     check_fabrication_files(making.layout, making.sheet, folder / "fabrication", facts=making.facts)
     check_zip(folder / "fabrication", folder / f"{making.name}-fabrication.zip")
 

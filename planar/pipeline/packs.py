@@ -13,9 +13,7 @@ from planar.design.design import Design
 from planar.design.design_file import design_facts
 from planar.design.portrait_file import write_portrait
 from planar.design.prediction import Prediction
-from planar.handoff import (
-    FabricationFacts,
-)
+from planar.handoff import BuildFacts, Expected, FabricationFacts
 from planar.network.response import Response
 from planar.network.spice import spice_subcircuit
 from planar.network.touchstone import write_touchstone
@@ -71,7 +69,30 @@ def check_pack(design: Design, folder: Path) -> None:
 def _making(design: Design, digest: str) -> Making:
     choices, layout = design.choices, design.layout
     gerber = gerber_facts(design.name, digest, choices, design_ring(design))
-    facts = FabricationFacts(gerber, choices.fab.min_track, choices.fab.min_gap, choices.fab.hole_tolerance)
+    fab = choices.fab
+    build = _build_facts(design)
+    facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance, build=build)
     lines = impedance_lines(design)
     sheet = sheet_of(layout, choices, choices.stackup, lines, name=design.name, dc_short=layout.dc_short)
     return Making(design.name, layout, sheet, facts, design.status)
+
+
+def _build_facts(design: Design) -> BuildFacts:
+    """What the page for who builds the board says: connector, what is asked, what to expect, what cuts do."""
+    target, connector, said = design.choices.brief.target, design.choices.connector, design.prediction
+    expected = None
+    if said is not None:
+        band = said.margins.band
+        matched = None if band is None else (band.low, band.high)
+        expected = Expected(said.best_match, said.margins.worst_db, matched, said.centre.input_impedance_ohm)
+    return BuildFacts(
+        connector.title,
+        connector.balanced,
+        target.impedance,
+        target.band,
+        target.match_db,
+        target.transmit,
+        design.status,
+        expected,
+        tuple((cut.name, cut.hz) for cut in design.cuts[1:]),  # the first is the whole board
+    )

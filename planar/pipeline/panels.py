@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -67,12 +67,14 @@ def panel(
     count = None if question.count is None else _read_count(question.count)
     progress("drawing the board")
     design = read_design(source, library)
-    digest = str(json.loads(source.read_bytes())["hash"])
+    said = json.loads(source.read_bytes())
     progress("planning the panel")
-    coupon = design_coupon(design.choices, design.lines, library=library).layout if question.coupon else None
-    request = replace(_request(design, digest, count, question.separation), coupon=coupon)
+    coupon = design_coupon(design.choices, design.lines, library=library) if question.coupon else None
+    request = _request(design, said["hash"], count, question.separation)
+    request = replace(request, coupon=None if coupon is None else coupon.layout)
     planned = plan_panel(design.layout, design.choices.fab, request)
-    making = _making(design, planned, digest)
+    ring = None if coupon is None else coupon.dimensions["via_ring"]
+    making = _making(design, planned, said, coupon_ring=ring)
     with beside_design(source, outputs / f"{design.name}-{PART}", PART) as (fresh, folder):
         progress("writing files")
         write_making(making, fresh)
@@ -104,7 +106,8 @@ def _request(design: Design, digest: str, count: tuple[int, int] | None, separat
     )
 
 
-def _making(design: Design, planned: PlannedPanel, digest: str) -> Making:
+def _making(design: Design, planned: PlannedPanel, said: Mapping[str, Any], *, coupon_ring: float | None) -> Making:
+    """The panel to be made; `said` is the content of the design's file, `coupon_ring` the via ring of a coupon, m."""
     choices, fab, name = design.choices, design.choices.fab, f"{design.name}-{PART}"
     panel = PanelFacts(
         planned.columns,
@@ -115,12 +118,12 @@ def _making(design: Design, planned: PlannedPanel, digest: str) -> Making:
         bad_boards_allowed=True,
         coupon_size_m=None if planned.coupon is None else _size(planned.coupon),
     )
-    gerber = gerber_facts(name, digest, choices, design_ring(design))
+    gerber = replace(gerber_facts(name, said["hash"], choices, design_ring(design)), coupon_ring_m=coupon_ring)
     facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance, panel)
     dc_short = design.layout.dc_short
     lines = impedance_lines(design)
     sheet = sheet_of(planned.layout, choices, choices.stackup, lines, name=name, dc_short=dc_short)
-    return Making(name, planned.layout, sheet, facts, design.status)
+    return Making(name, planned.layout, sheet, facts, said["status"])
 
 
 def panel_facts(design: Design, planned: PlannedPanel) -> dict[str, Any]:

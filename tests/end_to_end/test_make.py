@@ -101,8 +101,9 @@ def test_pack_is_complete(pack: Path) -> None:
     levels = {str(island["level"]) for island in facts(pack)["copper"]}  # type: ignore[attr-defined]
     layout = {"board.dxf", "board-segments.dxf", "outline.dxf", "board.gds", "layers.csv", "README.txt"}
     layout |= {f"preview-{level}.svg" for level in levels}
-    expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir"}
+    expected = {"SHA256SUMS", "brief.toml", "design.json", "antenna.s1p", "circuit.cir", "field.json", "report.html"}
     fabrication = {"stackup.json", "stackup.md", "job.gbrjob", "netlist.ipc", "drawing.pdf", "profile.gbr"}
+    fabrication |= {"README-cam.txt", "README-build.txt"}
     stackup = json.loads((pack / "fabrication" / "stackup.json").read_text(encoding="utf-8"))
     named = {layer["name"] for layer in stackup["layers_top_to_bottom"]}
     for level in levels:

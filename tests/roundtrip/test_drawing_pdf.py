@@ -24,9 +24,10 @@ from planar.copper.layout import Layout, Level, bounds_of
 from planar.copper.outline import Outline
 from planar.copper.shapes import rounded_rectangle
 from planar.errors import HandoffError
-from planar.handoff.drawing_figure import COPPER, drill_rows
+from planar.handoff.drawing_holes import drill_rows
 from planar.handoff.drawing_pdf import write_drawing
-from planar.handoff.fab_notes import QUESTIONS, DrawingFacts, fab_notes
+from planar.handoff.drawing_pens import COPPER
+from planar.handoff.fab_notes import DrawingFacts, fab_notes
 from planar.handoff.gerber_attributes import ProjectFacts, creation_date
 from planar.handoff.paper import arc_curves
 from planar.handoff.stackup_sheet import ImpedanceLine, SheetFacts, StackupSheet, stackup_sheet
@@ -38,7 +39,7 @@ HASH = "0123456789abcdef" * 4
 MM_PER_POINT = 25.4 / 72.0
 LINES = (
     ImpedanceLine("feed_line", "microstrip", 3.05e-3, None, "top", "bottom", 50.0, 5.0, True),
-    ImpedanceLine("transformer_of_the_line", "coplanar strips", 1.14e-3, 0.27e-3, "top", "none", 150.0, None, False),
+    ImpedanceLine("transformer_width", "coplanar-strips", 1.14e-3, 0.27e-3, "top", "none", 150.0, None, False),
 )
 
 
@@ -144,14 +145,46 @@ def test_pages_are_a4_one_for_each_level_and_one_of_tables(board: Layout, tmp_pa
         assert re.search(rf"[1-9] of {len(document)}", text)
 
 
-def test_copper_has_its_true_size_on_paper(board: Layout, tmp_path: Path) -> None:
-    """At 1:1 the extents on paper are those of the board within 1 um, what curves may stray."""
+def scale_of(page: pypdfium2.PdfPage) -> float:
+    """Scale as the title block states it, larger than 1 for an enlargement."""
+    (enlarged, reduced), *others = re.findall(r"\b(\d+):(\d+)\b", page.get_textpage().get_text_bounded())
+    assert not others
+    return int(enlarged) / int(reduced)
+
+
+def test_copper_has_the_stated_size_on_paper(board: Layout, tmp_path: Path) -> None:
+    """Extents on paper are those of the board within 1 um of the board, what curves may stray. Boards of 125 by 110 and
+    118 by 121 mm fit A4 at true size and not at twice it, one of 40 by 40 mm at twice it and not at five times."""
     document = drawing(board, tmp_path)
     for page, level in zip(document, board.levels, strict=False):
-        assert re.search(r"\b1:1\b", page.get_textpage().get_text_bounded())
+        scale = scale_of(page)
+        assert scale == (2.0 if max(board.size) < 0.05 else 1.0)
         points = np.vstack(copper_paths(page, board, level))
         x0, y0, x1, y1 = bounds_of(board.copper(level))
-        assert np.ptp(points, axis=0) == pytest.approx([1e3 * (x1 - x0), 1e3 * (y1 - y0)], abs=1e-3)
+        extents = [1e3 * scale * (x1 - x0), 1e3 * scale * (y1 - y0)]
+        assert np.ptp(points, axis=0) == pytest.approx(extents, abs=1e-3 * scale)
+
+
+def test_small_board_is_enlarged_five_times(one_level: Layout, tmp_path: Path) -> None:
+    """Everything of the loop of 33 mm shrunk to a fifth, so that 5:1 draws it as large as the loop itself."""
+
+    def small(outline: Outline) -> Outline:
+        return Outline(outline.vertices * (0.2, 0.2, 1.0))
+
+    layout = replace(
+        one_level,
+        islands=tuple(replace(island, outline=small(island.outline)) for island in one_level.islands),
+        pads=tuple(replace(pad, outline=small(pad.outline)) for pad in one_level.pads),
+        mask_openings=(),
+        edge=small(one_level.edge),
+        keepout=(),
+    ).snapped()
+    page = drawing(layout, tmp_path)[0]
+    assert scale_of(page) == 5.0
+    x0, y0, x1, y1 = bounds_of(one_level.copper(Level.TOP))
+    points = np.vstack(copper_paths(page, layout, Level.TOP))
+    assert np.ptp(points, axis=0) == pytest.approx([1e3 * (x1 - x0), 1e3 * (y1 - y0)], abs=5e-3)
+    assert "10 mm = 50 mm on paper" in page.get_textpage().get_text_bounded()
 
 
 def test_pixels_measure_the_same(two_level: Layout, tmp_path: Path) -> None:
@@ -172,7 +205,7 @@ def test_curves_stay_within_a_micrometre_of_the_arcs(board: Layout, tmp_path: Pa
     for page, level in zip(document, board.levels, strict=False):
         for points, outline in zip(copper_paths(page, board, level, 8), board.copper(level), strict=True):
             first = np.array(outline.edges[0].start)
-            metres = 1e-3 * (points - points[0]) + first
+            metres = 1e-3 * (points - points[0]) / scale_of(page) + first
             assert max(distance_to(outline, tuple(p)) for p in metres) < 1e-6
 
 
@@ -218,7 +251,8 @@ def test_large_board_is_reduced_to_a_scale_of_iso_5455(two_level: Layout, tmp_pa
 
 def test_wide_board_lies_across_the_sheet(two_level: Layout, tmp_path: Path) -> None:
     edge = rounded_rectangle(-0.12, -0.051, 0.12, 0.051, radius=3e-3)
-    width, height = drawing(replace(two_level, edge=edge, keepout=()), tmp_path)[0].get_size()
+    board = replace(two_level, edge=edge, keepout=(), holes=two_level.holes[:1])
+    width, height = drawing(board, tmp_path)[0].get_size()
     assert width > height
 
 
@@ -234,18 +268,60 @@ def test_dimensions_drills_and_title(two_level: Layout, tmp_path: Path) -> None:
         "125.000", "110.000", "60.000 mm from the left and 55.000 mm from the lower side",
         "0.300 mm ±0.100 mm plated via", "2.500 mm ±0.100 mm unplated mounting hole",
         "3.200 mm ±0.100 mm unplated mounting hole", "top copper, seen from the top",
-        "bottom copper, seen from the top", "keepout on every level", "100 mm = 100 mm on paper printed at 100 %",
+        "bottom copper, seen from the top", "keepout on every level", "4 × R 3.000",
+        "B at x, y from the origin: (-30.000, -25.000)",
+        "C at x, y from the origin: (30.000, 20.000)", "100 mm = 100 mm on paper printed at 100 %",
     ):  # fmt: skip
         assert words in text
     assert [row.letter for row in drill_rows(two_level)] == ["A", "B", "C"]
+
+
+def test_key_lists_what_is_drawn_and_nothing_else(
+    two_level: Layout, one_level: Layout, drawn: Layout, tmp_path: Path
+) -> None:
+    """A net tie only where signal meets return, a way to the feed only where keepout leaves one, a mask opening only on
+    the side that has one."""
+    openings = tuple(m for m in two_level.mask_openings if m.level is Level.TOP)
+    pages = drawing(replace(two_level, mask_openings=openings, keepout=()), tmp_path)
+    top, bottom, tables = (page.get_textpage().get_text_bounded() for page in pages)
+    for words, sides in (
+        ("mask opening", (True, False)), ("copper of the other level", (True, True)), ("keepout", (False, False)),
+        ("open for the feed", (False, False)), ("signal meets return here, intended", (False, False)),
+    ):  # fmt: skip
+        assert (words in top, words in bottom) == sides, words
+    assert re.search(r"scale\s.*none", tables, re.DOTALL)
+    told = text_of(drawing(drawn, tmp_path))
+    assert "open for the feed" in told
+    assert "signal meets return here, intended" in told
+    alone = text_of(drawing(one_level, tmp_path))
+    assert "signal meets return here, intended" in alone
+    assert "copper of the other level" not in alone
+
+
+def test_letters_stand_inside_the_board_and_apart(drawn: Layout, tmp_path: Path) -> None:
+    """Each letter of a hole or group of holes on paper: within the edge of 1:1, none over another."""
+    page = drawing(drawn, tmp_path)[0]
+    text = page.get_textpage()
+    low = 8.0 + 22.0 + 60.0  # above title block, drill table and key
+    chars = [
+        (text.get_text_range(i, 1), [MM_PER_POINT * c for c in text.get_charbox(i)]) for i in range(text.count_chars())
+    ]
+    letters = {(c, *(round(v, 2) for v in box)) for c, box in chars if c in "AB" and box[1] > low}
+    assert {c for c, *_ in letters} == {"A", "B"}
+    boxes = [box for _, *box in letters]
+    assert max(b[2] for b in boxes) - min(b[0] for b in boxes) < 1e3 * drawn.size[0]
+    assert max(b[3] for b in boxes) - min(b[1] for b in boxes) < 1e3 * drawn.size[1]
+    for i, a in enumerate(boxes):
+        assert not any(a[0] < b[2] and b[0] < a[2] and a[1] < b[3] and b[1] < a[3] for b in boxes[i + 1 :])
 
 
 def test_tables_and_notes(board: Layout, tmp_path: Path) -> None:
     sheet = sheet_for(board)
     text = text_of(drawing(board, tmp_path))
     for words in (
-        "1600 µm ±10 %", "43 µm", "35 µm", "4.300 ±5 %", "0.0200 ±30 %", "woven glass & <epoxy>", "868.3 MHz",
-        "50.0 ±5.0 Ω", "150.0 Ω", "3.050 mm", "0.270 mm", "not controlled, do not adjust",
+        "1.6 mm ±10 %", "43 µm", "35 µm", "4.300 ±5 %", "0.0200 ±30 %", "woven glass & <epoxy>", "868.3 MHz",
+        "50.0 ±5.0 Ω", "150.0 Ω", "transformer coplanar strips",
+        "Not controlled, do not adjust: transformer.", "3.050 mm", "0.270 mm", "not controlled, do not adjust",
         "Dimensions are finished copper at the foot of the conductor.", "no etch compensation included",
         "35 µm base, 43 µm finished", "Solder mask over the antenna: top side.", "Surface finish: ENIG.",
         "no thieving, teardrops, order number, width change or edge clip-back", "Board outline tolerance: ±0.15 mm.",
@@ -255,8 +331,10 @@ def test_tables_and_notes(board: Layout, tmp_path: Path) -> None:
         assert words in text
     notes = fab_notes(board, sheet, facts=facts_for(board.name))
     for note in notes:
-        assert re.sub(r"\s+", " ", note.replace("+-", "±").replace(" um ", " µm ")) in text
-    short = "0 ohm between feed and ground is intended" in text
+        signs = note.replace("+-", "±").replace(" um ", " µm ").replace("0 ohm", "0 Ω")
+        assert re.sub(r"\s+", " ", signs) in text
+    assert " ohm" not in text  # one way to write a unit on one paper
+    short = "0 Ω between feed and ground is intended" in text
     assert short == board.dc_short
 
 
@@ -281,77 +359,9 @@ def test_many_lines_go_on_to_further_sheets(two_level: Layout, tmp_path: Path) -
     )
     document = pypdfium2.PdfDocument(tmp_path / "drawing.pdf")
     assert len(document) > 3
-    assert all(f"line_{i} " in text_of(document) for i in range(60))
+    assert all(f"line {i} " in text_of(document) for i in range(60))
     for page in document:
         text = page.get_textpage()
-        search = text.search("line_")
+        search = text.search("line ")
         while found := search.get_next():
             assert MM_PER_POINT * text.get_charbox(found[0])[1] > 8.0 + 22.0  # above the title block
-
-
-def blank(layout: Layout, sheet: StackupSheet, **changes: object) -> tuple[StackupSheet, DrawingFacts]:
-    """The sheet and the facts with one answer changed."""
-    facts = facts_for(layout.name)
-    project = {k: v for k, v in changes.items() if k in ("revision", "name_of_project")}
-    if project:
-        named = {"name": project.get("name_of_project", layout.name), "revision": project.get("revision", "A")}
-        facts = replace(facts, project=replace(facts.project, **named))
-    own = {k: v for k, v in changes.items() if k in ("netlist", "hole_tolerance_m")}
-    facts = replace(facts, **own)
-    of_facts = {k: v for k, v in changes.items() if k in SheetFacts.__dataclass_fields__}
-    sheet = replace(sheet, facts=replace(sheet.facts, **of_facts))
-    rest = {k: v for k, v in changes.items() if k in ("notes", "layers", "thickness_tolerance")}
-    return replace(sheet, **rest), facts
-
-
-BLANKS: dict[str, tuple[dict[str, object], str]] = {
-    "revision": ({"revision": " "}, "revision is blank"),
-    "finish": ({"finish": ""}, "finish is blank"),
-    "specification": ({"specification": ""}, "laminate specification is blank"),
-    "netlist": ({"netlist": ""}, "netlist is blank"),
-    "outline tolerance": ({"outline_tolerance_m": 0.0}, "outline tolerance"),
-    "hole tolerance": ({"hole_tolerance_m": 0.0}, "no answer to: hole tolerance"),
-    "thickness tolerance": ({"thickness_tolerance": 0.0}, "no answer to: board thickness"),
-    "every note": ({"notes": ()}, "no answer to: mask over the antenna"),
-    "another project": ({"name_of_project": "other"}, "is called 'other'"),
-}
-
-
-@pytest.mark.parametrize("answer", BLANKS)
-def test_blank_answer_is_refused(two_level: Layout, tmp_path: Path, answer: str) -> None:
-    changes, words = BLANKS[answer]
-    sheet, facts = blank(two_level, sheet_for(two_level), **changes)
-    with pytest.raises(HandoffError, match=words):
-        write_drawing(two_level, sheet, tmp_path / "drawing.pdf", facts=facts)
-    assert not (tmp_path / "drawing.pdf").exists()
-
-
-def test_each_note_left_out_is_missed(two_level: Layout) -> None:
-    """Every note of the stackup sheet answers a question nobody else answers."""
-    sheet = sheet_for(two_level)
-    for note in sheet.notes:
-        rest = tuple(other for other in sheet.notes if other != note)
-        with pytest.raises(HandoffError, match="no answer to"):
-            fab_notes(two_level, replace(sheet, notes=rest), facts=facts_for(two_level.name))
-    assert len(QUESTIONS) >= len(sheet.notes)
-
-
-def test_layers_without_numbers_are_refused(two_level: Layout) -> None:
-    sheet = sheet_for(two_level)
-    for change, words in (
-        ({"base_copper_m": None}, "base copper of copper-top is blank"),
-        ({"thickness_m": 0.0}, "thickness of copper-top is blank"),
-        ({"material": " "}, "material of copper-top is blank"),
-    ):
-        layers = tuple(replace(a, **change) if a.name == "copper-top" else a for a in sheet.layers)
-        with pytest.raises(HandoffError, match=words):
-            fab_notes(two_level, replace(sheet, layers=layers), facts=facts_for(two_level.name))
-
-
-def test_sheet_of_another_board_is_refused(two_level: Layout, one_level: Layout) -> None:
-    with pytest.raises(HandoffError, match="1 copper layers, the layout 2"):
-        fab_notes(two_level, replace(sheet_for(one_level)), facts=facts_for(one_level.name))
-    other = sheet_for(two_level)
-    other = replace(other, facts=replace(other.facts, dc_short=not two_level.dc_short))
-    with pytest.raises(HandoffError, match="DC short"):
-        fab_notes(two_level, other, facts=facts_for(two_level.name))

@@ -17,7 +17,7 @@ import pytest
 
 from planar.copper.layout import Hole, Layout
 from planar.errors import HandoffError
-from planar.handoff.drill_file import DRILL_FILES, drill_mismatches, read_drill, write_drill, write_drills
+from planar.handoff.drill_file import DRILL_FILES, drill_mismatches, drill_names, read_drill, write_drill, write_drills
 from planar.handoff.gerber_attributes import ProjectFacts, creation_date
 
 with warnings.catch_warnings():
@@ -70,7 +70,7 @@ def test_own_reader_finds_what_was_written(board: Layout, folder: Path) -> None:
         assert {hit.function for hit in file.hits} == ({"ViaDrill"} if plated else {"MechanicalDrill"})
     assert read_drill(folder / PLATED).attributes[".FileFunction"] == ("Plated", "1", "2", "PTH")
     assert read_drill(folder / UNPLATED).attributes[".FileFunction"] == ("NonPlated", "1", "2", "NPTH")
-    assert drill_mismatches(board, folder) == []
+    assert drill_mismatches(board, folder, facts=PROJECT) == []
 
 
 def test_lines_are_those_of_the_format(folder: Path) -> None:
@@ -107,14 +107,15 @@ def test_one_tool_for_each_function_and_diameter_sorted(two_level: Layout, tmp_p
 def test_board_without_holes_has_no_file(one_level: Layout, tmp_path: Path) -> None:
     write_drills(one_level, tmp_path, facts=PROJECT)
     assert list(tmp_path.iterdir()) == []
-    assert drill_mismatches(one_level, tmp_path) == []
+    assert drill_mismatches(one_level, tmp_path, facts=PROJECT) == []
     with pytest.raises(HandoffError, match="0 tools"):
         write_drill(one_level, tmp_path / PLATED, plated=True, facts=PROJECT)
 
 
-def test_file_nobody_asked_for_is_reported(two_level: Layout, one_level: Layout, tmp_path: Path) -> None:
+def test_names_are_those_of_the_files_written(two_level: Layout, one_level: Layout, tmp_path: Path) -> None:
     write_drills(two_level, tmp_path, facts=PROJECT)
-    assert len(drill_mismatches(one_level, tmp_path)) == 2
+    assert {path.name for path in tmp_path.iterdir()} == set(drill_names(two_level)) == set(DRILL_FILES.values())
+    assert drill_names(one_level) == ()
 
 
 def in_text(name: str, pattern: str, replacement: str | Callable[[re.Match[str]], str]) -> Callable[[Path], None]:
@@ -143,7 +144,7 @@ def swapped(folder: Path) -> None:
 FAULTS = {
     "plated holes shifted by 0.1 mm": (in_text(PLATED, r"^X([-\d.]+)", shifted), "hole at .* expected"),
     "unplated holes shifted by 0.1 mm": (in_text(UNPLATED, r"^X([-\d.]+)", shifted), "hole at .* expected"),
-    "files swapped": (swapped, r"file function NonPlated,1,2,NPTH, expected Plated,1,2,PTH"),
+    "files swapped": (swapped, r"\.FileFunction NonPlated,1,2,NPTH, expected Plated,1,2,PTH"),
     "hole lost": (in_text(UNPLATED, r"^X.*\n", ""), r"\d holes, expected \d"),
     "wrong diameter": (in_text(PLATED, r"C0\.300$", "C0.350"), r"of 0\.350 mm, expected 0\.300 mm"),
     "inches": (in_text(PLATED, "^METRIC$", "INCH"), "no METRIC"),
@@ -164,14 +165,14 @@ FAULTS = {
 def test_planted_fault_is_reported(board: Layout, folder: Path, fault: str) -> None:
     plant, words = FAULTS[fault]
     plant(folder)
-    assert re.search(words, "\n".join(drill_mismatches(board, folder)))
+    assert re.search(words, "\n".join(drill_mismatches(board, folder, facts=PROJECT)))
 
 
 def test_mirrored_holes_are_reported(board: Layout, folder: Path) -> None:
     """A via on the axis of symmetry would not show; the via at the line's end lies off it."""
     mirrored = tuple(replace(hole, centre=(-hole.centre[0], hole.centre[1])) for hole in board.holes)
     write_drill(replace(board, holes=mirrored), folder / PLATED, plated=True, facts=PROJECT)
-    assert any("expected (" in text for text in drill_mismatches(board, folder))
+    assert any("expected (" in text for text in drill_mismatches(board, folder, facts=PROJECT))
 
 
 def test_hole_that_cuts_its_copper_is_reported(two_level: Layout, tmp_path: Path) -> None:
@@ -179,4 +180,8 @@ def test_hole_that_cuts_its_copper_is_reported(two_level: Layout, tmp_path: Path
     via, *others = two_level.holes
     spoilt = replace(two_level, holes=(replace(via, centre=(via.centre[0], via.centre[1] + 0.95e-3)), *others))
     write_drills(spoilt, tmp_path, facts=PROJECT)
-    assert [text for text in drill_mismatches(spoilt, tmp_path) if "cuts the edge of its copper by 0.050 mm" in text]
+    assert [
+        text
+        for text in drill_mismatches(spoilt, tmp_path, facts=PROJECT)
+        if "cuts the edge of its copper by 0.050 mm" in text
+    ]

@@ -47,7 +47,10 @@ def test_same_bytes_twice(layout: Layout, tmp_path: Path) -> None:
         write_layout_files(layout, folder, status=STATUS)
     names = sorted(path.name for path in folders[0].iterdir())
     previews = {f"preview-{level}.svg" for level in layout.levels}
-    assert set(names) == {"board.dxf", "board-segments.dxf", "board.gds", "layers.csv", "README.txt"} | previews
+    assert (
+        set(names)
+        == {"board.dxf", "board-segments.dxf", "outline.dxf", "board.gds", "layers.csv", "README.txt"} | previews
+    )
     for name in names:
         assert (folders[0] / name).read_bytes() == (folders[1] / name).read_bytes()
 
@@ -80,6 +83,24 @@ def test_preview_is_upright_and_not_mirrored(two_level: Layout, tmp_path: Path) 
         assert found == {("-25", "-45", "0.15"), ("30", "-20", "1.6"), ("-30", "25", "1.25")}
 
 
+def test_preview_shows_small_vias_and_the_other_level(two_level: Layout, one_level: Layout, tmp_path: Path) -> None:
+    """A via of 0.3 mm is a dot: a ring of 0.6 mm radius lies round it. The other level stands on a pale line."""
+    write_preview_svg(two_level, Level.BOTTOM, tmp_path / "preview.svg")
+    root = ElementTree.parse(tmp_path / "preview.svg").getroot()
+    rings = root.find(f"{SVG}g[@class='small-holes']")
+    assert rings is not None
+    assert [(c.attrib["cx"], c.attrib["cy"], c.attrib["r"]) for c in rings] == [("-25", "-45", "0.6")]
+    for name in ("copper-beyond-ground", "copper-beyond"):
+        group = root.find(f"{SVG}g[@class='{name}']")
+        assert group is not None
+        assert len(group) == len(two_level.copper(Level.TOP))
+    caption = root.findtext(f"{SVG}text") or ""
+    assert "cross: origin and feed; dotted: other level; ring: plated hole" in caption
+    write_preview_svg(one_level, Level.TOP, tmp_path / "preview.svg")
+    alone = ElementTree.parse(tmp_path / "preview.svg").getroot().findtext(f"{SVG}text") or ""
+    assert alone.endswith("cross: origin and feed")
+
+
 def test_names_are_escaped(one_level: Layout, tmp_path: Path) -> None:
     write_preview_svg(replace(one_level, name="<a> & b"), Level.TOP, tmp_path / "preview.svg")
     root = ElementTree.parse(tmp_path / "preview.svg").getroot()
@@ -97,7 +118,7 @@ def test_readme_says_what_the_layout_is(two_level: Layout, one_level: Layout, tm
     assert "top 1 island, 320.0000 mm2" in flowing
     assert "bottom 2 islands" in flowing
     assert "not connected at DC" in flowing
-    assert len(text.splitlines()) <= 60  # a page
+    assert len(text.splitlines()) <= 70  # a page
     write_layout_files(one_level, tmp_path, status=STATUS)
     flowing = " ".join((tmp_path / "README.txt").read_text(encoding="utf-8").split())
     assert "0 ohm between feed and ground is intended" in flowing

@@ -114,9 +114,10 @@ def test_mask_code_names_the_covered_sides(two_level: Layout, one_level: Layout,
     assert via.solder_mask is SoldermaskInfo.SECONDARY
     assert back.solder_mask is SoldermaskInfo.BOTH
     for masked, code in (((Level.TOP,), 0), ((), 0), ((Level.TOP, Level.BOTTOM), 2)):
-        write_netlist(one_level, tmp_path / NETLIST, facts=replace(FACTS, masked=masked))
+        facts = replace(FACTS, masked=masked)
+        write_netlist(one_level, tmp_path / NETLIST, facts=facts)
         assert {r.solder_mask.value for r in OtherNetlist.open(tmp_path / NETLIST).test_records} == {code}
-        assert netlist_mismatches(one_level, tmp_path) == []
+        assert netlist_mismatches(one_level, tmp_path, facts=facts) == []
 
 
 def test_columns_are_those_of_the_published_sample() -> None:
@@ -137,7 +138,7 @@ def test_columns_are_those_of_the_published_sample() -> None:
         )),
         (), (Marking(Level.TOP, land),), (), edge, (),
     )  # fmt: skip
-    lines = [record_line(r, {}) for r in netlist_records(layout, (Level.TOP, Level.BOTTOM), 0.15e-3)]
+    lines = [record_line(r, {}) for r in netlist_records(layout, FACTS)]
     assert all(len(line) == 80 for line in lines)
     assert [lines[i].rstrip() for i in (0, 3, 4)] == sample
 
@@ -160,7 +161,7 @@ def test_long_names_are_mapped_and_listed(one_level: Layout, tmp_path: Path) -> 
     assert len(other.net_names()) == len(set(names.values()))
     assert all(len(name) <= 14 for name in other.net_names())
     assert [r.net for r in read_netlist(tmp_path / NETLIST).records] == [pad.net for pad in pads]
-    assert netlist_mismatches(layout, tmp_path) == []
+    assert netlist_mismatches(layout, tmp_path, facts=FACTS) == []
     assert max(len(line) for line in (tmp_path / NETLIST).read_text(encoding="ascii").splitlines()) <= 80
 
 
@@ -175,14 +176,14 @@ def test_what_six_or_four_digits_cannot_hold(one_level: Layout, tmp_path: Path) 
     layout = replace(one_level, pads=(large, one_level.pads[1]))
     write_netlist(layout, tmp_path / NETLIST, facts=FACTS)
     assert "larger than the columns hold" in (tmp_path / NETLIST).read_text(encoding="ascii")
-    assert netlist_mismatches(layout, tmp_path) == []
+    assert netlist_mismatches(layout, tmp_path, facts=FACTS) == []
 
 
 def test_netlist_of_another_board_is_reported(drawn: Layout, tmp_path: Path) -> None:
     """One land alone leaves nothing to measure the loop between."""
     one = next(pad for pad in drawn.pads if pad.terminal == "signal")
     write_netlist(replace(drawn, pads=(one,), holes=()), tmp_path / NETLIST, facts=FACTS)
-    assert any("1 end points, expected at least 2" in text for text in netlist_mismatches(drawn, tmp_path))
+    assert any("1 end points, expected at least 2" in text for text in netlist_mismatches(drawn, tmp_path, facts=FACTS))
 
 
 def test_own_reader_finds_what_was_written(board: Layout, folder: Path) -> None:
@@ -190,7 +191,7 @@ def test_own_reader_finds_what_was_written(board: Layout, folder: Path) -> None:
     assert netlist.faults == ()
     assert (netlist.job, netlist.units) == ("orchard", "CUST 1")
     assert [netlist.named[f"ANT1-{i}"] for i in range(1, len(board.pads) + 1)] == [pad.name for pad in board.pads]
-    assert netlist_mismatches(board, folder) == []
+    assert netlist_mismatches(board, folder, facts=FACTS) == []
 
 
 def in_text(pattern: str, replacement: str) -> Callable[[str], str]:
@@ -234,17 +235,17 @@ FAULTS: dict[str, tuple[Callable[[str], str], str]] = {
 def test_planted_fault_is_reported(drawn: Layout, tmp_path: Path, fault: str) -> None:
     path = tmp_path / NETLIST
     write_netlist(drawn, path, facts=FACTS)
-    assert netlist_mismatches(drawn, tmp_path) == []
+    assert netlist_mismatches(drawn, tmp_path, facts=FACTS) == []
     plant, words = FAULTS[fault]
     text = path.read_text(encoding="ascii")
     spoilt = plant(text)
     assert spoilt != text
     path.write_text(spoilt, encoding="ascii")
-    assert re.search(words, "\n".join(netlist_mismatches(drawn, tmp_path)))
+    assert re.search(words, "\n".join(netlist_mismatches(drawn, tmp_path, facts=FACTS)))
 
 
 def test_file_that_is_gone_is_reported(drawn: Layout, tmp_path: Path) -> None:
-    assert "cannot be read" in netlist_mismatches(drawn, tmp_path)[0]
+    assert "cannot be read" in netlist_mismatches(drawn, tmp_path, facts=FACTS)[0]
 
 
 def test_rounded_middle_of_an_arc_land_stays_on_copper(one_level: Layout, tmp_path: Path) -> None:
