@@ -2,6 +2,7 @@
 
 import importlib.util
 import sys
+from collections.abc import Callable
 from pathlib import Path
 from types import ModuleType
 
@@ -18,6 +19,13 @@ def beside(name: str) -> ModuleType:
         sys.modules[name] = module  # dataclasses look their module up while it is being executed
         spec.loader.exec_module(module)
     return sys.modules[name]
+
+
+@pytest.fixture
+def evidence(request: pytest.FixtureRequest) -> Callable[..., None]:
+    """Asserts and records one comparison with an outside number; arguments of `evidence.compared`."""
+    recorder: Callable[..., None] = beside("evidence").Evidence(request.node)
+    return recorder
 
 
 @pytest.fixture(scope="session")

@@ -12,6 +12,7 @@ by which it divides its operator. Its answer by order: 6: 99.232-j129.397, 8: 99
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -68,10 +69,17 @@ def test_the_mesh_is_the_one_the_stored_number_belongs_to(problem: FieldProblem)
     assert sides == pytest.approx(SIDES, rel=1e-6)
 
 
-def test_ring_against_the_stored_number(problem: FieldProblem) -> None:
+def test_ring_against_the_stored_number(problem: FieldProblem, evidence: Callable[..., None]) -> None:
     """Source "C: general-purpose boundary-element library", by the recipe above; within 0.3 % of abs(Z)."""
-    impedance = problem.solve(FREQUENCY, lossless=True).impedance
-    assert abs(impedance - STORED) < TOLERANCE * abs(STORED)
+    evidence(
+        "field solver, ring of 46 mm, 5 mm strip, 2 mm gap, the same 262 edges, 1 GHz: Zin",
+        source="bempp-cl 0.4.2, boundary elements, quadrature of order 12 (C)",
+        theirs=STORED,
+        ours=problem.solve(FREQUENCY, lossless=True).impedance,
+        unit="ohm",
+        allowed=f"{100 * TOLERANCE:g} %",
+        why="three times what the stored number is good to",
+    )
 
 
 @pytest.mark.reference

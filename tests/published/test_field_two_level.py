@@ -1,6 +1,7 @@
 """The field solver on two copper levels: vertical currents, and coupling through the slab."""
 
 import math
+from collections.abc import Callable
 from types import ModuleType
 
 import pytest
@@ -12,6 +13,8 @@ from planar.units import SPEED_OF_LIGHT
 
 HEIGHT, WIDTH, LENGTH = 1.6e-3, 1.6e-3, 40e-3
 FREQUENCY = 0.3e9
+LINE = "j Z0 tan(beta l), Hammerstad & Jensen 1980 (P)"
+SHORT = "both ends' fringing fields and the finite ground"
 
 
 @pytest.fixture(scope="module")
@@ -23,11 +26,21 @@ def guided(field_cases: ModuleType) -> FieldProblem:
 
 
 @pytest.mark.parametrize(("frequency", "expected"), [(0.8e9, 8.0 - 8.6j), (0.9e9, 16.1 + 35.0j), (1.0e9, 40.8 + 86.2j)])
-def test_ring_with_guided_line(frequency: float, expected: complex, guided: FieldProblem) -> None:
+def test_ring_with_guided_line(
+    frequency: float, expected: complex, guided: FieldProblem, evidence: Callable[..., None]
+) -> None:
     """5 % of the magnitude. Source: check values, "Two-level ring with a guided line (C; separate mesh solver, power
     balance 1.0003; expect 5 %)": slab 4.3/0.02, 1.6 mm; "Zin at 0.8, 0.9, 1.0 GHz: 8.0-j8.6, 16.1+j35.0, 40.8+j86.2".
     """
-    assert abs(guided.solve(frequency).impedance - expected) < 0.05 * abs(expected)
+    evidence(
+        f"field solver, two-level ring with a guided line, {1e-9 * frequency:g} GHz: Zin",
+        source="separate mesh solver, 1502 unknowns (C)",
+        theirs=expected,
+        ours=guided.solve(frequency).impedance,
+        unit="ohm",
+        allowed="5 %",
+        why="stated with the value; 881 unknowns were 4 % off at 0.8 GHz",
+    )
 
 
 def shorted_microstrip() -> complex:
@@ -48,7 +61,7 @@ def input_impedance(problem: FieldProblem) -> complex:
     return complex(problem.solve(FREQUENCY, lossless=True).impedance)
 
 
-def test_shorted_line(field_cases: ModuleType) -> None:
+def test_shorted_line(field_cases: ModuleType, evidence: Callable[..., None]) -> None:
     """3 % of the magnitude, on a ground 40 mm wide whose mesh has lines under both edges of the strip.
 
     26 degrees long, so that the capacitance of the open end beside the port (0.4 heights of line) does not matter.
@@ -57,13 +70,28 @@ def test_shorted_line(field_cases: ModuleType) -> None:
     expected = shorted_microstrip()
     stack = field_cases.stackup(field_cases.Slab(HEIGHT, 4.4), two_sided=True)
     problem = field_cases.prepared(board, stack, FREQUENCY, step=5e-3)
-    assert abs(input_impedance(problem) - expected) < 0.03 * abs(expected)
+    evidence(
+        "field solver, shorted line 1.6 mm wide, 40 mm long on 1.6 mm, eps_r 4.4, ground in lanes: Zin at 0.3 GHz",
+        source=LINE,
+        theirs=expected,
+        ours=input_impedance(problem),
+        unit="ohm",
+        allowed="3 %",
+        why=SHORT,
+    )
 
 
-def test_shorted_line_on_whole_ground(field_cases: ModuleType) -> None:
+def test_shorted_line_on_whole_ground(field_cases: ModuleType, evidence: Callable[..., None]) -> None:
     """The same ground in one piece, on the default mesh: 3 %, measured 1.3 %."""
     board = field_cases.whole_ground(LENGTH, WIDTH, ground=40e-3, margin=8e-3)
     stack = field_cases.stackup(field_cases.Slab(HEIGHT, 4.4), two_sided=True)
     problem = FieldProblem.prepare(board, stack, FREQUENCY)
-    expected = shorted_microstrip()
-    assert abs(input_impedance(problem) - expected) < 0.03 * abs(expected)
+    evidence(
+        "field solver, shorted line 1.6 mm wide, 40 mm long on 1.6 mm, eps_r 4.4, whole ground: Zin at 0.3 GHz",
+        source=LINE,
+        theirs=shorted_microstrip(),
+        ours=input_impedance(problem),
+        unit="ohm",
+        allowed="3 %",
+        why=SHORT,
+    )

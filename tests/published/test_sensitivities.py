@@ -7,6 +7,7 @@ h 1.44/1.76: +1.16/-1.04 %; w 0.9/1.1: -0.63/+0.60 %; a 15/17: +6.3/-5.6 %. The 
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -44,6 +45,8 @@ PER_UNIT = {
     "loop_width": (-0.056 - 0.063) / 4e-3,
 }
 """Relative shift per 1 of permittivity or per m, from the two ways of the table."""
+UNITS = {"dielectric permittivity": ""}
+SOURCE = "modal solution of a printed ring (C)"
 
 
 @pytest.fixture(scope="module")
@@ -54,17 +57,35 @@ def found() -> dict[str, Sensitivity]:
 
 
 @pytest.mark.parametrize("name", PER_UNIT)
-def test_mode_moves_as_the_modal_solution_says(found: dict[str, Sensitivity], name: str) -> None:
+def test_mode_moves_as_the_modal_solution_says(
+    found: dict[str, Sensitivity], name: str, evidence: Callable[..., None]
+) -> None:
     """Asked: signs right, sizes within 10 %."""
     mode = found[name].mode_hz_per_unit
     assert mode is not None
-    assert mode / F1 == pytest.approx(PER_UNIT[name], rel=0.10)
+    evidence(
+        f"field solver, ring on a bare slab: relative slope of f1 with {name}",
+        source=SOURCE,
+        theirs=PER_UNIT[name],
+        ours=mode / F1,
+        unit=UNITS.get(name, "1/m"),
+        allowed="10 %",
+        why="printed shifts have two to three digits; a secant over 10 %",
+    )
 
 
 @pytest.mark.parametrize("name", PER_UNIT)
-def test_response_moves_the_same_way(found: dict[str, Sensitivity], name: str) -> None:
+def test_response_moves_the_same_way(found: dict[str, Sensitivity], name: str, evidence: Callable[..., None]) -> None:
     """The response at the port holds more than one mode: same sign, same size within a fifth."""
-    assert found[name].hz_per_unit / F1 == pytest.approx(PER_UNIT[name], rel=0.20)
+    evidence(
+        f"field solver, ring on a bare slab: relative slope of the match with {name}",
+        source=SOURCE,
+        theirs=PER_UNIT[name],
+        ours=found[name].hz_per_unit / F1,
+        unit=UNITS.get(name, "1/m"),
+        allowed="20 %",
+        why="the response at the port holds more than one mode",
+    )
 
 
 def test_steps_are_checked(found: dict[str, Sensitivity]) -> None:

@@ -7,6 +7,7 @@ wavelengths, d wire diameter; within 1 %. Square resistance is about 0.91 of the
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 import pytest
 
@@ -15,6 +16,7 @@ from planar.design.thin_loop import square_perimeter
 from planar.errors import RangeError
 from planar.units import SPEED_OF_LIGHT
 
+CEBIK = "fit of L. B. Cebik (P)"
 AIR = LoopSurroundings((), (), None)
 SQUARE, CIRCLE = LoopShape(1.0, 0.0), LoopShape(1.0, 1.0)
 
@@ -25,19 +27,43 @@ def fit(diameter_in_wavelengths: float) -> float:
 
 
 @pytest.mark.parametrize("thickness", [1e-5, 1e-4, 1e-3, 5e-3])
-def test_the_fit_itself(thickness: float) -> None:
+def test_the_fit_itself(thickness: float, evidence: Callable[..., None]) -> None:
     frequency = 0.9e9
     diameter = thickness * SPEED_OF_LIGHT / frequency
-    assert square_perimeter(diameter, frequency) == pytest.approx(fit(thickness), rel=1e-12)
+    evidence(
+        "formula of the square loop's perimeter, wire of 1e-5 to 5e-3 wavelengths",
+        source=CEBIK,
+        theirs=fit(thickness),
+        ours=square_perimeter(diameter, frequency),
+        unit="wavelengths",
+        allowed="1e-10 %",
+        why="the formula itself",
+    )
 
 
 @pytest.mark.parametrize(("frequency", "trace"), [(100e6, 2e-3), (434e6, 2e-3), (868e6, 3e-3), (2.45e9, 1e-3)])
-def test_sized_square_follows_the_fit(frequency: float, trace: float) -> None:
+def test_sized_square_follows_the_fit(frequency: float, trace: float, evidence: Callable[..., None]) -> None:
     """A strip acts as a wire of diameter w/2; the fit is good to 1 %."""
     loop = resonant_loop(frequency, trace, SQUARE, AIR)
     expected = fit(0.5 * trace * frequency / SPEED_OF_LIGHT)
-    assert loop.perimeter_wavelengths == pytest.approx(expected, rel=0.01)
-    assert loop.resistance == pytest.approx(0.91 * resonant_loop(frequency, trace, CIRCLE, AIR).resistance, rel=0.02)
+    circle = resonant_loop(frequency, trace, CIRCLE, AIR)
+    evidence(
+        f"sized square loop, {1e-6 * frequency:g} MHz, {1e3 * trace:g} mm strip: perimeter",
+        source=CEBIK,
+        theirs=expected,
+        ours=loop.perimeter_wavelengths,
+        unit="wavelengths",
+        allowed="1 %",
+        why="what the fit is good for",
+    )
+    evidence(
+        f"sized square loop, {1e-6 * frequency:g} MHz: resistance over the circle's",
+        source="mesh solution, rounded (C)",
+        theirs=0.91,
+        ours=loop.resistance / circle.resistance,
+        allowed="2 %",
+        why="rounded so",
+    )
 
 
 @pytest.mark.parametrize("shape", [SQUARE, CIRCLE, LoopShape(1.0, 0.3), LoopShape(1.5, 0.2)])
