@@ -215,7 +215,7 @@ def drill_mismatches(layout: Layout, folder: Path, *, facts: ProjectFacts) -> li
 
 
 def _file_mismatches(layout: Layout, path: Path, plated: bool, facts: ProjectFacts) -> Iterator[str]:
-    expected = [hole for hole in layout.holes if hole.plated == plated]
+    expected = [hole for *_, holes in drill_tools(layout, plated=plated) for hole in holes]
     try:
         got = read_drill(path)
     except HandoffError as error:
@@ -232,19 +232,25 @@ def _file_mismatches(layout: Layout, path: Path, plated: bool, facts: ProjectFac
 def _hole_mismatches(got: Sequence[DrillHit], expected: Sequence[Hole]) -> Iterator[str]:
     if len(got) != len(expected):
         yield f"{len(got)} holes, expected {len(expected)}"
+    elif not any(text for hit, hole in zip(got, expected, strict=True) for text in _differences(hit, hole)):
+        return  # the file keeps the order of its tools: the search below is for one that does not
     left = list(got)
     for hole in expected:
         if not left:
             return
         hit = min(left, key=lambda other: math.dist(other.centre, hole.centre))
         left.remove(hit)
-        if math.dist(hit.centre, hole.centre) > _SLACK:
-            yield f"hole at {_place(hit.centre)}, expected {_place(hole.centre)}"
-        if abs(hit.diameter - hole.diameter) > _SLACK:
-            at = _place(hole.centre)
-            yield f"hole at {at} of {1e3 * hit.diameter:.3f} mm, expected {1e3 * hole.diameter:.3f} mm"
-        if hit.function != drill_function(hole):
-            yield f"hole at {_place(hole.centre)} is {hit.function}, expected {drill_function(hole)}"
+        yield from _differences(hit, hole)
+
+
+def _differences(hit: DrillHit, hole: Hole) -> Iterator[str]:
+    at = _place(hole.centre)
+    if math.dist(hit.centre, hole.centre) > _SLACK:
+        yield f"hole at {_place(hit.centre)}, expected {at}"
+    if abs(hit.diameter - hole.diameter) > _SLACK:
+        yield f"hole at {at} of {1e3 * hit.diameter:.3f} mm, expected {1e3 * hole.diameter:.3f} mm"
+    if hit.function != drill_function(hole):
+        yield f"hole at {at} is {hit.function}, expected {drill_function(hole)}"
 
 
 def _copper_mismatches(layout: Layout, hits: Sequence[DrillHit]) -> Iterator[str]:

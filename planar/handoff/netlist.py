@@ -11,6 +11,7 @@ from __future__ import annotations
 import math
 import textwrap
 from collections import Counter
+from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -185,7 +186,17 @@ def netlist_mismatches(layout: Layout, folder: Path, *, facts: GerberFacts) -> l
         found.append(f"job {got.job or 'missing'}, expected {_job_name(facts)}")
     for net in sorted({r.net for r in expected} - {r.net for r in got.records}):
         found.append(f"net {net} is missing")
-    left = list(got.records)
+    found += _records_mismatches(got.records, expected)
+    found += _name_mismatches(layout, got)
+    return [f"{NETLIST}: {text}" for text in found]
+
+
+def _records_mismatches(got: Sequence[NetRecord], expected: Sequence[NetRecord]) -> list[str]:
+    pairs = zip(got, expected, strict=False)
+    if len(got) == len(expected) and all(_pin(a) == _pin(b) and not _record_mismatches(a, b) for a, b in pairs):
+        return []  # the file keeps the order: the search below is for one that does not
+    found = []
+    left = list(got)
     for record in expected:
         twin = _twin(record, left)
         if twin is None:
@@ -193,14 +204,17 @@ def netlist_mismatches(layout: Layout, folder: Path, *, facts: GerberFacts) -> l
             continue
         left.remove(twin)
         found += _record_mismatches(twin, record)
-    found += [f"{_called(record)}, expected none" for record in left]
-    found += _name_mismatches(layout, got)
-    return [f"{NETLIST}: {text}" for text in found]
+    return found + [f"{_called(record)}, expected none" for record in left]
+
+
+def _pin(record: NetRecord) -> tuple[str, str, str]:
+    """What kind of place it is, and the pin it belongs to."""
+    return record.code, record.designator, record.pin
 
 
 def _twin(record: NetRecord, left: list[NetRecord]) -> NetRecord | None:
     """The record of the same kind and pin nearest to `record`."""
-    same = [r for r in left if (r.code, r.designator, r.pin) == (record.code, record.designator, record.pin)]
+    same = [r for r in left if _pin(r) == _pin(record)]
     return min(same, key=lambda r: math.dist(r.at, record.at), default=None)
 
 

@@ -6,10 +6,14 @@ panel with a bad board is taken) comes from `PanelFacts`. Where the two disagree
 
 from __future__ import annotations
 
-import itertools
 import math
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+from scipy.spatial import KDTree
 
 from planar.copper.arc import Point
 from planar.copper.boolean import contains
@@ -195,21 +199,20 @@ def perforation_text(layout: Layout) -> str:
     text = f"{len(holes)} unplated holes of {diameters}"
     if len(centres) < 2:
         return text
-    pitch = min(math.dist(a, b) for a, b in itertools.combinations(centres, 2))
-    rows = _rows(centres, _LINKED * pitch)
-    lengths = sorted({len(row) for row in rows})
-    each = f"{lengths[0]}" if len(lengths) == 1 else f"{lengths[0]} to {lengths[-1]}"
+    tree = KDTree(centres)
+    pitch = float(tree.query(centres, k=2)[0][:, 1].min())
+    rows = _row_lengths(tree, _LINKED * pitch)
+    shortest, longest = min(rows), max(rows)
+    each = f"{shortest}" if shortest == longest else f"{shortest} to {longest}"
     return f"{text} at {show(pitch, 'length')}, {len(rows)} rows of {each}"
 
 
-def _rows(places: Sequence[Point], reach: float) -> list[list[Point]]:
-    """`places` in groups whose members are within `reach` m of another member."""
-    rows: list[list[Point]] = []
-    for place in places:
-        near = [row for row in rows if any(math.dist(place, other) <= reach for other in row)]
-        rows = [row for row in rows if row not in near]
-        rows.append([place, *(other for row in near for other in row)])
-    return rows
+def _row_lengths(places: KDTree, reach: float) -> list[int]:
+    """How many places each group has whose members are within `reach` m of another member."""
+    pairs = places.query_pairs(reach, output_type="ndarray")
+    links = coo_array((np.ones(len(pairs)), pairs.T), shape=(places.n, places.n))
+    groups = connected_components(links, directed=False)[1]
+    return [int(count) for count in np.bincount(groups)]
 
 
 def fiducial_text(layout: Layout) -> str:

@@ -162,8 +162,9 @@ def _off_texts(facts: BuildFacts) -> list[str]:
         "Look first at what is nearest: a cold joint, a return land left open, flux in a gap, metal near by, the plane "
         "of calibration, another laminate or thickness than ordered.",
         "Then compare the edges of the matched band, and where reflection is least, with those expected: all 1 % too "
-        f"low ({_one_percent(middle)}) means about 1 % too long a loop or too high a permittivity. Copper can be cut "
-        "off, not put on: change one thing at a time, measure after each, and keep an uncut board.",
+        f"low ({_one_percent(middle)}) means about 1 % too long a loop, or a permittivity some per cent too "
+        "high. Copper can be cut off, not put on: change one thing at a time, measure after each, and keep an uncut "
+        "board.",
     ]
     if facts.cuts:
         rows = "; ".join(f"{name}: {hz / 1e6:+.1f} MHz" for name, hz in facts.cuts)

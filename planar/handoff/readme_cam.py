@@ -109,7 +109,7 @@ def _drill_lines(layout: Layout) -> list[str]:
 
 def _answers(layout: Layout, sheet: StackupSheet, netlist: str) -> list[str]:
     answers = []
-    if layout.dc_short:
+    if sheet.facts.dc_short:  # of the antennas, or of the coupon where there are none
         answers.append(
             f"Short between {_ENDS[layout.kind]}: right, 0 ohm. In {netlist} what is joined is one net with every land "
             "an end point: the test proves it whole."

@@ -89,7 +89,7 @@ def _panel_tie_texts(layout: Layout) -> list[str]:
         return ["Signal and return of the boards are not connected at DC: no net tie, do not join them."]
     shares = [[tie for tie in ties if _inside(tie, board)] for board in layout.boards]
     found = next((share for share in shares if share), [])
-    texts = []
+    texts = ["Signal and return of the boards are not connected at DC: do not join them."]
     if found:
         texts = [
             "Each board: signal and return are one net: 0 ohm between feed and ground is intended. On the first one:",
@@ -97,8 +97,8 @@ def _panel_tie_texts(layout: Layout) -> list[str]:
         ]
     beside = len(ties) - sum(map(len, shares))
     if beside:
-        texts.append(f"Beside the boards, on the coupon: {beside} more.")
-    return [*texts, "All of them are outlined on NET_TIE. Do not open, cut or repair anything there."]
+        texts.append(f"Beside the boards, on the coupon: {beside} net tie{'' if beside == 1 else 's'}.")
+    return [*texts, "Every net tie is outlined on NET_TIE. Do not open, cut or repair anything there."]
 
 
 def _inside(tie: NetTie, board: Outline) -> bool:

@@ -8,7 +8,6 @@ from pathlib import Path
 
 from planar.copper.layout import Layout
 from planar.handoff.fab_notes import DrawingFacts
-from planar.handoff.fresh import fresh_mismatches
 from planar.handoff.gerber_content import GerberFacts
 from planar.handoff.readme_build import BuildFacts, build_readme
 from planar.handoff.readme_cam import cam_readme
@@ -39,15 +38,6 @@ def write_fabrication_readmes(layout: Layout, sheet: StackupSheet, folder: Path,
     """
     for name, text in _pages(layout, sheet, facts).items():
         (folder / name).write_bytes(text.encode("utf-8"))
-
-
-def readme_mismatches(layout: Layout, sheet: StackupSheet, folder: Path, *, facts: ReadmeFacts) -> list[str]:
-    """Pages in `folder` that are missing or do not say what they should of a snapped `layout`."""
-
-    def write(fresh: Path) -> None:
-        write_fabrication_readmes(layout, sheet, fresh, facts=facts)
-
-    return fresh_mismatches(folder, write)
 
 
 def _pages(layout: Layout, sheet: StackupSheet, facts: ReadmeFacts) -> dict[str, str]:

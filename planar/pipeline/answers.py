@@ -1,31 +1,14 @@
-"""Answers that need no design: a starter brief, line widths, what the library holds."""
+"""Answers that need no design: line widths, what the library holds."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from pathlib import Path
 from typing import Any
 
-from planar.brief import starter_brief
 from planar.design.line_question import LineQuestion, answer
 from planar.design.line_table import LineRow
-from planar.errors import HandoffError
 from planar.library import KINDS, Library
 from planar.library.reading import parse
-
-
-def new_brief(path: Path) -> Path:
-    """Write a commented brief for `path` (".toml" is added); never over an existing file."""
-    text = starter_brief(path.name.removesuffix(".toml"))
-    target = path if path.suffix == ".toml" else path.with_name(path.name + ".toml")
-    try:
-        with target.open("x", encoding="utf-8") as file:
-            file.write(text)
-    except FileExistsError as error:
-        raise HandoffError(f"{target} exists already: choose another name or remove it") from error
-    except OSError as error:
-        raise HandoffError(f"cannot write {target}: {error.strerror}") from error
-    return target
 
 
 def lines(question: LineQuestion, library: Library) -> list[LineRow]:

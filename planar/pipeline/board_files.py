@@ -10,7 +10,7 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
-from planar.copper.layout import Layout
+from planar.copper.layout import Layout, Level
 from planar.design.choices import Choices
 from planar.design.design import Design
 from planar.handoff import (
@@ -69,9 +69,9 @@ def check_making(making: Making, folder: Path) -> None:
     check_zip(folder / "fabrication", folder / f"{making.name}-fabrication.zip")
 
 
-def gerber_facts(name: str, digest: str, choices: Choices, via_ring: float) -> GerberFacts:
-    """Project, masked sides and via ring (m) of the design whose hash is `digest`."""
-    return GerberFacts(ProjectFacts(name, REVISION, digest, creation_date()), choices.masked, via_ring)
+def gerber_facts(name: str, digest: str, masked: tuple[Level, ...], *, via_ring: float) -> GerberFacts:
+    """Project, `masked` sides and via ring (m) of something made for the design whose hash is `digest`."""
+    return GerberFacts(ProjectFacts(name, REVISION, digest, creation_date()), masked, via_ring)
 
 
 def design_ring(design: Design) -> float:

@@ -87,7 +87,7 @@ def _making(design: Design, drawn: Coupon, digest: str) -> Making:
         tolerance_ohm=(fab.impedance_tolerance or 0.1) * drawn.trace_impedance,
         controlled=False,  # what the fab really makes is what is to be measured
     )
-    gerber = gerber_facts(name, digest, choices, fab.min_annular_ring)
+    gerber = gerber_facts(name, digest, drawn.masked, via_ring=drawn.dimensions["via_ring"])
     facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance)
     dc_short = drawn.layout.dc_short
     sheet = sheet_of(drawn.layout, choices, drawn.stackup, (trace,), name=name, dc_short=dc_short)
@@ -139,6 +139,18 @@ def measurement_facts(found: CouponMeasurement) -> dict[str, Any]:
             }
             for name, each in found.by_method
         },
+        "resonances": [
+            {
+                "order": r.order,
+                "frequency_hz": r.frequency,
+                "q_loaded": r.q,
+                "q_unloaded": r.unloaded_q,
+                "eps_eff": r.eps_eff,
+                "eps_r": r.estimate.eps_r,
+                "eps_r_uncertainty": r.estimate.uncertainty,
+            }
+            for r in found.resonances
+        ],
         "tan_d": None if found.tan_d is None else found.tan_d.tan_d,
         "tan_d_uncertainty": None if found.tan_d is None else found.tan_d.uncertainty,
         "assumptions": list(found.assumptions),

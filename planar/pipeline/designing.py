@@ -1,4 +1,7 @@
-"""The main job and its parts: `make` a pack, `size` a board, `solve` a field problem."""
+"""What is computed and not written: `size` a board, `solve` a field problem.
+
+Nothing here needs the writers of files or of pages, so that these commands start without them.
+"""
 
 from __future__ import annotations
 
@@ -18,26 +21,10 @@ from planar.design.solve_question import SolveQuestion, read_question
 from planar.design.workers import workers
 from planar.errors import Finding, GeometryError, HandoffError, RangeError, SynthesisError
 from planar.field.result import PointResult
-from planar.handoff import (
-    check_destination,
-    packed,
-)
 from planar.library import Library
 from planar.network.touchstone import write_touchstone
-from planar.pipeline.packs import check_pack, write_pack
-from planar.pipeline.reports import write_pack_report, write_refusal
 
 Progress = Callable[[str], None]
-REFUSED = "-refused"
-"""End of the folder a refusal's page is written to."""
-
-
-@dataclass(frozen=True)
-class Made:
-    """A design and the folder its pack was written to."""
-
-    design: Design
-    folder: Path
 
 
 @dataclass(frozen=True)
@@ -48,53 +35,18 @@ class Solved:
     solution: Solution
 
 
-def make(
-    brief_path: Path,
-    library: Library,
-    outputs: Path,
-    *,
-    sensitive: bool = False,
-    progress: Progress = lambda stage: None,
-) -> Made:
-    """The main job: brief in, pack out, at `outputs`/<name>, on wish with the table of sensitivities.
-
-    Raises `PlanarError`; nothing is then left behind but, for a design that is refused, the page that says why, at
-    `outputs`/<name>-refused; a note of the exception names it.
-    """
-    progress("reading the brief")
-    brief = read_brief(brief_path, library)
-    folder = outputs / brief.name
-    check_destination(folder)
-    try:
-        design = _designed(brief, library, brief_path, progress)
-    except SynthesisError as error:
-        text = brief_path.read_bytes().decode("utf-8-sig")
-        page = write_refusal(error, text, outputs / f"{brief.name}{REFUSED}")
-        error.add_note(f"as a page: {page}")
-        raise
-    if sensitive:
-        design = _with_sensitivities(design, progress)
-    progress("writing files")
-    with packed(folder) as fresh:
-        write_pack(design, fresh)
-        progress("reading the files back")
-        check_pack(design, fresh)
-        progress("drawing the report")
-        write_pack_report(fresh, library)
-    return Made(design, folder)
-
-
 def size(path: Path, library: Library, *, sensitive: bool = False, progress: Progress = lambda stage: None) -> Design:
     """Dimensions, copper and prediction of a brief, on wish with the table of sensitivities, nothing written.
 
     Raises `PlanarError`.
     """
     progress("reading the brief")
-    design = _designed(read_brief(path, library), library, path, progress)
-    return _with_sensitivities(design, progress) if sensitive else design
+    design = designed(read_brief(path, library), library, path, progress)
+    return with_sensitivities(design, progress) if sensitive else design
 
 
-def _with_sensitivities(design: Design, progress: Progress) -> Design:
+def with_sensitivities(design: Design, progress: Progress) -> Design:
+    """`design` with its table of sensitivities, or with a finding that says why there is none."""
     progress("trying every dimension and layer both ways")
     with workers() as shared:
         found = sensitivities(design.choices, design.dimensions, shared)
@@ -113,7 +65,7 @@ def solve(path: Path, library: Library, question: SolveQuestion, progress: Progr
         brief = read_brief(path, library)
         frequencies, sweep = read_question(question, brief)
         given = bool(brief.antenna.dimensions)
-        design = make_design(brief, library, str(path)) if given else _designed(brief, library, path, progress)
+        design = make_design(brief, library, str(path)) if given else designed(brief, library, path, progress)
     try:
         solution = solve_design(design, frequencies, sweep=sweep, progress=progress)
     except GeometryError as error:
@@ -126,7 +78,8 @@ def solve(path: Path, library: Library, question: SolveQuestion, progress: Progr
     return Solved(design, solution)
 
 
-def _designed(brief: Brief, library: Library, path: Path, progress: Progress) -> Design:
+def designed(brief: Brief, library: Library, path: Path, progress: Progress) -> Design:
+    """The design of `brief`, read from the file at `path`. Raises `PlanarError`; a refusal names the file."""
     try:
         return sized_design(brief, library, str(path), progress)
     except SynthesisError as error:  # a refusal names the file, as a fault does

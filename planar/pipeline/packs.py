@@ -68,7 +68,7 @@ def check_pack(design: Design, folder: Path) -> None:
 
 def _making(design: Design, digest: str) -> Making:
     choices, layout = design.choices, design.layout
-    gerber = gerber_facts(design.name, digest, choices, design_ring(design))
+    gerber = gerber_facts(design.name, digest, choices.masked, via_ring=design_ring(design))
     fab = choices.fab
     build = _build_facts(design)
     facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance, build=build)

@@ -118,7 +118,8 @@ def _making(design: Design, planned: PlannedPanel, said: Mapping[str, Any], *, c
         bad_boards_allowed=True,
         coupon_size_m=None if planned.coupon is None else _size(planned.coupon),
     )
-    gerber = replace(gerber_facts(name, said["hash"], choices, design_ring(design)), coupon_ring_m=coupon_ring)
+    gerber = gerber_facts(name, said["hash"], choices.masked, via_ring=design_ring(design))
+    gerber = replace(gerber, coupon_ring_m=coupon_ring)
     facts = FabricationFacts(gerber, fab.min_track, fab.min_gap, fab.hole_tolerance, panel)
     dc_short = design.layout.dc_short
     lines = impedance_lines(design)

@@ -8,19 +8,26 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from planar import __version__
 from planar.brief import write_brief
+from planar.design.design_file import design_facts
 from planar.design.option_reader import OptionReader
 from planar.design.retune.batch import LearntLaminate, learnt_laminate
+from planar.design.retune.cut_places import cut_places
 from planar.design.retune.facts import retune_facts
 from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, corrected_brief, retune
 from planar.design.retune.unknowns import Plane, coax_delay, plane_of_standards, stated_plane, unstated_plane
 from planar.design.workers import workers
 from planar.errors import HandoffError, PlanarError, SynthesisError
 from planar.handoff import packed
+from planar.handoff.trim_drawing import Way, write_trim_drawing, write_trim_svg
 from planar.library import Library
 from planar.network.measured import Measured, read_measured
 from planar.pipeline.board_files import design_file
 from planar.pipeline.spreading import solved_design
+from planar.report.page import write_report
+from planar.report.retune_page import retune_page
+from planar.report.retune_pictures import retune_pictures
 
 Progress = Callable[[str], None]
 LONGEST = 2.0
@@ -64,7 +71,8 @@ def retune_board(
 ) -> Retuning:
     """Explain the sweep in `file`, measured on a board of the design at `path`, and say what to change.
 
-    Writes `outputs`/<name>-retune: retune.json, the next brief. Raises `PlanarError`; nothing is then left behind.
+    Writes `outputs`/<name>-retune: retune.html, retune.json, the next brief, trim.pdf and trim.svg where anything can be
+    cut. Raises `PlanarError`; nothing is then left behind.
     """
     source = design_file(path)
     progress("reading the measurement")
@@ -78,15 +86,31 @@ def retune_board(
     if question.learn is not None:
         learnt = learnt_laminate(found.inferred, design.name, _digest(source))
     folder = outputs / f"{design.name}-retune"
+    progress("writing files")
     with packed(folder) as fresh:
-        told = json.dumps(retune_facts(found), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
-        (fresh / "retune.json").write_bytes(told.encode("utf-8"))
         (fresh / "next.toml").write_bytes(brief.encode("utf-8"))
+        _write(found, fresh)
     if question.write is not None:
         _write_new(brief, question.write)
     if question.learn is not None and learnt is not None:
         _keep(learnt, question.learn)
     return Retuning(found, folder, learnt)
+
+
+def _write(found: Retuned, folder: Path) -> None:
+    """Facts, page, and where to cut: a drawing to print at true size, where anything can be cut."""
+    facts, design = retune_facts(found), found.design
+    told = json.dumps(facts, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    (folder / "retune.json").write_bytes(told.encode("utf-8"))
+    ways = [
+        Way(cut_places(design.choices, design.dimensions, cut), said)
+        for cut, said in zip(found.advice.cut.ways, facts["cut_now"], strict=True)
+    ]
+    if ways:
+        write_trim_drawing(design.layout, ways, folder / "trim.pdf", made_with=f"planar {__version__}")
+        write_trim_svg(design.layout, ways, folder / "trim.svg")
+    shown = design_facts(design)
+    write_report(retune_page(facts, shown, retune_pictures(facts, shown)), folder / "retune.html")
 
 
 def _request(question: RetuneQuestion, measured: Measured) -> tuple[RetuneRequest, Measured]:

@@ -16,10 +16,10 @@ from planar.design.sized import sized_design
 from planar.design.spread import Spread, SpreadRequest, spread
 from planar.design.spread_facts import recentred_facts, spread_facts, write_spread
 from planar.design.workers import workers
-from planar.errors import HandoffError
 from planar.handoff import is_pack, packed, renewed
 from planar.library import Library
 from planar.pipeline.board_files import DESIGN, design_file
+from planar.pipeline.new_file import check_new, write_new
 from planar.pipeline.reports import SPREAD, write_pack_report
 
 Progress = Callable[[str], None]
@@ -59,28 +59,38 @@ def scatter(
     """Work out the spread of the design, or of the brief, at `path`.
 
     spread.json joins the pack the design lies in, whose report then shows it, or stands in `outputs`/<name>-spread.
-    Raises `PlanarError`; nothing is then left behind.
+    The moved design is written as a brief last of all, where asked for. Raises `PlanarError`.
     """
+    if question.write is not None:
+        check_new(question.write)
     source = design_file(path)
     design = solved_design(source, library, progress)
     request = SpreadRequest(question.samples, question.seed, uncovered=question.uncovered)
     with workers() as shared:
         found = spread(design, shared, request, progress)
         moved = recentred(design, found, shared, progress) if question.recentre else None
+    progress("writing files")
+    file = _kept(found, source, outputs, library)
     if question.write is not None:
         _write_brief(moved.design if moved is not None else design, library, question.write)
-    progress("writing files")
+    return Scattered(design, found, moved, file)
+
+
+def _kept(found: Spread, source: Path, outputs: Path, library: Library) -> Path:
+    """Write spread.json into the pack of the design.json `source`, whose report then shows it, or into a folder of its
+    own; where it is."""
+    told = spread_facts(found)
     pack = source.absolute().parent
     if source.name == DESIGN and is_pack(pack):
-        told = spread_facts(found) | {"design_hash": json.loads(source.read_bytes())["hash"]}
+        told |= {"design_hash": json.loads(source.read_bytes())["hash"]}
         with renewed(pack) as fresh:
             write_spread(told, fresh / SPREAD)
             write_pack_report(fresh, library)
-        return Scattered(design, found, moved, source.parent / SPREAD)
-    folder = outputs / f"{design.name}-spread"
+        return source.parent / SPREAD
+    folder = outputs / f"{found.name}-spread"
     with packed(folder) as fresh:
-        write_spread(spread_facts(found), fresh / SPREAD)
-    return Scattered(design, found, moved, folder / SPREAD)
+        write_spread(told, fresh / SPREAD)
+    return folder / SPREAD
 
 
 def solved_design(source: Path, library: Library, progress: Progress) -> Design:
@@ -96,11 +106,4 @@ def solved_design(source: Path, library: Library, progress: Progress) -> Design:
 def _write_brief(design: Design, library: Library, path: Path) -> None:
     """The design as a brief with its dimensions given; never over an existing file."""
     told = given_brief(json.loads(json.dumps(design_facts(design))))
-    text = write_brief(check_brief(told, str(path), library))
-    try:
-        with path.open("x", encoding="utf-8") as file:
-            file.write(text)
-    except FileExistsError as error:
-        raise HandoffError(f"{path} exists already: choose another name or remove it") from error
-    except OSError as error:
-        raise HandoffError(f"cannot write {path}: {error.strerror}") from error
+    write_new(write_brief(check_brief(told, str(path), library)), path)

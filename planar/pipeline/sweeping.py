@@ -18,7 +18,7 @@ from planar.design.row_farm import cluster_rows, local_rows
 from planar.design.row_store import RowStore, row_store
 from planar.design.sized import sized_design
 from planar.design.sweep_axes import Axis, Row, read_axes, sweep_rows
-from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_key
+from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_ground, row_keys
 from planar.design.workers import cores
 from planar.handoff import check_destination, packed
 from planar.library import Library
@@ -71,7 +71,7 @@ def sweep(
 ) -> Swept:
     """Work out every row of `question` on the brief, or the design, at `path`; write `outputs`/<name>-sweep.
 
-    Raises `PlanarError`. Rows done before an interruption stay in the store.
+    Raises `PlanarError`. Rows done before an interruption stay in the store; a note of the exception says so.
     """
     library = Library.open(library_folder)
     axes = read_axes(question.vary)
@@ -80,8 +80,13 @@ def sweep(
     folder = outputs / f"{name}-sweep"
     check_destination(folder)
     rows = sweep_rows(base, axes, str(path), library)
-    with row_store(question.store or outputs / STORE) as store:
-        found = _found(rows, name, library_folder, store, _Progressing(question, progress))
+    place = question.store or outputs / STORE
+    try:
+        with row_store(place) as store:
+            found = _found(rows, store, _Work(name, library, library_folder, question, progress))
+    except KeyboardInterrupt as interrupt:
+        interrupt.add_note(f"rows that were done are kept in {place}: the same command goes on from there")
+        raise
     swept = Swept(axes, rows, found.facts, found.kept, folder)
     progress("writing files")
     with packed(folder) as fresh:
@@ -102,14 +107,21 @@ def _base(path: Path, library: Library, question: SweepQuestion, progress: Progr
 
 
 @dataclass(frozen=True)
-class _Progressing:
+class _Work:
+    """Rows of the brief `name` with the `library`, of which `folder` is the user's, done where the `question` says."""
+
+    name: str
+    library: Library
+    folder: Path | None
     question: SweepQuestion
     step: Progress
 
-    def work(self, tasks: Sequence[Task]) -> Generator[tuple[int, dict[str, Any]], None, None]:
-        """Index and facts of each task as it is done, here or on a cluster."""
+    def done(self, briefs: Sequence[Mapping[str, Any]]) -> Generator[tuple[int, dict[str, Any]], None, None]:
+        """Index and facts of each of the `briefs` as it is done, here or on a cluster."""
+        folder = None if self.folder is None else self.folder.resolve()  # workers stand elsewhere
+        tasks: list[Task] = [(brief, self.name, folder) for brief in briefs]
         if self.question.scheduler is not None and tasks:
-            return cluster_rows(row_facts, tasks, address=self.question.scheduler)
+            return cluster_rows(row_facts, tasks, address=self.question.scheduler, ground=row_ground(self.library))
         return local_rows(row_facts, tasks, processes=self.question.processes or cores())
 
 
@@ -119,23 +131,20 @@ class _Found:
     kept: int
 
 
-def _found(rows: Sequence[Row], name: str, folder: Path | None, store: RowStore, progressing: _Progressing) -> _Found:
+def _found(rows: Sequence[Row], store: RowStore, work: _Work) -> _Found:
     """Facts of every row, those in the store from there; equal rows are worked out once."""
-    library = Library.open(folder)
-    keys = [row_key(row.data, name, library) for row in rows]
+    keys = row_keys((row.data for row in rows), work.name, work.library)
+    first = dict(zip(reversed(keys), reversed(rows), strict=True))
     known = {key: facts for key in dict.fromkeys(keys) if (facts := store.find(key)) is not None}
     kept = len(known)
     missing = list(dict.fromkeys(key for key in keys if key not in known))
-    progressing.step(f"{len(rows)} rows, {kept} known from before")
-    tasks = [(rows[keys.index(key)].data, name, folder) for key in missing]
-    with closing(progressing.work(tasks)) as done:
+    work.step(f"{len(rows)} rows, {kept} known from before")
+    with closing(work.done([first[key].data for key in missing])) as done:
         for count, (index, facts) in enumerate(done, start=1):
             known[missing[index]] = facts
             if facts["status"] != LOST:
                 store.keep(missing[index], facts)
-            progressing.step(
-                f"row {rows[keys.index(missing[index])].number} {facts['status']}, {count} of {len(tasks)}"
-            )
+            work.step(f"row {first[missing[index]].number} {facts['status']}, {count} of {len(missing)}")
     return _Found(tuple(known[key] for key in keys), kept)
 
 

@@ -59,6 +59,7 @@ FORMS: Mapping[str, Form] = {
     "percent": Form("%", 100.0),
     "percent0": Form("%", 100.0, 0),
     "percent2": Form("%", 100.0, 2),
+    "signed_percent2": Form("%", 100.0, 2, signed=True),
     "shift": Form("%", decimals=2, signed=True),
     "asked_percent": Form("%", 100.0, 2, trimmed=True),
     "mw": Form("mW", 1e3, trimmed=True, digits=3),

@@ -55,7 +55,7 @@ def smith_plot(response: Response, prediction: Mapping[str, Any], *, asked: Aske
         (swatch(LIMIT), f"asked {asked.match_db:g} dB".replace("-", "\N{MINUS SIGN}")),
     ]
     foot, bottom = legend(entries, CENTRE[1] + RADIUS + 22.0)
-    body = [*_grid(z0), circle(CENTRE, RADIUS * 10.0 ** (asked.match_db / 20.0), LIMIT)]
+    body = [*smith_grid(z0), circle(CENTRE, RADIUS * 10.0 ** (asked.match_db / 20.0), LIMIT)]
     body += _curves(response, prediction["trusted_hz"], asked.band)
     for kind, stroke, words, impedance in reversed(marks):
         x, y = smith_places(reflection([impedance], z0))[0].tolist()
@@ -103,8 +103,8 @@ def _curves(response: Response, trusted: Sequence[float], band: tuple[float, flo
     ]
 
 
-def _grid(z0: float) -> list[str]:
-    """Circles of resistance, arcs of reactance and their numbers in ohm."""
+def smith_grid(z0: float) -> list[str]:
+    """Circles of resistance, arcs of reactance and their numbers in ohm for a reference of `z0` ohm."""
     parts = [circle(CENTRE, RADIUS, Stroke("muted", 1.4), "paper")]
     parts.append(polyline(smith_places(np.array([-1.0 + 0j, 1.0 + 0j])), GRID))
     for r in RESISTANCES:

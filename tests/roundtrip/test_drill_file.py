@@ -104,6 +104,15 @@ def test_one_tool_for_each_function_and_diameter_sorted(two_level: Layout, tmp_p
     assert sorted(hit.function for hit in own.hits) == ["ComponentDrill", "ViaDrill", "ViaDrill", "ViaDrill"]
 
 
+def test_holes_in_another_order_are_the_same_board(two_level: Layout, tmp_path: Path) -> None:
+    extra = (Hole((0.012, -0.045), 0.3e-3, True, "via"), Hole((0.02, -0.045), 0.3e-3, True, "via"))
+    layout = replace(two_level, holes=two_level.holes + extra)
+    write_drill(replace(layout, holes=layout.holes[::-1]), tmp_path / PLATED, plated=True, facts=PROJECT)
+    write_drill(layout, tmp_path / UNPLATED, plated=False, facts=PROJECT)
+    texts = drill_mismatches(layout, tmp_path, facts=PROJECT)
+    assert [text for text in texts if "meets no copper" not in text and "cuts the edge" not in text] == []
+
+
 def test_board_without_holes_has_no_file(one_level: Layout, tmp_path: Path) -> None:
     write_drills(one_level, tmp_path, facts=PROJECT)
     assert list(tmp_path.iterdir()) == []

@@ -244,6 +244,15 @@ def test_planted_fault_is_reported(drawn: Layout, tmp_path: Path, fault: str) ->
     assert re.search(words, "\n".join(netlist_mismatches(drawn, tmp_path, facts=FACTS)))
 
 
+def test_records_in_another_order_are_the_same_board(drawn: Layout, tmp_path: Path) -> None:
+    write_netlist(drawn, tmp_path / NETLIST, facts=FACTS)
+    lines = (tmp_path / NETLIST).read_text(encoding="ascii").splitlines()
+    records = [line for line in lines if line[:3] in ("317", "327", "367")]
+    others = [line for line in lines[:-1] if line not in records]
+    (tmp_path / NETLIST).write_text("\n".join([*others, *records[::-1], "999"]) + "\n", encoding="ascii")
+    assert netlist_mismatches(drawn, tmp_path, facts=FACTS) == []
+
+
 def test_file_that_is_gone_is_reported(drawn: Layout, tmp_path: Path) -> None:
     assert "cannot be read" in netlist_mismatches(drawn, tmp_path, facts=FACTS)[0]
 

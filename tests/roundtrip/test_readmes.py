@@ -18,12 +18,13 @@ from planar.errors import HandoffError
 from planar.handoff import GerberFacts, ProjectFacts, SheetFacts, StackupSheet, creation_date, stackup_sheet
 from planar.handoff.drill_file import write_drills
 from planar.handoff.fab_notes import DrawingFacts
+from planar.handoff.fresh import fresh_mismatches
 from planar.handoff.gerber import write_gerber_files
 from planar.handoff.net_tie import net_ties
 from planar.handoff.page import PAGE_LINES, WIDTH, listed, wrapped
 from planar.handoff.readme import write_layout_readme
 from planar.handoff.readme_build import BuildFacts, Expected
-from planar.handoff.readmes import ReadmeFacts, readme_mismatches, write_fabrication_readmes
+from planar.handoff.readmes import ReadmeFacts, write_fabrication_readmes
 from planar.library import WidebandDebye
 from planar.stackup import Conductor, Layer, LayerKind, Stackup
 
@@ -54,6 +55,10 @@ def pages(layout: Layout, folder: Path, build: BuildFacts = BUILD) -> dict[str, 
     write_fabrication_readmes(layout, sheet_of(layout), folder, facts=facts_of(layout, build))
     write_layout_readme(layout, folder / "README.txt", status=STATUS)
     return {path.name: " ".join(path.read_text(encoding="utf-8").split()) for path in folder.glob("README*.txt")}
+
+
+def readme_mismatches(layout: Layout, sheet: StackupSheet, folder: Path, *, facts: ReadmeFacts) -> list[str]:
+    return fresh_mismatches(folder, lambda fresh: write_fabrication_readmes(layout, sheet, fresh, facts=facts))
 
 
 @pytest.mark.parametrize("name", ["two_level", "one_level", "drawn"])

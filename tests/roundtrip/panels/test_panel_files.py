@@ -38,6 +38,8 @@ from planar.handoff.drawing_dimensions import spread
 from planar.handoff.fab_notes import fab_notes, questions
 from planar.handoff.gerber_reader import read_gerber
 from planar.handoff.netlist import write_netlist
+from planar.handoff.readme import write_layout_readme
+from planar.handoff.readme_cam import cam_readme
 
 with warnings.catch_warnings():
     warnings.simplefilter("ignore", DeprecationWarning)  # raised inside the readers' own imports
@@ -238,7 +240,8 @@ def test_short_on_a_coupon_in_a_panel_is_not_the_antennas(
     job = jobs["tabbed"]
     beside = drawing_tools.moved(coupon, 0.1, 0.2, "CPN", "")
     pads = tuple(replace(pad, part=own.part) for pad, own in zip(beside.pads, coupon.pads, strict=True))
-    both = replace(job.layout, islands=job.layout.islands + beside.islands, pads=job.layout.pads + pads)
+    holes = job.layout.holes + beside.holes
+    both = replace(job.layout, islands=job.layout.islands + beside.islands, holes=holes, pads=job.layout.pads + pads)
     assert both.dc_short
     facts = replace(job.drawing, panel=replace(job.facts.panel, coupon_size_m=(40e-3, 26e-3)))
     notes = fab_notes(both, job.sheet, facts=facts)
@@ -248,6 +251,13 @@ def test_short_on_a_coupon_in_a_panel_is_not_the_antennas(
     text = (tmp_path / "netlist.ipc").read_text(encoding="ascii")
     assert "GND_CPN joins signal and return at DC" in text
     assert "feed and ground" not in text
+    page = cam_readme(both, job.sheet, gerber=job.facts.gerber, drawing=facts)
+    assert "Feed and ground are not connected at DC." in page
+    assert "0 ohm" not in page
+    write_layout_readme(both, tmp_path / "README.txt", status="a test")
+    page = " ".join((tmp_path / "README.txt").read_text(encoding="utf-8").split())
+    assert "Signal and return of the boards are not connected at DC" in page
+    assert "on the coupon: 1 net tie." in page
 
 
 def test_job_file_has_the_panel_and_its_files(folders: dict[str, Path]) -> None:

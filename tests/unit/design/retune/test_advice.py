@@ -1,6 +1,8 @@
 """Advice on a board by formulas. Authority: the formula says which change brings the resonance back and by how much."""
 
+import json
 import tomllib
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -126,8 +128,7 @@ def test_learnt_laminate_reads_back_and_is_higher(low_board):
     assert "1 mm, which was assumed" in dict(read.sources)["eps_r"]
 
 
-def test_nothing_is_learnt_of_a_measurement_that_tells_little(bench, low_board, monkeypatch):
-    from dataclasses import replace
+def test_nothing_is_learnt_of_a_measurement_that_tells_little(low_board):
 
     estimate = replace(low_board.fit.estimate, covariance=np.eye(len(low_board.fit.estimate.z)))
     blind = replace(low_board, fit=replace(low_board.fit, estimate=estimate))
@@ -141,7 +142,6 @@ def test_facts_are_plain_and_carry_units(design, bench, workers):
     graded = grade(measured, design.choices.brief.target.band)
     seen = (measured, graded, RetuneRequest(unstated_plane()), None)
     facts = retune_facts(explained(design, bench.model, seen, workers))
-    import json
 
     again = json.loads(json.dumps(facts))
     assert again["shift_interval_95"][0] <= again["shift"] <= again["shift_interval_95"][1] < 0.0

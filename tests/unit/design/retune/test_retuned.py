@@ -1,5 +1,6 @@
 """The whole of it on boards by formulas, with a cover that is not where it should be. Authority: what was put in."""
 
+import tomllib
 from dataclasses import replace
 
 import pytest
@@ -17,7 +18,6 @@ from .conftest import LIBRARY, Bench, FormulaWorkers, formula_solved, resonance
 
 @pytest.fixture
 def covered_design(design, monkeypatch):
-    import tomllib
 
     monkeypatch.setattr(board_model, "solved_terms", formula_solved)
     cover = {"material": "abs", "air_gap": "6 mm", "thickness": "2.5 mm"}
@@ -51,6 +51,7 @@ def test_cover_elsewhere_is_found_and_answered(covered_design, number, word):
     found = retune(covered_design, measured_with(covered_design, choices), FormulaWorkers(None))
     if number == 0:
         assert word in found.surroundings
+        assert any("drawn for these surroundings" in each.advice for each in found.findings)
         assert found.inferred.effect.sign == -1
     best = found.advice.best.dimensions
     designed = resonance(covered_design.choices, covered_design.dimensions)
