@@ -9,13 +9,13 @@ from pathlib import Path
 from typing import Any
 
 from planar import __version__
-from planar.brief import write_brief
-from planar.design.design_file import design_facts
+from planar.brief import read_brief, write_brief
+from planar.design.design_file import design_facts, read_design
 from planar.design.option_reader import OptionReader
 from planar.design.retune.batch import LearntLaminate, learnt_laminate
 from planar.design.retune.cut_places import cut_places
 from planar.design.retune.facts import retune_facts
-from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, corrected_brief, retune
+from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, corrected_brief, judged, retune
 from planar.design.retune.unknowns import Plane, coax_delay, plane_of_standards, stated_plane, unstated_plane
 from planar.design.workers import workers
 from planar.errors import HandoffError, PlanarError, SynthesisError
@@ -71,13 +71,14 @@ def retune_board(
 ) -> Retuning:
     """Explain the sweep in `file`, measured on a board of the design at `path`, and say what to change.
 
-    Writes `outputs`/<name>-retune: retune.html, retune.json, the next brief, trim.pdf and trim.svg where anything can be
-    cut. Raises `PlanarError`; nothing is then left behind.
+    Writes `outputs`/<name>-retune: page, facts, the next brief, a drawing to cut by where anything can be cut.
+    Raises `PlanarError`; nothing is then left behind.
     """
     source = design_file(path)
     progress("reading the measurement")
     request, measured = _request(question, read_measured(file))
     _check_new(question.write)
+    judged(_band(source, library), measured, request)  # before any solving
     design = solved_design(source, library, progress)
     with workers() as shared:
         found = retune(design, measured, shared, request, progress)
@@ -121,6 +122,12 @@ def _request(question: RetuneQuestion, measured: Measured) -> tuple[RetuneReques
     standards = [read_measured(each) for each in question.standards]
     behind = behind_standards(measured, *standards)
     return RetuneRequest(plane_of_standards(), None if second is None else behind_standards(second, *standards)), behind
+
+
+def _band(source: Path, library: Library) -> tuple[float, float]:
+    """Band (low, high) Hz that the design or brief at `source` is for."""
+    brief = read_design(source, library).brief if source.suffix == ".json" else read_brief(source, library)
+    return brief.target.band
 
 
 def _stated(question: RetuneQuestion) -> Plane:
