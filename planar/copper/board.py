@@ -62,7 +62,7 @@ def plan_board(
     copper = unary_union([island.outline.shape() for island in centred.islands])
     mounting = _mounting_holes((x0, y0, x1, y1), copper, loop_centre, request)
     holes = centred.holes + mounting
-    openings = centred.mask_openings + _hole_openings(holes, levels, request)
+    openings = centred.mask_openings + _hole_openings(holes, request)
     edge = rounded_rectangle(x0, y0, x1, y1, radius=BOARD_CORNER)
     layout = Layout(
         name=request.name,
@@ -169,14 +169,14 @@ def _keepout(edge: Outline, drawing: Drawing, request: DrawingRequest) -> tuple[
     return tuple(part for side in sides for piece in intersection(edge, side) for part in difference(piece, pocket))
 
 
-def _hole_openings(holes: tuple[Hole, ...], levels: tuple[Level, ...], request: DrawingRequest) -> tuple[Marking, ...]:
-    """Mask openings round unplated holes, on every level; vias stay covered."""
+def _hole_openings(holes: tuple[Hole, ...], request: DrawingRequest) -> tuple[Marking, ...]:
+    """Mask openings round unplated holes, on every masked side; vias stay covered."""
     grow = 2.0 * request.fab.mask_expansion
     return tuple(
         Marking(level, circle(hole.centre, hole.diameter + grow))
         for hole in holes
         if not hole.plated
-        for level in levels
+        for level in request.masked
     )
 
 

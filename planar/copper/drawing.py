@@ -28,7 +28,7 @@ class DrawingRequest:
     """What drawing needs beside the dimensions.
 
     `end` is "via" or "open" for a guided line. `mirrored` gives the other sense of circular
-    polarisation. `masked` lists the levels under solder mask. `size_limit` (width, height) m caps the
+    polarisation. `masked` lists the sides under solder mask. `size_limit` (width, height) m caps the
     board, None leaves it free. `tabs` is how many pairs of trim tabs are left, where there are any.
     """
 

@@ -188,7 +188,7 @@ def _fiducials(rails: _Rails, request: RailRequest, way: Panelling) -> None:
     for place in found:
         disc, opening = (circle(place, size).normalised() for size in (way.fiducial, way.fiducial_opening))
         rails.islands += [Island(level, disc, Role.FIDUCIAL, part="") for level in request.levels]
-        rails.openings += [Marking(level, opening) for level in request.masked]
+        rails.openings += [Marking(level, opening) for level in request.levels if level in request.masked]
     rails.missing("fiducials", len(found), len(FIDUCIALS))
 
 

@@ -72,8 +72,8 @@ class Choices:
 
     @property
     def masked(self) -> tuple[Level, ...]:
-        """Levels that carry solder mask."""
-        return tuple(level for level in self.levels if self.stackup.find(f"mask-{level.value}") is not None)
+        """Sides that carry solder mask, the bare side of a one-level board among them."""
+        return tuple(level for level in Level if self.stackup.find(f"mask-{level.value}") is not None)
 
 
 def choose(brief: Brief, library: Library) -> Choices:

@@ -106,8 +106,9 @@ def test_pack_is_complete(pack: Path) -> None:
     fabrication |= {"README-cam.txt", "README-build.txt"}
     stackup = json.loads((pack / "fabrication" / "stackup.json").read_text(encoding="utf-8"))
     named = {layer["name"] for layer in stackup["layers_top_to_bottom"]}
+    fabrication |= {f"mask-{side}.gbr" for side in ("top", "bottom") if f"mask-{side}" in named}
     for level in levels:
-        fabrication |= {f"{kind}-{level}.gbr" for kind in ("mask", "legend") if f"{kind}-{level}" in named}
+        fabrication |= {f"legend-{level}.gbr"} & {f"{name}.gbr" for name in named}
         fabrication.add(f"copper-{level}.gbr")
     plated = {hole["plated"] for hole in facts(pack)["holes"]}  # type: ignore[attr-defined]
     fabrication |= {f"drill-{'plated' if each else 'unplated'}.xnc" for each in plated}

@@ -54,7 +54,9 @@ HASH = hashlib.sha256(b"a design").hexdigest()
 
 def facts_of(layout: Layout, **changed: Any) -> GerberFacts:
     project = ProjectFacts(layout.name, "A", HASH, creation_date())
-    return replace(GerberFacts(project, layout.levels, RING), **changed)
+    opened = {marking.level for marking in layout.mask_openings}
+    masked = tuple(level for level in Level if level in opened | set(layout.levels))
+    return replace(GerberFacts(project, masked, RING), **changed)
 
 
 @pytest.fixture(params=["two_level", "one_level", "ring_guided", "plain", "coplanar"])
