@@ -17,8 +17,7 @@ from planar.cli.options import json_option, library_option, outputs_option, refu
 @refusing
 def new(name: Path, as_json: bool) -> None:
     """Write a commented brief NAME.toml."""
-
-    from planar.pipeline.answers import new_brief
+    from planar.pipeline.starting import new_brief
 
     path = new_brief(name)
     advice = f"{path} written: edit it, then planar make {shlex.quote(str(path))}"
@@ -39,13 +38,13 @@ def make(
     """Size, draw, check and write the pack for BRIEF, with a report to decide from."""
     from planar.design.design_file import design_facts
     from planar.library import Library
-    from planar.pipeline import designing
+    from planar.pipeline import making
     from planar.pipeline.reports import REPORT
     from planar.report import console
 
     with console.progress() as step:
         library = Library.open(library_folder)
-        made = designing.make(brief, library, outputs, sensitive=sensitivities, progress=step)
+        made = making.make(brief, library, outputs, sensitive=sensitivities, progress=step)
     if as_json:
         console.print_json(design_facts(made.design) | {"folder": str(made.folder)})
     else:

@@ -32,14 +32,15 @@ json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON i
 
 
 def refusing(command: Command) -> Command:
-    """Turn a `PlanarError` into its message on stderr and exit code 1."""
+    """Turn a `PlanarError` into its message on stderr and exit code 1; an interrupted command says what it left."""
 
     @functools.wraps(command)
     def wrapped(*args: Any, **kwargs: Any) -> Any:
         try:
             return command(*args, **kwargs)
-        except KeyboardInterrupt:
-            click.echo("interrupted: nothing was written", err=True)
+        except KeyboardInterrupt as interrupt:
+            left = getattr(interrupt, "__notes__", ["nothing was written"])
+            click.echo(f"interrupted: {'; '.join(left)}", err=True)
             sys.exit(130)
         except PlanarError as error:
             click.echo("\n".join([f"refused: {error}", *getattr(error, "__notes__", ())]), err=True)

@@ -59,7 +59,7 @@ def sweep(
 
 @click.command()
 @click.argument("design", metavar="DESIGN|BRIEF", type=click.Path(path_type=Path))
-@click.option("--samples", type=click.IntRange(100, 1_000_000), default=10_000, show_default=True, help="Boards drawn.")
+@click.option("--samples", type=click.IntRange(1_000, 200_000), default=10_000, show_default=True, help="Boards drawn.")
 @click.option("--seed", type=int, default=1, show_default=True, help="Of the draw: the same seed, the same yield.")
 @click.option("--uncovered", is_flag=True, help="Half of the boards run without their cover.")
 @click.option("--recentre", is_flag=True, help="Move the dimensions to where most boards meet the brief.")

@@ -91,6 +91,11 @@ class Coupon:
     notes: tuple[str, ...]
 
     @property
+    def masked(self) -> tuple[Level, ...]:
+        """Levels under solder mask, of the coupon's own two."""
+        return _masked(self.stackup)
+
+    @property
     def length_difference(self) -> float:
         """What the long line is longer than the short one, m."""
         return self.dimensions["long_length"] - self.dimensions["short_length"]
@@ -119,7 +124,7 @@ def design_coupon(choices: Choices, lines: Iterable[DesignLine], *, library: Lib
         raise SynthesisError(
             f"coupon: outside what the formulas cover: {error}; it follows from band, board thickness and copper"
         ) from error
-    masked = tuple(level for level in Level if stackup.find(f"mask-{level.value}") is not None)
+    masked = _masked(stackup)
     request = CouponRequest(choices.brief.name, connector, choices.fab, masked, trace[1])
     layout = coupon_layout(dimensions, request)
     findings = fab_findings(layout, choices.fab)
@@ -137,6 +142,10 @@ def eps_at(laminate: Laminate, frequency: float) -> tuple[float, float]:
     """Permittivity and loss tangent the library states for `laminate` at `frequency` Hz."""
     eps = laminate.model.permittivity(frequency)
     return eps.real, loss_tangent(eps)
+
+
+def _masked(stackup: Stackup) -> tuple[Level, ...]:
+    return tuple(level for level in Level if stackup.find(f"mask-{level.value}") is not None)
 
 
 def _check(choices: Choices) -> None:

@@ -30,10 +30,10 @@ from planar.lines.ring_resonator import largest_pull
 from planar.network.response import Response
 from planar.units import SPEED_OF_LIGHT, show
 
-SEARCH_NEXT = 0.03
-"""The same for the others, once one is found."""
 SEARCH = 0.12
 """Half-width of the window in which the first resonance is looked for, as a fraction of frequency."""
+SEARCH_NEXT = 0.03
+"""The same for the others, once one is found."""
 COARSEST = 0.5
 """Largest step of a sweep, in half-power widths of the resonance."""
 CURVATURE_SHARE = 1.0 / 3.0

@@ -105,6 +105,8 @@ def _significance(frequency: Array, s: Complex, centre: float, q: float) -> floa
 
 
 def _refined(frequency: Array, s: Complex, centre: float, q: float) -> FittedPeak | None:
+    q = min(max(q, Q_RANGE[0]), Q_RANGE[1])  # where the search starts must be allowed
+
     def residual(logs: Array) -> Array:
         left = _linear(frequency, s, centre * math.exp(logs[0]), q * math.exp(logs[1]))[1]
         return np.concatenate([left.real, left.imag])

@@ -8,8 +8,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
-from dataclasses import asdict
-from typing import Any
 
 from planar.design.coupon import Coupon, eps_at
 from planar.design.coupon_budget import COVERAGE, Estimate, permittivity_slope
@@ -52,43 +50,6 @@ def measurement_report(measurement: CouponMeasurement) -> str:
         ]  # fmt: skip
         lines += ["", *_table(head, rows)]
     return "\n".join([*lines, "", *(f"- {text}" for text in m.assumptions)]) + "\n"
-
-
-def coupon_facts(coupon: Coupon) -> dict[str, Any]:
-    """The coupon in plain types, SI, as `--json` prints it."""
-    return {
-        "name": coupon.name,
-        "size_m": list(coupon.layout.size),
-        "dimensions_m": dict(coupon.dimensions),
-        "connector": coupon.connector.key,
-        "trace_impedance_ohm": coupon.trace_impedance,
-        "order": coupon.order,
-        "resonances": [asdict(each) for each in coupon.resonances],
-        "phases": [asdict(each) for each in coupon.phases],
-        "findings": [asdict(each) for each in coupon.findings],
-        "notes": list(coupon.notes),
-    }
-
-
-def measurement_facts(measurement: CouponMeasurement) -> dict[str, Any]:
-    """The measurement in plain types, SI, as `--json` prints it; uncertainties are expanded, k = 2."""
-    m = measurement
-
-    def estimate(each: Estimate) -> dict[str, Any]:
-        return {"eps_r": each.eps_r, "uncertainty": each.uncertainty, "causes": [asdict(c) for c in each.contributions]}
-
-    return {
-        **estimate(m.estimate),
-        "frequency_hz": m.frequency,
-        "library_eps_r": m.nominal,
-        "library_tolerance": m.nominal_tolerance,
-        "thickness_m": m.thickness,
-        "by_method": {name: estimate(each) for name, each in m.by_method},
-        "resonances": [{**asdict(r), "estimate": estimate(r.estimate)} for r in m.resonances],
-        "line": [asdict(point) for point in m.line_points],
-        "loss_tangent": None if m.tan_d is None else asdict(m.tan_d),
-        "assumptions": list(m.assumptions),
-    }
 
 
 def _budget(by_method: Sequence[tuple[str, Estimate]], total: Estimate) -> list[str]:
@@ -173,7 +134,7 @@ def _ring(coupon: Coupon) -> str:
         cells = [_resonance(coupon, r.order, scale * nominal) for scale in SCALES]
         rows.append((str(r.order), *cells, f"{r.q:.0f}", "........", "........", "........"))
     first = coupon.resonances[0]
-    bend = ring.wavenumber(1, eps_at(coupon.laminate, first.frequency)[0], first.frequency) * ring.electrical_radius
+    bend = ring.wavenumber(1, eps_at(coupon.laminate, first.frequency)[0], first.frequency) * ring.radius
     drawn = show(ring.radius, "length")
     gain = 2.0 * permittivity_slope(coupon.line, eps_at(coupon.laminate, first.frequency)[0], first.frequency)
     return "\n".join(
@@ -185,7 +146,8 @@ def _ring(coupon: Coupon) -> str:
             f"    eps_eff = (n c / (2 pi r f))^2 x K_n^2,   r = {drawn}, K_1 = {bend:.4f}",
             "",
             "K_n is the curvature (Wolff & Knoppik, Electron. Lett. 7 (1971) 779): an annulus of magnetic walls as",
-            "wide as w_eff = 377 ohm h/(Z sqrt(eps_eff)) has K_n of nearly 1 + w_eff^2/(24 r^2). Before that the gaps:",
+            "wide as w_eff = 377 ohm h/(Z sqrt(eps_eff)) has K_n of nearly 1 + w_eff^2/(24 r^2); half the slit",
+            "adds slit/(4 pi r). Before that the gaps:",
             "with |S21| at the peak and the loaded Q (f over the width at -3 dB), the external Q of a gap is",
             "Qe = 2 Q/|S21|, and the resonance lies by something between 0 and 1/sqrt(pi n Qe) of itself too low: add",
             "half of it to f, the other half is uncertainty. eps_r: find that f between the columns of the table,",

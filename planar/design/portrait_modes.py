@@ -31,7 +31,7 @@ RESONANCE_DIGITS, QUALITY_DIGITS = -4, 2
 def loop_modes(task: tuple[Choices, Mapping[str, float]]) -> tuple[ModeImage, ...]:
     """The two, or fewer, full-wave modes of the loop of these dimensions, the better driven one at the centre first.
 
-    None where the solver does not take the bare loop by itself.
+    Empty where the solver does not take the bare loop by itself.
     """
     choices, dimensions = task
     bare = bare_loop_layout(choices, dimensions, draw(choices, dimensions, lettered_board=False).layout)

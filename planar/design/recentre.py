@@ -47,8 +47,6 @@ SOFT = 0.03
 """Of its limit, over which a board turns from good to bad while a move is sought: a yield has no slope."""
 EASE = 0.05
 """Price of the mean of all boards, so that a full yield goes on to the middle of its window."""
-OTHER_SENSE = 60.0
-"""dB, axial ratio the worst is counted as."""
 WORTH = 0.002
 """Yield the other variables must add to what moving the loop alone brings."""
 
@@ -206,10 +204,10 @@ def _badness(terms: Complex, scattered: Spread) -> Array:
     """Worst term of each board over its limit, (n,): 1 is just met."""
     outcome, limits = scattered.reader.outcome(terms), scattered.limits
     match: Array = outcome.worst / limits.match
-    worst = outcome.worst_axial
+    worst = outcome.counted_axial
     if worst is None or limits.axial_db is None:
         return match
-    return np.maximum(match, _out_of_round(np.minimum(worst, OTHER_SENSE)) / _out_of_round(np.array(limits.axial_db)))
+    return np.maximum(match, _out_of_round(worst) / _out_of_round(np.array(limits.axial_db)))
 
 
 def _out_of_round(axial_ratio_db: Array) -> Array:

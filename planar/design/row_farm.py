@@ -15,9 +15,10 @@ from typing import Any
 
 from threadpoolctl import threadpool_limits
 
-from planar.design.sweep_rows import Task, lost_row
+from planar.design.sweep_rows import Task, lost_row, row_ground
 from planar.design.workers import process_pool
-from planar.errors import HandoffError
+from planar.errors import HandoffError, PlanarError
+from planar.library import Library
 
 Facts = dict[str, Any]
 Worked = Callable[[Task], Facts]
@@ -93,11 +94,14 @@ def _rows_of(
             yield index, facts
 
 
-def cluster_rows(work: Worked, tasks: Sequence[Task], *, address: str) -> Generator[tuple[int, Facts], None, None]:
+def cluster_rows(
+    work: Worked, tasks: Sequence[Task], *, address: str, ground: str
+) -> Generator[tuple[int, Facts], None, None]:
     """`work` of every task on the Dask cluster whose scheduler is at `address`.
 
-    Raises `HandoffError` where Dask is not installed or the scheduler does not answer. The workers need this version
-    of planar and the same files of the library.
+    `ground` is the `row_ground` here: a worker with another version of planar or other files of the library would give
+    other rows. Raises `HandoffError` for such a worker, and where Dask is not installed or the scheduler does not
+    answer.
     """
     try:
         from dask.distributed import Client, as_completed
@@ -109,18 +113,30 @@ def cluster_rows(work: Worked, tasks: Sequence[Task], *, address: str) -> Genera
     except (OSError, ValueError, TimeoutError) as error:
         raise HandoffError(f"no scheduler answers at {address}: {error}") from error
     with client:
-        futures = client.map(_in_one_thread, [(work, task) for task in tasks], pure=False, retries=0)
+        futures = client.map(_in_one_thread, [(work, task, ground) for task in tasks], pure=False, retries=0)
         places = {future.key: index for index, future in enumerate(futures)}
         for future in as_completed(futures, loop=client.loop):
             try:
                 facts = future.result()
             except KilledWorker:
                 facts = lost_row(DEATHS)
+            except ImportError as error:
+                raise HandoffError(f"a worker of the cluster lacks this version of planar: {error}") from error
             yield places[future.key], facts
 
 
-def _in_one_thread(task: tuple[Worked, Task]) -> Facts:
-    """A row on a worker of a cluster."""
-    work, row = task
+def _in_one_thread(task: tuple[Worked, Task, str]) -> Facts:
+    """A row on a worker of a cluster. Raises `HandoffError` where it would not be the row of the machine that asks."""
+    work, row, ground = task
+    _, _, folder = row
+    try:
+        here = row_ground(Library.open(folder))
+    except PlanarError as error:
+        raise HandoffError(f"a worker of the cluster lacks the library: {error}") from error
+    if here != ground:
+        raise HandoffError(
+            "a worker of the cluster has another version of planar, or other files in its library, than this machine: "
+            "make them the same"
+        )
     with threadpool_limits(1):
         return work(row)

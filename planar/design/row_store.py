@@ -16,7 +16,8 @@ from typing import Any
 
 from planar.errors import HandoffError
 
-_TABLE = "CREATE TABLE IF NOT EXISTS rows (key TEXT PRIMARY KEY, facts TEXT NOT NULL)"
+_NAME = "rows"
+_TABLE = f"CREATE TABLE IF NOT EXISTS {_NAME} (key TEXT PRIMARY KEY, facts TEXT NOT NULL)"
 _WAIT = 60.0
 """s, two sweeps may share a store: how long one waits for the other to finish writing."""
 
@@ -30,7 +31,10 @@ class RowStore:
     def find(self, key: str) -> dict[str, Any] | None:
         """The facts kept under `key`."""
         found = self.connection.execute("SELECT facts FROM rows WHERE key = ?", (key,)).fetchone()
-        return None if found is None else dict(json.loads(found[0]))
+        try:
+            return None if found is None else dict(json.loads(found[0]))
+        except (TypeError, ValueError) as error:
+            raise sqlite3.DatabaseError("a row in it cannot be read") from error
 
     def keep(self, key: str, facts: Mapping[str, Any]) -> None:
         """Keep `facts` under `key`, safe from then on."""
@@ -43,9 +47,15 @@ def row_store(path: Path) -> Iterator[RowStore]:
     """The store in the file `path`, made when there is none. Raises `HandoffError` when that cannot be used as one."""
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise HandoffError(f"cannot write into {path.parent}: {error.strerror}") from error
+    try:
         with closing(sqlite3.connect(path, timeout=_WAIT)) as connection:
+            tables = {name for (name,) in connection.execute("SELECT name FROM sqlite_master WHERE type = 'table'")}
+            if tables and _NAME not in tables:
+                raise sqlite3.DatabaseError("a database of something else")
             with connection:
                 connection.execute(_TABLE)
             yield RowStore(connection)
-    except (sqlite3.Error, OSError) as error:
+    except sqlite3.Error as error:
         raise HandoffError(f"{path}: cannot be used to keep rows: {error}; name another file with --store") from error

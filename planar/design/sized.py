@@ -101,11 +101,9 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
     rules = (*trial.planned.findings, *fab_findings(trial.planned.layout, choices.fab, choices.brief.board.size_limit))
     missed = [*unmet(choices, prediction, Severity.REFUSE), *(f for f in rules if f.severity is Severity.REFUSE)]
     if missed:
-        raise SynthesisError(
-            f"{first.name}: no {choices.family.key} board was found that meets the brief; the best reached:",
-            (*missed, *_limits(fine), *_context(prediction, choices)),
-            _within_reach(prediction, choices, trial) if _only_match(missed) else (),
-        )
+        told = (*missed, *_limits(fine), *_context(prediction, choices))
+        reason = f"{first.name}: no {choices.family.key} board was found that meets the brief; the best reached:"
+        raise SynthesisError(reason, told, _within_reach(prediction, choices, trial) if _only_match(missed) else ())
     dimensions = {name: trial.dimensions[name] for name in choices.family.needed(choices.traits)}
     cuts = _cuts(choices, dimensions, coarse.bench.workers, progress)
     return replace(

@@ -76,7 +76,7 @@ class Corner:
 @dataclass(frozen=True)
 class ModelError:
     """How far the model was off on `checks` boards drawn afresh and solved: the largest distance of the complex
-    reflection over the span and inside the band, and of the axial ratio in dB (None for linear polarisation)."""
+    reflection over the span and inside the band, and of the worst axial ratio in dB (None for linear polarisation)."""
 
     checks: int
     reflection: float
@@ -125,10 +125,13 @@ class Spread:
 
     @property
     def doubtful_yield(self) -> tuple[float, float]:
-        """The total yield where the model errs by its largest error, to the bad and to the good side."""
-        off = 0.0 if self.error is None else self.error.in_band
-        bad, good = (float(np.mean(self.limits.met(self.outcome, allowance=each))) for each in (off, -off))
-        return bad, good
+        """The total yield where the model errs by its largest errors, to the bad and to the good side."""
+        error = self.error
+        off, axial = (0.0, 0.0) if error is None else (error.in_band, error.axial_db or 0.0)
+        bad, good = (
+            self.limits.met(self.outcome, allowance=side * off, axial_allowance=side * axial) for side in (1.0, -1.0)
+        )
+        return float(np.mean(bad)), float(np.mean(good))
 
 
 def spread(
@@ -141,11 +144,10 @@ def spread(
     question = asked_of(design, request)
     progress(f"solving boards at the ends of {len(question.quantities)} tolerances")
     wrong = _fine_wrong(question, workers)
-    surface = solved_surface(question, workers)
-    nominal = np.concatenate([_predicted(design, question), wrong()])
+    surface, predicted = solved_surface(question, workers), _predicted(design, question)
+    nominal = np.concatenate([predicted, wrong()])
     model = surface.model.on(nominal)
-    reader = Reader(question.frequencies, nominal[: len(question.frequencies)], design.choices.brief.target.band)
-    limits = limits_of(design.choices)
+    reader = Reader(question.frequencies, predicted, design.choices.brief.target.band)
     names, corners = _worst_corners(model, reader, question)
     fresh = drawn(question.quantities, request.checks if question.quantities else 0, (request.seed, 1))
     progress(f"solving {len(corners)} worst corners and {len(fresh)} boards drawn afresh")
@@ -161,7 +163,7 @@ def spread(
         question=question,
         model=model,
         reader=reader,
-        limits=limits,
+        limits=limits_of(design.choices),
         deviations=deviations,
         outcome=outcome,
         nominal=reader.outcome(nominal[None, :]),
@@ -170,8 +172,14 @@ def spread(
         corners=_corners(names, corners, solved, model, reader),
         error=_model_error(fresh, solved[len(corners) :], model, reader),
         boards=boards,
-        solutions=boards * question.effort.nodes + (verifying_effort(design.choices).nodes if limits.axial_db else 0),
+        solutions=_solutions(question, boards),
     )
+
+
+def _solutions(question: Question, boards: int) -> int:
+    """Field solutions of so many `boards` and, of a circular design, of the one on the fine mesh."""
+    fine = verifying_effort(question.choices).nodes if question.axial_frequencies.size else 0
+    return boards * question.effort.nodes + fine
 
 
 def asked_of(design: Design, request: SpreadRequest) -> Question:
@@ -228,12 +236,13 @@ def _aims(axial: bool) -> dict[str, Aim]:
         "lowest frequency": lambda outcome: -outcome.shift,
         "highest frequency": lambda outcome: outcome.shift,
     }
-    return aims | ({"worst axial ratio": lambda outcome: _finite(outcome.worst_axial)} if axial else {})
+    return aims | ({"worst axial ratio": _worst_axial} if axial else {})
 
 
-def _finite(values: Array | None) -> Array:
-    """An axial ratio of the other sense is as bad as any."""
-    return np.zeros(0) if values is None else np.minimum(values, 1e3)
+def _worst_axial(outcome: Outcome) -> Array:
+    """Aim of a circular board's worst axial ratio; a linear one has none."""
+    worst = outcome.counted_axial
+    return np.zeros(0) if worst is None else worst
 
 
 def _worst_corners(model: SurfaceModel, reader: Reader, question: Question) -> tuple[list[str], list[Array]]:
@@ -288,7 +297,7 @@ def _model_error(fresh: Array, solved: list[Complex | None], model: SurfaceModel
     count, (low, high) = len(reader.frequencies), reader.band
     off = np.abs(said - exact)[:, :count]
     near = _around_band(reader.frequencies, low, high)
-    axial, other = reader.outcome(said).worst_axial, reader.outcome(exact).worst_axial
+    axial, other = reader.outcome(said).counted_axial, reader.outcome(exact).counted_axial
     axial_db = None if axial is None or other is None else float(np.max(np.abs(axial - other)))
     return ModelError(len(pairs), float(off.max()), float(off[:, near].max()), axial_db)
 
@@ -306,8 +315,8 @@ def _contributors(
     nothing = np.zeros(len(quantities)), 0.0
     match = variance_shares(deviations, outcome.worst) or nothing
     shift = variance_shares(deviations, outcome.shift) or nothing
-    worst_axial = outcome.worst_axial
-    axial = None if worst_axial is None else variance_shares(deviations, _finite(worst_axial)) or nothing
+    counted = outcome.counted_axial
+    axial = None if counted is None else variance_shares(deviations, counted) or nothing
     ends = np.array([quantity.ends for quantity in quantities]).reshape(len(quantities), 2)
     units = np.eye(len(quantities))
     low, high = (reader.outcome(model.at(ends[:, [side]] * units)) for side in (0, 1))

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from planar import __version__
 from planar.design.recentre import Recentred
 from planar.design.spread import Contributor, Corner, ModelError, Spread
-from planar.design.spread_sampling import Outcome, yield_interval
+from planar.design.spread_sampling import OTHER_SENSE, Outcome, yield_interval
 from planar.design.tolerances import SIGMAS, UNMODELLED, Quantity
 from planar.errors import BriefError, Fault
 
@@ -163,7 +163,7 @@ def _results(outcome: Outcome) -> dict[str, Any]:
 
 def _percentiles(outcome: Outcome) -> dict[str, Any]:
     """Percentiles of every result."""
-    worst_axial = outcome.worst_axial
+    counted = outcome.counted_axial
 
     def told(values: Array) -> list[float]:
         return [float(each) for each in np.percentile(values, PERCENTILES)]
@@ -173,7 +173,7 @@ def _percentiles(outcome: Outcome) -> dict[str, Any]:
         "worst_reflection_db": told(_decibels(outcome.worst)),
         "best_match_hz": told(outcome.best_match),
         "shift_percent": told(100.0 * outcome.shift),
-        "worst_axial_ratio_db": None if worst_axial is None else told(worst_axial),
+        "worst_axial_ratio_db": None if counted is None else [_in_sense(each) for each in told(counted)],
     }
 
 
@@ -187,9 +187,19 @@ def _envelope(spread: Spread) -> dict[str, Any]:
         "reflection_db": np.percentile(_decibels(outcome.size), ENVELOPES, axis=0).tolist(),
         "nominal_reflection_db": _decibels(spread.nominal.size[0]).tolist(),
         "axial_frequency_hz": None if axial is None else question.axial_frequencies.tolist(),
-        "axial_ratio_db": None if axial is None else np.percentile(axial, ENVELOPES, axis=0).tolist(),
+        "axial_ratio_db": None if axial is None else _axial_envelope(axial),
     }
     return facts
+
+
+def _axial_envelope(axial: Array) -> list[list[float | None]]:
+    """Percentiles of axial ratios (n, a) dB at each frequency; None where they are of the other sense."""
+    found = np.percentile(np.minimum(axial, OTHER_SENSE), ENVELOPES, axis=0)
+    return [[_in_sense(each) for each in curve] for curve in found.tolist()]
+
+
+def _in_sense(counted_db: float) -> float | None:
+    return counted_db if counted_db < OTHER_SENSE else None
 
 
 def _contributor(each: Contributor) -> dict[str, Any]:

@@ -24,6 +24,8 @@ DEGREE = 4
 """Of the polynomial in one quantity: more finds nothing new in a largest value over a band."""
 CONFIDENCE = 1.96
 """Standard deviations of a 95 % interval."""
+OTHER_SENSE = 60.0
+"""dB, what an axial ratio of the other sense is counted as where numbers are added up: it is as bad as any."""
 NOTHING = 1e-12
 """Standard deviation below which a result does not scatter at all."""
 
@@ -89,8 +91,14 @@ class Outcome:
 
     @property
     def worst_axial(self) -> Array | None:
-        """Largest axial ratio in the band, (n,) dB."""
+        """Largest axial ratio in the band, (n,) dB, infinite where the sense is the other one."""
         return None if self.axial is None else np.max(self.axial, axis=1)
+
+    @property
+    def counted_axial(self) -> Array | None:
+        """`worst_axial` with the other sense counted as `OTHER_SENSE`, (n,) dB."""
+        worst = self.worst_axial
+        return None if worst is None else np.minimum(worst, OTHER_SENSE)
 
 
 @dataclass(frozen=True)
@@ -100,17 +108,18 @@ class Limits:
     match: float
     axial_db: float | None
 
-    def met(self, outcome: Outcome, *, allowance: float = 0.0) -> NDArray[np.bool_]:
-        """Boards that meet everything, (n,), their reflections taken larger by `allowance`."""
+    def met(self, outcome: Outcome, *, allowance: float = 0.0, axial_allowance: float = 0.0) -> NDArray[np.bool_]:
+        """Boards that meet everything, (n,), their reflections taken larger by `allowance`, their axial ratios by
+        `axial_allowance` dB."""
         good: NDArray[np.bool_] = outcome.worst + allowance <= self.match
-        return good if outcome.axial is None else good & self.round(outcome)
+        return good & self.round(outcome, allowance=axial_allowance)
 
-    def round(self, outcome: Outcome) -> NDArray[np.bool_]:
-        """Boards round enough, (n,): all of them for linear polarisation."""
+    def round(self, outcome: Outcome, *, allowance: float = 0.0) -> NDArray[np.bool_]:
+        """Boards round enough, (n,), their axial ratios taken larger by `allowance` dB: all for linear polarisation."""
         worst = outcome.worst_axial
         if worst is None or self.axial_db is None:
             return np.ones(len(outcome.worst), dtype=np.bool_)
-        return np.asarray(worst <= self.axial_db, dtype=np.bool_)
+        return np.asarray(worst + allowance <= self.axial_db, dtype=np.bool_)
 
 
 def drawn(quantities: Sequence[Quantity], samples: int, seed: Sequence[int]) -> Array:
@@ -129,8 +138,8 @@ def yield_interval(good: int, samples: int) -> tuple[float, float]:
 
 def variance_shares(deviations: Array, result: Array) -> tuple[Array, float] | None:
     """First-order shares (d,) of the variance of `result` (n,) and the share of interactions, None where nothing
-    scatters. `deviations` (n, d) are independent; each share is found on its own, so that they sum to one only as far
-    as the samples go."""
+    scatters. `deviations` (n, d) are independent, n many times d; the polynomials are fitted together and their
+    variances taken one by one, so that they sum to one only as far as the samples go."""
     spread = float(np.std(result))
     if spread < NOTHING or not deviations.shape[1]:
         return None

@@ -22,7 +22,8 @@ from planar.library import Library
 MOST_ROWS = 10_000
 """Rows beyond which a sweep is refused: a slip in a count, not a plan."""
 _RANGE = re.compile(
-    r"\s*([+-]?[\d.]+(?:[eE][+-]?\d+)?)\s*([^:]*?)\s*:\s*([+-]?[\d.]+(?:[eE][+-]?\d+)?)\s*([^:]*?)\s*:\s*(\d+)\s*"
+    r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*([^:]*?)\s*:"
+    r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*([^:]*?)\s*:\s*(\d+)\s*"
 )
 _BARE = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?|true|false|[\[{].*", re.DOTALL)
 """Values that stand in a brief without quotes."""

@@ -1,14 +1,14 @@
 """One row of a sweep: a brief in, facts or a refusal out, and the columns a table shows of them.
 
 A row is what `planar size` says of the same brief, so that a sweep can be checked row by row. What is refused stays a
-row, with its reason. Rows depend on brief, library and program alone: `row_key` is a hash of these three.
+row, with its reason. Rows depend on brief, library and program alone: `row_keys` are hashes of these three.
 """
 
 from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from functools import cache
 from pathlib import Path
 from typing import Any
@@ -18,7 +18,7 @@ from planar.brief import check_brief, write_brief
 from planar.design.design_file import design_facts
 from planar.design.sized import sized_design
 from planar.errors import PlanarError
-from planar.library import Library
+from planar.library import KINDS, Library
 
 Facts = Mapping[str, Any]
 Task = tuple[Mapping[str, Any], str, Path | None]
@@ -50,32 +50,48 @@ def lost_row(times: int) -> dict[str, Any]:
     return {"status": LOST, "reason": f"the process that solved it died {times} times: memory?"}
 
 
-def row_key(data: Mapping[str, Any], where: str, library: Library) -> str:
-    """Hash of everything a row depends on: the brief with its defaults, the library's files, the program.
+def row_keys(briefs: Iterable[Mapping[str, Any]], where: str, library: Library) -> list[str]:
+    """Hash of everything each row depends on: its brief with its defaults, the library's files, the program.
 
-    Of a brief that is no valid one the tables themselves stand for it.
+    `briefs` are tables of briefs from the file `where`. Of one that is not valid the tables themselves stand for it.
     """
+    ground = row_ground(library)
+    told = (f"{_brief_text(data, where, library)}\0{ground}" for data in briefs)
+    return [hashlib.sha256(text.encode()).hexdigest() for text in told]
+
+
+def row_ground(library: Library) -> str:
+    """Hash of what all rows depend on beside their briefs: the library's files and the program."""
+    return f"{_library_digest(library)}\0{_program_digest()}"
+
+
+def _brief_text(data: Mapping[str, Any], where: str, library: Library) -> str:
     try:
-        brief = write_brief(check_brief(data, where, library))
+        return write_brief(check_brief(data, where, library))
     except PlanarError:
-        brief = json.dumps(data, sort_keys=True, default=str) + where
-    text = "\0".join((brief, _files_digest(library.folders, "*.toml"), _program_digest()))
-    return hashlib.sha256(text.encode()).hexdigest()
+        return json.dumps(data, sort_keys=True, default=str) + where
 
 
-def _files_digest(folders: tuple[Path, ...], pattern: str) -> str:
+def _library_digest(library: Library) -> str:
+    """Of the files it reads; what else lies in a user's folder has no part in a row."""
+    found = [(folder, path) for folder in library.folders for kind in KINDS for path in (folder / kind).glob("*.toml")]
+    return _files_digest(found)
+
+
+def _files_digest(files: Iterable[tuple[Path, Path]]) -> str:
+    """Of names and contents of `files`, pairs of a folder and a path in it."""
     found = hashlib.sha256()
-    for folder in folders:
-        for path in sorted(folder.rglob(pattern)):
-            found.update(f"{path.relative_to(folder).as_posix()}\0".encode())
-            found.update(path.read_bytes())
+    for folder, path in sorted(files):
+        found.update(f"{path.relative_to(folder).as_posix()}\0".encode())
+        found.update(path.read_bytes())
     return found.hexdigest()
 
 
 @cache
 def _program_digest() -> str:
     """Of the source of this package: a row of another program is another row."""
-    return _files_digest((Path(planar.__file__).parent,), "*.py")
+    folder = Path(planar.__file__).parent
+    return _files_digest((folder, path) for path in folder.rglob("*.py"))
 
 
 def row_columns(facts: Facts) -> dict[str, Any]:

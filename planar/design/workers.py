@@ -10,10 +10,12 @@ import multiprocessing
 import os
 import signal
 import sys
+import threading
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import BrokenExecutor, ProcessPoolExecutor
 from contextlib import contextmanager, suppress
 from dataclasses import dataclass
+from multiprocessing.connection import wait
 from typing import TypeVar
 
 from threadpoolctl import threadpool_limits
@@ -81,9 +83,18 @@ def process_pool(processes: int) -> ProcessPoolExecutor | None:
 
 
 def _begin() -> None:
-    """In every process: one thread, and an interrupt is the parent's to handle."""
+    """In every process: one thread; an interrupt, which the parent gets too, ends it, and so does the parent's end."""
     threadpool_limits(1)
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
+    parent = multiprocessing.parent_process()
+    if parent is not None:
+        threading.Thread(target=_end_with, args=(parent.sentinel,), daemon=True).start()
+
+
+def _end_with(parent: int) -> None:
+    """End this process when the one with the sentinel `parent` has ended, however that was: nobody else would."""
+    wait([parent])
+    os._exit(1)
 
 
 def cores() -> int:

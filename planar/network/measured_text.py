@@ -195,7 +195,7 @@ def _numbers(text: str, line: Line, reading: Reading, *, last: bool) -> tuple[fl
     """The numbers of a row; none, and a fault, where it holds anything else."""
     words = [word for word in re.split(r"[\s;,]+", text) if word]
     if all(_NUMBER.fullmatch(word) for word in words) and len(words) in {3, 5, 9}:
-        return tuple(float(word.upper().replace("D", "E")) for word in words)
+        return tuple(map(_number, words))
     if last and len(words) < 3:
         reading.assume(f"line {line.number}, the last one, is cut short and left out")
         return ()
@@ -222,7 +222,7 @@ def _spreadsheet(lines: list[Line], reading: Reading) -> Table:
             text = _DECIMAL_COMMA.sub(".", text)
         cells = [cell.strip().strip('"') for cell in _cells(text, separator)]
         if len(cells) == len(names) and all(_NUMBER.fullmatch(cell) for cell in cells if cell):
-            rows.append((line, tuple(float(cell) if cell else float("nan") for cell in cells)))
+            rows.append((line, tuple(_number(cell) if cell else float("nan") for cell in cells)))
         elif line is kept[-1] and len(cells) < len(names):
             reading.assume(f"line {line.number}, the last one, is cut short and left out")
         else:
@@ -230,8 +230,13 @@ def _spreadsheet(lines: list[Line], reading: Reading) -> Table:
     return Table(tuple(rows), 1.0, "RI", 50.0, names)
 
 
+def _number(word: str) -> float:
+    """The number a word that fits `_NUMBER` stands for; some programs write its exponent with a D."""
+    return float(word.upper().replace("D", "E"))
+
+
 def _without_exponents(text: str) -> str:
-    return re.sub(r"\d[eE][+-]?\d", "0", text)
+    return re.sub(r"\d[eEdD][+-]?\d", "0", text)
 
 
 def _cells(text: str, separator: str | None) -> list[str]:

@@ -58,9 +58,11 @@ def from_standards(measured: Complex, short: Complex, opened: Complex, load: Com
     """Reflection (n,) behind the plane at which `short`, `opened` and, if there is one, `load` were measured (n,).
 
     The standards are taken as ideal. Without a load what lies in front is taken as symmetric: its two reflections are
-    one. Raises `RangeError` where short and open are so alike that nothing follows from them.
+    one. Raises `RangeError` where short and open are so alike that nothing follows from them, and, without a load,
+    where one looks as the other should.
     """
     if load is None:
+        _check_turned(short, opened)
         directivity = (opened + short) / (2.0 + opened - short)
         match, through = directivity, (opened - directivity) * (1.0 - directivity)
     else:
@@ -76,10 +78,20 @@ def from_standards(measured: Complex, short: Complex, opened: Complex, load: Com
     return np.asarray(inner / (through + match * inner), dtype=np.complex128)
 
 
+def _check_turned(short: Complex, opened: Complex) -> None:
+    """Raise `RangeError` where short and open, each of the other's sign, leave nothing to divide by."""
+    turned = np.abs(2.0 + opened - short) < ALIKE
+    if turned.any():
+        raise RangeError(f"short and open are taken for each other at {int(turned.sum())} frequencies: swap them")
+
+
 def check_passive(frequency: Array, reflection: Complex, most: float) -> None:
-    """Raise `RangeError` where a reflection taken to another plane is larger than `most`: too much was taken off."""
-    worst = int(np.argmax(np.abs(reflection)))
-    if abs(reflection[worst]) > most:
+    """Raise `RangeError` where a reflection taken to another plane is larger than `most`: too much was taken off.
+
+    `frequency` (n,) Hz, `reflection` (n,); one that is no number counts as larger than any.
+    """
+    worst = int(np.argmax(np.abs(reflection)))  # the first that is no number, where there is one
+    if not abs(reflection[worst]) <= most:
         raise RangeError(
             f"behind the reference plane the reflection is {abs(reflection[worst]):.3f} at "
             f"{show(float(frequency[worst]), 'frequency', 5)}, above {most:g}: the stated cable or standards do not fit"

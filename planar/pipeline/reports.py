@@ -12,13 +12,14 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from planar import __version__
 from planar.design.design import Design
 from planar.design.design_file import read_design
 from planar.design.equivalent import circuit_of
 from planar.design.portrait import Portrait
 from planar.design.portrait_file import read_portrait
 from planar.design.spread_facts import read_spread
-from planar.errors import BriefError, Fault, PlanarError
+from planar.errors import BriefError, Fault, HandoffError, PlanarError
 from planar.handoff import file_hashes, is_pack, packed, renewed
 from planar.library import Library
 from planar.network.touchstone import read_touchstone
@@ -32,8 +33,8 @@ from planar.report.dimension_marks import board_marks
 from planar.report.page import report_page, write_report
 from planar.report.page_facts import page_facts
 from planar.report.plots import portrait_plots, response_plots
-from planar.report.plots_polar import peak_gain
 from planar.report.refusal_page import refusal_page
+from planar.report.safety import known_gain
 from planar.report.spread_pictures import spread_envelope, spread_pictures
 from planar.report.stackup_picture import stackup_picture
 
@@ -70,6 +71,7 @@ def compare(paths: Sequence[Path], library: Library, target: Path, progress: Pro
     """Write a page to `target` that holds the designs at `paths` against each other. Raises `PlanarError`."""
     if len(paths) < 2:
         raise BriefError([Fault("command line", "designs", f"{len(paths)}", "two or more packs to compare")])
+    _check_page(target)
     told = []
     for path in paths:
         progress(f"reading {path}")
@@ -77,6 +79,16 @@ def compare(paths: Sequence[Path], library: Library, target: Path, progress: Pro
     shown = [{name: each for name, each in one.pictures.items() if name in COMPARED} for one in told]
     write_report(compare_page([one.facts for one in told], shown), target)
     return target
+
+
+def _check_page(target: Path) -> None:
+    """Raise `HandoffError` where the file at `target` is none of ours: a page replaces an earlier one, nothing else."""
+    try:
+        ours = not target.exists() or target.read_bytes().startswith(b"<!DOCTYPE html>")
+    except OSError as error:
+        raise HandoffError(f"cannot write {target}: {error.strerror}") from error
+    if not ours:
+        raise HandoffError(f"{target} exists already and is no page: choose another name or remove it")
 
 
 def write_refusal(error: PlanarError, brief_text: str, folder: Path) -> Path:
@@ -100,6 +112,10 @@ def _told(source: Path, library: Library) -> _Told:
     """What the design in the file `source` and the files beside it tell."""
     design = read_design(source, library)
     facts = json.loads(source.read_bytes())
+    made_by = facts.get("planar_version")
+    if made_by != __version__:  # another version may mean something else by the same key
+        right = f"a pack made by planar {__version__}: run planar make with its brief.toml again"
+        raise BriefError([Fault(str(source), "planar_version", f'"{made_by}"', right)])
     field, response = source.with_name(FIELD), source.with_name(RESPONSE)
     spread = _spread(source.with_name(SPREAD), facts["hash"])
     pictures, peak = _board_pictures(design), None
@@ -110,7 +126,7 @@ def _told(source: Path, library: Library) -> _Told:
     if field.is_file():
         portrait = read_portrait(field)
         pictures |= _field_pictures(facts, portrait)
-        peak = peak_gain(portrait)
+        peak = known_gain(portrait, design.choices.brief.target.band)
     bars = _sensitivity_bars(facts)
     if bars:
         pictures["sensitivities"] = ranked_bars(bars, f"{design.name}: shift by the tolerance of each")

@@ -22,6 +22,7 @@ from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_gro
 from planar.design.workers import cores
 from planar.handoff import check_destination, packed
 from planar.library import Library
+from planar.pipeline.board_files import design_file
 from planar.report.page import write_report
 from planar.report.sweep_facts import asked_levels
 from planar.report.sweep_page import sweep_page
@@ -76,10 +77,11 @@ def sweep(
     library = Library.open(library_folder)
     axes = read_axes(question.vary)
     check_plots(question.plots)
-    name, base = _base(path, library, question, progress)
+    source = design_file(path)
+    name, base = _base(source, library, question, progress)
     folder = outputs / f"{name}-sweep"
     check_destination(folder)
-    rows = sweep_rows(base, axes, str(path), library)
+    rows = sweep_rows(base, axes, str(source), library)
     place = question.store or outputs / STORE
     try:
         with row_store(place) as store:

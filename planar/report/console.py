@@ -101,7 +101,7 @@ def print_design(design: Design, folder: Path | None = None) -> None:
 
 
 CAUTION_TRANSMIT = (
-    "Transmitting: keep people at a distance until the exposure figures are worked out; local rules and licensed "
+    "Transmitting: keep people at the distance that the report of planar make tells; local rules and licensed "
     "practice decide what may be radiated. Etching and cutting boards: gloves, eye protection, no glass dust in the "
     "air."
 )

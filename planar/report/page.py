@@ -62,7 +62,7 @@ def report_page(
 
     `pictures` name -> SVG text, see pictures.toml; one that is missing is left out. `files` path in the pack ->
     SHA-256. `spread` is the content of a spread.json, None where none was computed; `peak_gain_dbi` the largest gain
-    of the pattern cuts in dBi, where they are known. Raises `HandoffError` for a picture that cannot stand on the page.
+    of the field data in dBi, where there is any. Raises `HandoffError` for a picture that cannot stand on the page.
     """
     told = page_facts(facts, spread, peak_gain_dbi)
     sections = _pictured(placed(pictures))

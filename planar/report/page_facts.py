@@ -14,7 +14,7 @@ def page_facts(
 ) -> dict[str, Any]:
     """`facts` (the content of a design.json) with `derived`, `safety` and `spread` added: everything the page shows.
 
-    `spread` is the content of a spread.json, `peak_gain_dbi` the largest gain of the pattern cuts, dBi.
+    `spread` is the content of a spread.json, `peak_gain_dbi` the largest gain of the field data, dBi.
     """
     safety = safety_facts(facts, peak_gain_dbi)
     return dict(facts) | {"derived": _derived(facts), "safety": safety, "spread": spread}
@@ -44,7 +44,7 @@ def _margins(facts: Mapping[str, Any], centre: float) -> dict[str, Any]:
         "axial_ratio_fraction": None if axial is None else (axial[1] - axial[0]) / centre,
         "least_margin_hz": None if margin is None else min(margin),
         "beyond_trusted": matched is not None and (matched[0] < low or matched[1] > high),
-        "guided_share": 1.0 - prediction["power_balance"],
+        "guided_share": max(0.0, 1.0 - prediction["power_balance"]),
     }
 
 

@@ -103,7 +103,7 @@ def usual(current: CurrentMap) -> float:
 
 
 def classes(magnitude: Array, reference: float) -> NDArray[np.int64]:
-    """Class of each `magnitude` (m,) over `reference`: 0 for all above -3 dB, the last for all below."""
+    """Class of each `magnitude` (m,) over `reference`: 0 for all above -`STEP` dB, the last for all below."""
     decibels = -20.0 * np.log10(np.maximum(magnitude / reference, 1e-9))
     return np.clip(np.floor(decibels / STEP), 0, CLASSES - 1).astype(np.int64)
 

@@ -45,7 +45,6 @@ RATIO_SHOWN = 12.0
 CURVE, SECOND, ASKED = Stroke("curve-1", 2.6), Stroke("curve-2", 2.4, "dashed"), Stroke("asked", 2.0, "dashed")
 UNTRUSTED = Stroke("curve-1", 1.3, "dotted")
 MIDDLE = Stroke("muted", 1.3, "dashed")
-MEASURED = (Stroke("curve-2", 2.2, "dashed"), Stroke("curve-3", 2.2), Stroke("curve-2", 2.2, "dotted"))
 
 
 @dataclass(frozen=True)
@@ -79,20 +78,13 @@ class Spread:
 
 
 def reflection_plot(
-    response: Response,
-    prediction: Mapping[str, Any],
-    *,
-    asked: Asked,
-    spread: Spread | None = None,
-    measured: Sequence[tuple[str, Response]] = (),
+    response: Response, prediction: Mapping[str, Any], *, asked: Asked, spread: Spread | None = None
 ) -> str:
-    """SVG of the predicted reflection over frequency, with the `spread` over tolerances and `measured` curves by name.
-
-    `prediction` are its facts as in `design.json`.
-    """
+    """SVG of the predicted reflection over frequency, with the `spread` over tolerances; `prediction` are its facts as
+    in `design.json`."""
     low, high = prediction["trusted_hz"]
     matched = prediction["matched_band_hz"]
-    head, top = legend(_entries(prediction, asked, spread, measured), 0.0)
+    head, top = legend(_entries(prediction, asked, spread), 0.0)
     x0, x1 = max(response.frequency[0], low - BESIDE * (high - low)), high + BESIDE * (high - low)
     panel = _panel(top + 6.0, _mhz_axis(x0, min(x1, response.frequency[-1])), _depth(response, asked))
     body = [panel.shaded(*(1e-6 * end for end in asked.band))]
@@ -102,31 +94,25 @@ def reflection_plot(
     if spread is not None and spread.middle_db is not None:
         body.append(panel.curve(1e-6 * spread.frequency, spread.middle_db, MIDDLE))
     body += _reflection_curves(panel, response, (low, high))
-    body += [
-        panel.curve(1e-6 * each.frequency, each.reflection_db, stroke)
-        for stroke, (_, each) in zip(MEASURED, measured, strict=False)
-    ]
     if matched is not None:
         y = panel.box.y1 - 7.0
         x0, x1 = (float(np.clip(panel.across(1e-6 * end), panel.box.x0, panel.box.x1)) for end in matched)
         body.append(_bracket(x0, x1, y))
-    worst = _db(prediction["worst_reflection_db"])
-    words = (
-        "Reflection over frequency",
-        f"Predicted reflection in dB from {_mhz(1e6 * panel.x.low)} to {_mhz(1e6 * panel.x.high)}. In the band "
-        f"{_span(asked.band)} it is {worst} at worst, {_db(asked.match_db)} is asked. "
-        + (
-            "It is below that nowhere near the band."
-            if matched is None
-            else f"It is below that from {_span(matched, 4)}."
-        ),
-    )
+    words = ("Reflection over frequency", _reflection_said(prediction, asked, panel.x))
     return _document(panel.box.y1 + BELOW, words, [*head, *body])
 
 
-def _entries(
-    prediction: Mapping[str, Any], asked: Asked, spread: Spread | None, measured: Sequence[tuple[str, Response]]
-) -> list[tuple[str, str]]:
+def _reflection_said(prediction: Mapping[str, Any], asked: Asked, shown: Axis) -> str:
+    """The plot of reflection over the frequencies `shown` in words."""
+    matched, worst = prediction["matched_band_hz"], _db(prediction["worst_reflection_db"])
+    where = "nowhere near the band" if matched is None else f"from {_span(matched, 4)}"
+    return (
+        f"Predicted reflection in dB from {_mhz(1e6 * shown.low)} to {_mhz(1e6 * shown.high)}. In the band "
+        f"{_span(asked.band)} it is {worst} at worst, {_db(asked.match_db)} is asked. It is below that {where}."
+    )
+
+
+def _entries(prediction: Mapping[str, Any], asked: Asked, spread: Spread | None) -> list[tuple[str, str]]:
     """The legend of the plot of reflection."""
     entries = [
         (swatch(CURVE), "predicted"),
@@ -139,7 +125,7 @@ def _entries(
     if spread is not None:
         entries.append((patch("spread-fill"), spread.words))
         entries += [(swatch(MIDDLE), "half of them below")] if spread.middle_db is not None else []
-    return entries + [(swatch(stroke), name) for stroke, (name, _) in zip(MEASURED, measured, strict=False)]
+    return entries
 
 
 def gain_plot(portrait: Portrait, *, asked: Asked) -> str:

@@ -12,8 +12,12 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
+
+from planar.design.portrait import Portrait
 from planar.errors import RangeError
 from planar.report.page_files import page_table
+from planar.report.plots_polar import peak_gain
 from planar.units import SPEED_OF_LIGHT
 
 DIPOLE_DBI = 2.15
@@ -97,8 +101,8 @@ def safety_facts(facts: Mapping[str, Any], peak_gain_dbi: float | None = None) -
     """Exposure figures for the content of a design.json, units in the names; None for a receiving antenna, and where
     no gain is predicted. Levels are those of the low end of the band, the strictest in it.
 
-    The gain is the largest known, `direction` says where: at right angles to the board, or in the pattern cuts, of
-    which `peak_gain_dbi` is the largest gain in dBi.
+    The gain is the largest known, `direction` says where: at right angles to the board at the centre of the band, or
+    among what `peak_gain_dbi`, the `known_gain` of the field data in dBi, is the largest of.
     """
     power, prediction = facts["target"]["power_w"], facts["prediction"]
     if not facts["target"]["transmit"] or prediction is None:
@@ -119,6 +123,14 @@ def safety_facts(facts: Mapping[str, Any], peak_gain_dbi: float | None = None) -
     }
 
 
+def known_gain(portrait: Portrait, band: tuple[float, float]) -> float:
+    """The largest gain in `portrait`, dBi: in its pattern cuts, and toward the top inside the `band` (low, high) Hz."""
+    low, high = band
+    inside = portrait.gain_dbi[(portrait.frequency > low) & (portrait.frequency < high)]
+    edges = np.interp(band, portrait.frequency, portrait.gain_dbi)
+    return float(max([peak_gain(portrait), *inside.tolist(), *edges.tolist()]))
+
+
 def _largest_gain(prediction: Mapping[str, Any], peak_gain_dbi: float | None) -> tuple[float, str]:
     """The largest gain known in dBi, and in which direction."""
     normal = "at right angles to the board, toward the"
@@ -127,7 +139,7 @@ def _largest_gain(prediction: Mapping[str, Any], peak_gain_dbi: float | None) ->
     if below is not None and below > gain:
         gain, direction = below, f"{normal} bottom"
     if peak_gain_dbi is not None and peak_gain_dbi > gain + ROUNDED:
-        return peak_gain_dbi, "in the strongest direction of the two pattern cuts"
+        return peak_gain_dbi, "of the two pattern cuts, and toward the top of all the band"
     return gain, direction
 
 

@@ -18,6 +18,8 @@ RESULTS: Mapping[str, tuple[str, str]] = {
     "shift_percent": ("shift of the response", "shift"),
 }
 """Key of a result of one board -> its name and how it is written."""
+OTHER_SENSE = "other sense"
+"""Said in place of an axial ratio that turns the other way: it has no number."""
 
 
 def yield_table(facts: Facts) -> Table | None:
@@ -40,9 +42,11 @@ def _yield_note(facts: Facts) -> Markup:
         "solved. The interval is that of so many draws (Wilson 1927)."
     ).format(*(bare_figure(facts, f"spread.{key}", "asked") for key in _DRAWN))
     if known(facts, "spread.model_error"):
-        note += Markup(" The model was off by at most {} of reflection in the band on {} boards drawn afresh.").format(
-            bare_figure(facts, "spread.model_error.reflection_in_band", "bare4"),
+        axial = "spread.model_error.axial_ratio_db"
+        note += Markup(" On {} boards drawn afresh the model was off by up to {} of reflection in the band{}.").format(
             bare_figure(facts, "spread.model_error.boards_checked", "count"),
+            bare_figure(facts, "spread.model_error.reflection_in_band", "bare4"),
+            Markup(" and {} of worst axial ratio").format(figure(facts, axial, "db2")) if known(facts, axial) else "",
         )
     if facts["spread"]["half_uncovered"]:
         note += Markup(" Half of the boards are without their cover.")
@@ -66,7 +70,8 @@ def result_table(facts: Facts) -> Table | None:
     heads = ("result", "as designed #", *(f"{each:g} % below #" for each in percent))
     note = (
         "5 % below: one board in twenty has less. The shift is that of the whole response along the frequency axis; a "
-        "wide match may stay while it moves."
+        "wide match may stay while it moves. The best match lies on a parabola between the frequencies computed, that "
+        "under Predicted on one of them: they may differ by a part of a step."
     )
     return table("Over the boards", heads, rows, note)
 
@@ -118,8 +123,10 @@ def unvaried_table(facts: Facts) -> Table | None:
 
 
 def _told(facts: Facts, key: str, form: str) -> Cell:
-    """A result, empty where there is none: an axial ratio of the other sense has no number."""
-    return figure(facts, key, form) if known(facts, key) else ""
+    """A result, empty where a board has none; an axial ratio of the other sense has no number."""
+    if known(facts, key):
+        return figure(facts, key, form)
+    return OTHER_SENSE if "axial" in key and known(facts, "spread.axial_ratio_limit_db") else ""
 
 
 def _between(facts: Facts, key: str, form: str) -> Markup:

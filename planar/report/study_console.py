@@ -8,6 +8,7 @@ from typing import Any
 
 from planar.design.sweep_axes import Axis
 from planar.report.console import terminal, text_table
+from planar.report.spread_tables import OTHER_SENSE
 
 SHOWN = {
     "row": "row",
@@ -52,13 +53,19 @@ def print_spread(facts: Mapping[str, Any], file: Path) -> None:
     console.print(text_table((f"{facts['name']}, {facts['samples']} boards", ""), _yield_rows(facts)))
     console.print(text_table(("percentile", *(f"{p:g} %" for p in facts["percentiles"]["at_percent"])), _ranges(facts)))
     console.print(text_table(("share of variance", "match %", "frequency %", "axial ratio %"), _shares(facts)))
-    corners = [(corner["name"], _result(corner["solved"]), _result(corner["modelled"])) for corner in facts["corners"]]
+    circular = facts["axial_ratio_limit_db"] is not None
+    corners = [
+        (corner["name"], *(_result(corner[how], circular=circular) for how in ("solved", "modelled")))
+        for corner in facts["corners"]
+    ]
     console.print(text_table(("worst corner", "solved", "by the model"), corners))
     error = facts["model_error"]
     if error is not None:
+        ratio = error["axial_ratio_db"]
         console.print(
             f"model against {error['boards_checked']} boards drawn afresh and solved: reflection within "
-            f"{error['reflection']:.3f}, in the band {error['reflection_in_band']:.3f}",
+            f"{error['reflection']:.3f}, in the band {error['reflection_in_band']:.3f}"
+            + ("" if ratio is None else f", worst axial ratio within {ratio:.2f} dB"),
             highlight=False,
         )
     not_varied = ", ".join(each["what"] for each in facts["not_varied"])
@@ -73,7 +80,7 @@ def _yield_rows(facts: Mapping[str, Any]) -> list[tuple[str, str]]:
     low, high = told["total_95_percent"]
     bad, good = told["total_if_model_errs"]
     rows = [
-        ("yield", f"{_percent(told['total'])}, 95 % sure of {_percent(low)} to {_percent(high)}"),
+        ("yield", f"{_percent(told['total'])}; {_percent(low)} to {_percent(high)} for so many draws (95 %)"),
         ("were the model off by its error", f"{_percent(bad)} to {_percent(good)}"),
         ("match alone", _percent(told["match"])),
     ]
@@ -87,7 +94,12 @@ def _ranges(facts: Mapping[str, Any]) -> list[tuple[str, ...]]:
         "worst_axial_ratio_db": "worst axial ratio, dB",
     }
     found = [(words, facts["percentiles"][name]) for name, words in names.items()]
-    return [(words, *(f"{value:.2f}" for value in values)) for words, values in found if values is not None]
+    return [(words, *map(_number, values)) for words, values in found if values is not None]
+
+
+def _number(value: float | None) -> str:
+    """A percentile; an axial ratio of the other sense has no number."""
+    return OTHER_SENSE if value is None else f"{value:.2f}"
 
 
 def _shares(facts: Mapping[str, Any]) -> list[tuple[str, str, str, str]]:
@@ -97,11 +109,11 @@ def _shares(facts: Mapping[str, Any]) -> list[tuple[str, str, str, str]]:
     return [(name, *("" if share is None else f"{100.0 * share:.1f}" for share in shares)) for name, *shares in rows]
 
 
-def _result(result: Mapping[str, Any] | None) -> str:
+def _result(result: Mapping[str, Any] | None, *, circular: bool) -> str:
     if result is None:
         return "cannot be made"
     axial = result["worst_axial_ratio_db"]
-    ratio = "" if axial is None else f", axial ratio {axial:.2f} dB"
+    ratio = "" if not circular else f", {OTHER_SENSE}" if axial is None else f", axial ratio {axial:.2f} dB"
     return f"{result['worst_reflection_db']:.1f} dB, shift {result['shift_percent']:+.2f} %{ratio}"
 
 

@@ -4,6 +4,7 @@ The browser runs without a window and without a driver: a copy of each page is g
 looks at its pictures and sends what it saw to the page it is framed in, whose text the browser then prints.
 """
 
+import hashlib
 import json
 import os
 import re
@@ -21,7 +22,7 @@ import pytest
 
 from planar.design.portrait_file import read_portrait
 from planar.report.page_facts import page_facts
-from planar.report.plots_polar import peak_gain
+from planar.report.safety import known_gain
 
 EXAMPLES = Path(__file__).resolve().parents[2] / "examples"
 LARGEST = 2_000_000
@@ -112,7 +113,7 @@ def test_page_is_valid_small_and_says_what_the_design_says(pack: Path) -> None:
     document = html5lib.HTMLParser(strict=True, namespaceHTMLElements=False).parse(page)
     facts = json.loads((pack / "design.json").read_bytes())
     portrait = read_portrait(pack / "field.json")
-    assert list(differing(document, page_facts(facts, None, peak_gain(portrait)))) == []
+    assert list(differing(document, page_facts(facts, None, known_gain(portrait, facts["band_hz"])))) == []
     keys = {element.attrib["data-key"] for element in document.iter() if "data-key" in element.attrib}
     raw = {key for key in keys if not key.startswith(("derived.", "safety."))}
     assert all(isinstance(at(facts, key), int | float) for key in raw)
@@ -132,6 +133,26 @@ def test_page_made_anew_is_the_same(pack: Path, tmp_path: Path) -> None:
     (copy / "report.html").unlink()
     planar(tmp_path, "report", copy)
     assert page_of(copy) == page_of(pack)
+    facts = json.loads((copy / "design.json").read_bytes()) | {"planar_version": "0.0.1"}
+    rest = {key: value for key, value in facts.items() if key != "hash"}
+    facts["hash"] = hashlib.sha256(json.dumps(rest, sort_keys=True).encode()).hexdigest()
+    (copy / "design.json").write_text(json.dumps(facts), encoding="utf-8")
+    planar(tmp_path, "report", copy, expect=1)  # another version may draw other copper from the same dimensions
+
+
+@pytest.mark.parametrize("pack", [EXAMPLES / "orchard-gateway.toml"], indirect=True, ids=["orchard-gateway"])
+def test_two_packs_side_by_side_replace_a_page_and_nothing_else(pack: Path, tmp_path: Path) -> None:
+    """The same pack twice: valid by the HTML standard, no id twice, both best wherever one is."""
+    planar(tmp_path, "compare", pack, pack)
+    page = (tmp_path / "comparison.html").read_text(encoding="utf-8")
+    document = html5lib.HTMLParser(strict=True, namespaceHTMLElements=False).parse(page)
+    ids = [element.attrib["id"] for element in document.iter() if "id" in element.attrib]
+    assert len(ids) == len(set(ids))
+    assert page.count('<span class="best">') % 2 == 0
+    notes = tmp_path / "notes.txt"
+    notes.write_text("mine", encoding="utf-8")
+    planar(tmp_path, "compare", pack, pack, "--page", notes, expect=1)
+    assert notes.read_text(encoding="utf-8") == "mine"
 
 
 def planar(folder: Path, *arguments: object, expect: int = 0) -> None:

@@ -13,6 +13,7 @@ import pytest
 from click.testing import CliRunner, Result
 
 from planar.cli import main
+from planar.design.row_store import row_store
 
 BRIEF = """
 name = "bench loop"
@@ -84,6 +85,22 @@ def iter_of_none(tasks: list[object]):  # type: ignore[no-untyped-def]
     """Rows of no tasks; a task would be a row that was forgotten."""
     assert tasks == []
     yield from ()
+
+
+def test_an_interrupted_sweep_says_what_it_kept(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def interrupted(work: object, tasks: object, processes: int):  # type: ignore[no-untyped-def]
+        yield 0, {"status": "refused", "reason": "made up", "refused": {}}
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr("planar.pipeline.sweeping.local_rows", interrupted)
+    brief = tmp_path / "brief.toml"
+    brief.write_text(BRIEF, encoding="utf-8")
+    result = run("sweep", brief, *VARY, "--outputs", tmp_path / "out")
+    assert result.exit_code == 130
+    assert "rows.sqlite" in result.stderr
+    assert "nothing was written" not in result.stderr
+    with row_store(tmp_path / "out" / "rows.sqlite") as store:
+        assert store.connection.execute("SELECT count(*) FROM rows").fetchone() == (1,)
 
 
 def test_a_cluster_gives_the_same_bytes(swept: tuple[Path, Path, Result], tmp_path: Path) -> None:

@@ -14,6 +14,7 @@ from planar.copper.layout import Level
 from planar.design.choices import choose
 from planar.errors import Severity, SynthesisError
 from planar.library import Library
+from planar.stackup import LayerKind
 
 MakeBrief = Callable[..., Brief]
 ONE_LEVEL = {"fab": "milled-single-sided"}
@@ -81,10 +82,13 @@ def test_parts_that_do_not_go_together(
     assert all(finding.severity is Severity.REFUSE and finding.advice for finding in findings)
 
 
-def test_mask_on_a_side_without_copper_is_none(brief: MakeBrief, library: Library) -> None:
+def test_mask_on_a_side_without_copper_is_printed_as_it_is_solved(brief: MakeBrief, library: Library) -> None:
     plain = {"family": "plain"}
-    masked = [choose(brief(antenna=plain, board={"mask": side}), library).masked for side in ("bottom", "top", "both")]
-    assert masked == [(), (Level.TOP,), (Level.TOP,)]
+    for side in ("bottom", "top", "both", "none"):
+        choices = choose(brief(antenna=plain, board={"mask": side}), library)
+        printed = {f"mask-{level}" for level in choices.masked}
+        assert printed == {layer.name for layer in choices.stackup.layers if layer.kind is LayerKind.MASK}
+        assert (Level.BOTTOM in choices.masked) == (side in {"bottom", "both"})
 
 
 def test_an_unusual_thickness_is_said(brief: MakeBrief, library: Library) -> None:

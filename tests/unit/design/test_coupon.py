@@ -2,6 +2,7 @@
 
 import itertools
 import math
+import re
 from typing import Any
 
 import numpy as np
@@ -19,8 +20,10 @@ from planar.design.coupon import Coupon, design_coupon
 from planar.design.coupon_sheet import coupon_sheet
 from planar.design.line_size import design_lines, line_settings
 from planar.errors import RangeError, SynthesisError
+from planar.handoff.gerber_content import gerber_files
 from planar.library import Library
 from planar.lines.ring_resonator import gap_capacitance, largest_pull, planar_width, ring_wavenumber
+from planar.pipeline.board_files import gerber_facts
 
 LIBRARY = Library.open()
 BOARDS = [
@@ -118,6 +121,14 @@ def test_one_level_design_gets_a_two_level_coupon() -> None:
     assert not made.connector.balanced
 
 
+def test_coupon_of_a_one_level_design_has_its_own_masked_sides() -> None:
+    """Mask on both sides, as the fab offers: the bottom has lands, so a mask file that opens them."""
+    made = design_coupon(chosen(antenna={"family": "plain"}), (), library=LIBRARY)
+    facts = gerber_facts("small-coupon", "0" * 64, made.masked, via_ring=made.dimensions["via_ring"])
+    names = {file.name for file in gerber_files(made.layout, facts)}
+    assert {"copper-top.gbr", "copper-bottom.gbr", "mask-top.gbr", "mask-bottom.gbr"} <= names
+
+
 def test_one_level_fab_is_refused() -> None:
     choices = chosen(make={"fab": "milled-single-sided"}, target={"impedance": "100 ohm"})
     with pytest.raises(SynthesisError, match="a fab with two copper levels"):
@@ -131,6 +142,15 @@ def test_sheet_holds_the_expected_numbers(coupon: Coupon) -> None:
     assert "planar coupon outputs/small --measured ring.s2p" in sheet
     assert all(name in sheet for name in ("Troughton", "Wolff & Knoppik", "Marks", "Kirschning & Jansen"))
     assert sheet == coupon_sheet(coupon, design="outputs/small")
+
+
+def test_formula_of_the_sheet_gives_its_own_resonance(coupon: Coupon) -> None:
+    """r and K_1 as printed, c = 299.792458 mm GHz, into n c / (2 pi r f) K: the effective permittivity it lists."""
+    sheet = coupon_sheet(coupon, design="small")
+    drawn, bend = re.findall(r"r = (\S+) mm, K_1 = (\S+)", sheet)[0]
+    first = coupon.resonances[0]
+    wave = 299.792458 * float(bend) / (2.0 * math.pi * float(drawn) * first.frequency * 1e-9)
+    assert wave**2 == pytest.approx(first.eps_eff, rel=2e-4)  # four decimals of K
 
 
 @pytest.mark.parametrize("order", [1, 2, 4])

@@ -49,7 +49,16 @@ def test_an_axis_reads_lists_and_ranges(text: str, key: str, values: tuple[objec
     assert (axis.key, axis.values) == (key, values)
 
 
-@pytest.mark.parametrize("text", ["board.thickness", "=1 mm", "board.thickness=", "board.thickness=1 mm:2 mil:3"])
+@pytest.mark.parametrize(
+    "text",
+    [
+        "board.thickness",
+        "=1 mm",
+        "board.thickness=",
+        "board.thickness=1 mm:2 mil:3",
+        "board.thickness=1.2.3 mm:2 mm:3",
+    ],
+)
 def test_what_is_no_axis_is_named(text: str) -> None:
     with pytest.raises(BriefError, match="--vary"):
         read_axes([text])

@@ -39,6 +39,11 @@ def two_ports(value: str) -> str:
     return f"{f} {a} {b} 0.1 0.1 0.1 0.1 0.5 0.5"
 
 
+def with_exponents(listed: list[str], separator: str) -> list[str]:
+    """Every number as old programs write it: -1.234D-01."""
+    return [separator.join(f"{float(x):.12E}".replace("E", "D") for x in row.split(separator)) for row in listed]
+
+
 def swapped(listed: list[str], i: int, j: int) -> list[str]:
     listed[i], listed[j] = listed[j], listed[i]
     return listed
@@ -66,7 +71,7 @@ READ: dict[str, tuple[str, list[str] | bytes]] = {
     "utf-8 with a mark": ("a.s1p", "\n".join(["# MHZ S RI R 50", *rows(scale=1e6)]).encode("utf-8-sig")),
     "utf-16": ("a.s1p", "\n".join(["# MHZ S RI R 50", *rows(scale=1e6)]).encode("utf-16")),
     "comment in latin-1": ("a.s1p", "\n".join(["! Gehäuse", "# MHZ S RI R 50", *rows(scale=1e6)]).encode("latin-1")),
-    "exponents with d": ("a.s1p", ["# HZ S RI R 50", *[r.replace("e", "D") for r in rows(scale=1.0)]]),
+    "exponents with d": ("a.s1p", ["# HZ S RI R 50", *with_exponents(rows(scale=1.0), " ")]),
     "falling frequencies": ("a.s1p", ["# MHZ S RI R 50", *rows(scale=1e6)[::-1]]),
     "two points exchanged": ("a.s1p", ["# MHZ S RI R 50", *swapped(rows(scale=1e6), 4, 9)]),
     "a point twice": ("a.s1p", ["# MHZ S RI R 50", *rows(scale=1e6), rows(scale=1e6)[7]]),
@@ -80,6 +85,9 @@ READ: dict[str, tuple[str, list[str] | bytes]] = {
         [*V2[:4], "[Begin Information]", "any words 1 2", "[End Information]", V2[4], *rows(scale=1e6), "[End]"],
     ),
     "table, real and imaginary": ("a.csv", ["Frequency (MHz),S11 Re,S11 Im", *rows(scale=1e6, separator=",")]),
+    "table, exponents with a D": (
+        "a.csv", ["freq [Hz];re;im", *with_exponents(rows(scale=1.0, separator=";"), ";")]
+    ),
     "table, decibels": ("a.csv", ["freq [Hz];S11 (dB);S11 phase (deg)", *rows("DB", 1.0, ";")]),
     "table, magnitude": ("a.txt", ["freq_ghz\tmag\tangle", *rows("MA", 1e9, "\t")]),
     "table, decimal commas": (

@@ -52,6 +52,14 @@ def test_one_standard_measured_twice_is_refused() -> None:
         from_standards(ANTENNA, ANTENNA, ANTENNA)
 
 
+def test_standards_taken_for_each_other_are_refused() -> None:
+    ideal = np.ones(31, dtype=np.complex128)
+    with pytest.raises(RangeError, match="taken for each other at 31"):
+        from_standards(ANTENNA, ideal, -ideal)
+
+
 def test_more_taken_off_than_there_was_is_refused() -> None:
     with pytest.raises(RangeError, match="do not fit"):
         check_passive(F, Launch(loss_db=3.0).removed(F, ANTENNA, 50.0), 1.05)
+    with pytest.raises(RangeError, match="do not fit"):
+        check_passive(F, np.where(F > 0.9e9, np.nan, ANTENNA), 1.05)

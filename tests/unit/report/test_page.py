@@ -22,6 +22,7 @@ from planar.report.page_figures import FORMS
 from planar.report.page_pictures import inline_svg, laid_out, placed
 from planar.report.refusal_page import refusal_page
 from planar.report.spread_pictures import spread_envelope, spread_pictures
+from planar.report.study_console import print_spread
 from planar.report.tables import quantities
 
 Facts = dict[str, Any]
@@ -269,6 +270,16 @@ def test_every_figure_of_the_spread_is_that_of_its_file(invented: Make, spread: 
     words = words_of(page)
     assert all(each["why"] in words for each in spread["not_varied"])
     assert spread["laws"] in words
+
+
+def test_a_ratio_of_the_other_sense_is_said_in_words(
+    invented: Make, spread: Facts, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """It has no number: a corner solved, and the 99th percentile, each on the page and on the terminal."""
+    spread["percentiles"]["worst_axial_ratio_db"][-1] = None
+    page = report_page(invented("parcel-reader"), {}, FILES, spread)
+    print_spread(spread, Path("spread.json"))
+    assert (page.count(">other sense<"), capsys.readouterr().out.count("other sense")) == (2, 2)
 
 
 def test_a_linear_spread_has_no_axial_ratio(invented: Make, spread: Facts) -> None:

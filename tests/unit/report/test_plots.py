@@ -162,14 +162,12 @@ def test_curve_is_thick_where_the_mesh_is_fine_and_thin_outside() -> None:
     assert {float(first), float(last)} <= set(outside)
 
 
-def test_spread_and_measured_curves_are_named() -> None:
+def test_the_spread_is_named() -> None:
     nominal = response()
-    spread = Spread(FREQUENCY, nominal.reflection_db - 1.0, nominal.reflection_db + 2.0, "90 % of boards")
-    text = reflection_plot(
-        nominal, FACTS["prediction"], asked=Asked.of(FACTS), spread=spread, measured=[("board <1>", nominal)]
-    )
+    spread = Spread(FREQUENCY, nominal.reflection_db - 1.0, nominal.reflection_db + 2.0, "90 % of <boards>")
+    text = reflection_plot(nominal, FACTS["prediction"], asked=Asked.of(FACTS), spread=spread)
     words = [each.text for each in ElementTree.fromstring(text).iter(f"{SVG}text")]
-    assert {"90 % of boards", "board <1>", "predicted"} <= set(words)
+    assert {"90 % of <boards>", "predicted"} <= set(words)
     assert "var(--spread-fill" in text
 
 

@@ -8,8 +8,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from types import SimpleNamespace
 from typing import Any
 
+import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -111,7 +113,7 @@ def test_facts_take_the_stronger_side_and_never_less_than_the_floor(invented: Ca
 
 
 def test_facts_take_the_strongest_direction_known(invented: Callable[[str], Any]) -> None:
-    """3 dBi aside of the normal: more than toward either side; the same in both is no other direction."""
+    """3 dBi elsewhere: more than toward either side; the same in both is no other direction."""
     facts = invented("orchard-gateway")
     told, same = safety.safety_facts(facts, 3.0), safety.safety_facts(facts, 2.305)
     assert told is not None
@@ -121,6 +123,15 @@ def test_facts_take_the_strongest_direction_known(invented: Callable[[str], Any]
     assert told["eirp_w"] == pytest.approx(0.025 * 10.0**0.3)
     assert same["gain_dbi"] == 2.301
     assert safety.safety_facts(facts, 1.0) == safety.safety_facts(facts)
+
+
+def test_the_largest_gain_may_be_elsewhere_in_the_band_but_not_beyond_it() -> None:
+    cut: Any = SimpleNamespace(gain_dbi=np.array([1.0, np.nan, 2.0]))
+    portrait: Any = SimpleNamespace(
+        cuts=(cut,), frequency=np.array([0.8e9, 0.9e9, 1e9]), gain_dbi=np.array([1, 2.5, 4])
+    )
+    assert safety.known_gain(portrait, (0.81e9, 0.9e9)) == 2.5
+    assert safety.known_gain(portrait, (0.85e9, 0.86e9)) == 2.0  # 1.9 at its upper end
 
 
 def test_facts_of_a_strong_transmitter_are_the_far_field_sum(invented: Callable[[str], Any]) -> None:
