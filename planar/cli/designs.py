@@ -49,6 +49,8 @@ def make(
         console.print_json(design_facts(made.design) | {"folder": str(made.folder)})
     else:
         console.print_design(made.design, made.folder)
+        if made.gone:
+            click.echo(f"{', '.join(made.gone)} of the earlier pack went with it: make them again for this board")
     if opened:
         click.launch(str(made.folder / REPORT))
 

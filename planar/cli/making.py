@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from planar.cli.options import json_option, library_option, outputs_option, refusing
+from planar.cli.options import apart_option, json_option, library_option, refusing
 
 design_argument = click.argument("design", type=click.Path(path_type=Path))
 
@@ -17,7 +17,7 @@ design_argument = click.argument("design", type=click.Path(path_type=Path))
 @click.option("--fit", is_flag=True, help="As many boards as the fab's panel holds. So unless --count is given.")
 @click.option("--separate", type=click.Choice(["score", "tabs"]), help="Default: scored where copper and edges allow.")
 @click.option("--coupon", is_flag=True, help="With a strip to measure the laminate on, see planar coupon.")
-@outputs_option
+@apart_option
 @library_option
 @json_option
 @refusing
@@ -27,7 +27,7 @@ def panel(
     fit: bool,
     separate: str | None,
     coupon: bool,
-    outputs: Path,
+    outputs: Path | None,
     library_folder: Path | None,
     as_json: bool,
 ) -> None:
@@ -57,7 +57,7 @@ def panel(
     help="Touchstone of the ring or of both lines; may be repeated. Says the permittivity, writes nothing.",
 )
 @click.option("--thickness", help='Thickness of the dielectric as measured, such as "1.57 mm".')
-@outputs_option
+@apart_option
 @library_option
 @json_option
 @refusing
@@ -65,7 +65,7 @@ def coupon(
     design: Path,
     measured: tuple[Path, ...],
     thickness: str | None,
-    outputs: Path,
+    outputs: Path | None,
     library_folder: Path | None,
     as_json: bool,
 ) -> None:

@@ -28,6 +28,11 @@ outputs_option = click.option(
     show_default=True,
     help="Folder results are written to, in a folder named after the brief.",
 )
+apart_option = click.option(
+    "--outputs",
+    type=click.Path(path_type=Path),
+    help="Write into a folder of its own here. Default: join the pack, or else into outputs.",
+)
 json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON instead of a table.")
 
 
@@ -46,6 +51,11 @@ def refusing(command: Command) -> Command:
             click.echo("\n".join([f"refused: {error}", *getattr(error, "__notes__", ())]), err=True)
             if kwargs.get("as_json"):
                 click.echo(json.dumps({"refused": error.facts()}, indent=2))
+            sys.exit(1)
+        except OSError as error:
+            if isinstance(error, BrokenPipeError):
+                raise
+            click.echo(f"refused: cannot write the answer: {error.strerror}", err=True)
             sys.exit(1)
 
     return wrapped  # type: ignore[return-value]

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from planar.cli.options import json_option, library_option, outputs_option, refusing
+from planar.cli.options import apart_option, json_option, library_option, outputs_option, refusing
 
 
 @click.command()
@@ -64,7 +64,7 @@ def sweep(
 @click.option("--uncovered", is_flag=True, help="Half of the boards run without their cover.")
 @click.option("--recentre", is_flag=True, help="Move the dimensions to where most boards meet the brief.")
 @click.option("--write", type=click.Path(path_type=Path), help="Write the moved design as a brief; with --recentre.")
-@outputs_option
+@apart_option
 @library_option
 @json_option
 @refusing
@@ -75,7 +75,7 @@ def spread(
     uncovered: bool,
     recentre: bool,
     write: Path | None,
-    outputs: Path,
+    outputs: Path | None,
     library_folder: Path | None,
     as_json: bool,
 ) -> None:

@@ -12,6 +12,8 @@ COARSER = 1.5
 """Step of the mesh a solution is compared with over its own."""
 MOST_MOVED = 0.15
 """Change of the input impedance from that mesh, of its magnitude, above which nothing is shown."""
+CLOSE_CIRCUIT = 0.05
+"""Reflection up to which an equivalent circuit may be off without a word (our choice)."""
 LOW_EFFICIENCY = 0.5
 """Efficiency below which a finding says so."""
 
@@ -25,6 +27,14 @@ def moved(fine: complex, coarse: complex) -> float:
             f"{100 * MOST_MOVED:.0f} % is accepted: this copper needs a finer mesh than the default"
         )
     return change
+
+
+def circuit_findings(deviation: float) -> list[Finding]:
+    """What the user must know of an equivalent circuit whose reflection is off by `deviation` at most."""
+    if deviation <= CLOSE_CIRCUIT:
+        return []
+    got, advice = f"off by up to {deviation:.2f} of reflection", "for orientation only: use antenna.s1p instead"
+    return [Finding("equivalent circuit", "circuit.cir", got, f"{CLOSE_CIRCUIT:g}", advice)]
 
 
 def power_findings(points: Sequence[PointResult]) -> list[Finding]:

@@ -101,9 +101,9 @@ def read_design(path: Path, library: Library) -> Design:
         facts = json.loads(path.read_bytes())
     except OSError as error:
         reason = (error.strerror or "unreadable").lower()
-        raise _no_design(path, "file", reason, "the design.json of a pack, or a brief (TOML)") from error
+        raise _no_design(path, "file", reason, "the design.json that planar make writes into a pack") from error
     except (ValueError, RecursionError) as error:
-        raise _no_design(path, "file", "no JSON", "the design.json of a pack, or a brief (TOML)") from error
+        raise _no_design(path, "file", "no JSON", "the design.json that planar make writes into a pack") from error
     missing = [key for key in NEEDED if not isinstance(facts, dict) or key not in facts]
     if missing:
         raise _no_design(path, missing[0], "(not given)", "a design.json as planar make writes it")

@@ -107,7 +107,7 @@ def cluster_rows(
         from dask.distributed import Client, as_completed
         from distributed.scheduler import KilledWorker
     except ImportError as error:
-        raise HandoffError("--scheduler needs the extra `cluster`: pip install 'planar[cluster]'") from error
+        raise HandoffError("--scheduler needs the extra `cluster`: pip install '.[cluster]' in the checkout") from error
     try:
         client = Client(address, timeout=_CONNECT, set_as_default=False)
     except (OSError, ValueError, TimeoutError) as error:

@@ -14,7 +14,7 @@ import numpy as np
 
 from planar.brief import Brief
 from planar.copper.rules import fab_findings
-from planar.design.accuracy import power_findings
+from planar.design.accuracy import circuit_findings, power_findings
 from planar.design.candidates import Ranked, rank
 from planar.design.choices import Choices
 from planar.design.design import Design, connector_impedance, make_design
@@ -69,7 +69,7 @@ def _best_verified(brief: Brief, ranked: Ranked, progress: Progress) -> Design:
             break
         rest = tuple(each for each in ranked.candidates if each is not candidate)
         try:
-            return _verified(design, coarse, (candidate, *rest), progress)
+            return _verified(design, coarse, (replace(candidate, meets=True), *rest), progress)
         except (SynthesisError, RangeError) as error:
             misses.append((candidate.name, error if isinstance(error, SynthesisError) else SynthesisError(str(error))))
     told = tuple(
@@ -116,6 +116,7 @@ def _verified(first: Design, coarse: Sized, candidates: tuple[Candidate, ...], p
         findings=(
             *connector_impedance(choices),
             *power_findings([prediction.centre]),
+            *circuit_findings(prediction.circuit.deviation),
             *_trimming(cuts, asked=choices.brief.antenna.trim),
             *_limits(fine),
             *rules,
@@ -141,6 +142,7 @@ def _analysed(design: Design, progress: Progress) -> Design:
     said = (
         *unmet(choices, prediction, Severity.WARN),
         *power_findings([prediction.centre]),
+        *circuit_findings(prediction.circuit.deviation),
         *_trimming(cuts, asked=choices.brief.antenna.trim),
     )
     kept = [f for f in design.findings if f.rule not in {"match", "resonance", "polarisation", "axial ratio"}]
@@ -196,7 +198,8 @@ def _within_reach(prediction: Prediction, choices: Choices, trial: Trial) -> tup
     target, spare, changes = choices.brief.target, prediction.margins, []
     level = 10.0 ** (target.match_db / 20.0)
     if spare.spare_db < 0.0 and spare.worst_db < -3.0:
-        changes.append(f'target.match = "{math.ceil(spare.worst_db * 10.0 + 1e-9) / 10.0:g} dB", what it reaches')
+        kept = math.ceil(spare.worst_db * 10.0 + 1e-9) / 10.0
+        changes.append(f'target.match = "{kept:g} dB", which this copper keeps; sized for that it may do better')
     band = spare.band
     if spare.spare_db < 0.0 and band is not None and band.low < choices.centre < band.high:
         low, high = math.ceil(max(band.low, target.band[0]) / 1e5), math.floor(min(band.high, target.band[1]) / 1e5)

@@ -33,6 +33,7 @@ FLOOR = 1e-6
 LAWS_SAID = (
     f"truncated-normal: a bell, its ends at {SIGMAS:g} standard deviations are the tolerance: no board lies beyond; "
     "uniform: even between its ends; triangular: peak at the nominal; either-end: half of the boards at either end. "
+    "Mask runs from none, as over edges of copper, to its upper tolerance. "
     "Which law fits which quantity: common practice, no source. All quantities are independent."
 )
 NEEDED = ("name", "yield", "envelope", "contributors", "samples", "seed")
@@ -155,7 +156,6 @@ def _results(outcome: Outcome) -> dict[str, Any]:
     worst_axial = outcome.worst_axial
     return {
         "worst_reflection_db": float(_decibels(outcome.worst)[0]),
-        "best_match_hz": float(outcome.best_match[0]),
         "shift_percent": 100.0 * float(outcome.shift[0]),
         "worst_axial_ratio_db": None if worst_axial is None else float(worst_axial[0]),
     }
@@ -171,7 +171,6 @@ def _percentiles(outcome: Outcome) -> dict[str, Any]:
     return {
         "at_percent": list(PERCENTILES),
         "worst_reflection_db": told(_decibels(outcome.worst)),
-        "best_match_hz": told(outcome.best_match),
         "shift_percent": told(100.0 * outcome.shift),
         "worst_axial_ratio_db": None if counted is None else [_in_sense(each) for each in told(counted)],
     }

@@ -116,9 +116,18 @@ def _design_columns(design: Facts) -> dict[str, Any]:
         "board_area_cm2": round(width * height / 100.0, 4),
     }
     predicted = design["prediction"]
-    columns |= {} if predicted is None else _predicted_columns(predicted)
+    if predicted is not None:
+        columns |= {"meets_brief": "yes" if _meets(design, predicted) else "no"} | _predicted_columns(predicted)
     columns |= {f"{name}_mm": value for name, value in design["dimensions_mm"].items()}
     return columns | {f"{line['name']}_ohm": round(line["impedance_ohm"], 4) for line in design["lines"]}
+
+
+def _meets(design: Facts, predicted: Facts) -> bool:
+    """Whether the board as predicted meets what the brief asks."""
+    target, axial = design["target"], predicted["worst_axial_ratio_db"]
+    matched = predicted["worst_reflection_db"] <= target["match_db"]
+    in_sense: bool = axial is None or design["polarisation"].endswith(predicted["sense"])
+    return bool(matched and in_sense and (axial is None or axial <= target["axial_ratio_db"]))
 
 
 def _predicted_columns(predicted: Facts) -> dict[str, Any]:

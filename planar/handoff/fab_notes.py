@@ -49,7 +49,7 @@ QUESTIONS: tuple[tuple[str, str], ...] = (
 )
 """What the fabrication drawing of a board answers, and a pattern the answer must match."""
 _COUPON_ANSWERS = {
-    "mask over the antenna": ("mask over the lines", r"Solder mask over the lines to measure: \S"),
+    "mask over the antenna": ("where mask goes", r"Solder mask as its files show: \S"),
     "DC short between feed and ground": ("DC short between signal and return", r"DC short|not connected at DC"),
 }
 """Questions that a coupon, which has no antenna, is asked in other words."""

@@ -10,15 +10,16 @@ from planar.copper.layout import Kind
 @dataclass(frozen=True)
 class KindWords:
     """`thing` is what the outline bounds, `what` what it is, `origin` what lies at (0, 0), `around` why the layers
-    round the board are stated. In the notes: `masked` is what mask covers, `window` where nothing may be altered,
-    `short` and `no_short` what the DC resistance is. For the CAM operator: `purpose` is what the copper is for, `panel`
-    whose business panel, tabs and scores are."""
+    round the board are stated. In the notes: `masked` is where mask goes, `openings` why it does not elsewhere,
+    `window` where nothing may be altered, `short` and `no_short` what the DC resistance is. For the CAM operator:
+    `purpose` is what the copper is for, `panel` whose business panel, tabs and scores are."""
 
     thing: str
     what: str
     origin: str
     around: str
     masked: str
+    openings: str
     window: str
     short: str
     no_short: str
@@ -31,7 +32,8 @@ _SINGLE = KindWords(
     what="printed loop antenna, copper for a PCB layout",
     origin="feed",
     around="the antenna is designed for it",
-    masked="antenna",
+    masked="over the antenna",
+    openings="It is part of the design",
     window="Inside the antenna window",
     short="The antenna is a DC short: 0 ohm between feed and ground is intended, not a fault to repair.",
     no_short="Feed and ground are not connected at DC.",
@@ -55,7 +57,8 @@ KIND_WORDS = {
         what="coupon to measure the laminate on",
         origin="origin",
         around="it is measured with it",
-        masked="lines to measure",
+        masked="as its files show",
+        openings="Ring and lines to measure are bare of it on purpose",
         window="On the whole coupon",
         short="A DC short where the netlist says so: 0 ohm between signal and return is intended there.",
         no_short="Signal and return are not connected at DC.",

@@ -154,9 +154,8 @@ def _notes(stackup: Stackup, lines: tuple[ImpedanceLine, ...], facts: SheetFacts
         "Dimensions are finished copper at the foot of the conductor.",
         "Artwork is 1:1 with no etch compensation included; the fab applies its own.",
         f"Copper: {show(stackup.base_copper, 'length')} base, {show(stackup.finished_copper, 'length')} finished.",
-        f"Solder mask over the {words.masked}: "
-        f"{' and '.join(sorted(masked, reverse=True)) + ' side' if masked else 'none'}. "
-        "It is part of the design; do not add or remove it.",
+        f"Solder mask {words.masked}: {' and '.join(sorted(masked, reverse=True)) + ' side' if masked else 'none'}. "
+        f"{words.openings}; do not add or remove it.",
         f"Surface finish: {facts.finish}.",
         f"Impedance-controlled: {', '.join(controlled) or 'none'}. "
         f"Not controlled, do not adjust: {', '.join(others) or 'none'}.",

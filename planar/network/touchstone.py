@@ -58,7 +58,7 @@ def write_touchstone(response: Response, path: Path, *, comments: Iterable[str] 
     a comment are written as escapes. Raises `RangeError` for more than one port or another ending.
     """
     if response.s.shape[1] != 1 or path.suffix.lower() != ".s1p":
-        raise RangeError(f"{path.name}: a response of {response.s.shape[1]} ports; one port is written, as .s1p")
+        raise RangeError(f"{path.name}: one port is written, into a file named .s1p; here are {response.s.shape[1]}")
     lines = [f"! {line}".rstrip() for comment in comments for line in comment.splitlines() or [""]]
     lines.append(f"# HZ S RI R {_exact(response.z0)}")
     for frequency, value in zip(response.frequency, response.s[:, 0, 0] + 0.0, strict=True):

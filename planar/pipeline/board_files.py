@@ -32,12 +32,13 @@ from planar.handoff import (
     write_layout_files,
     write_zip,
 )
+from planar.pipeline.design_paths import DESIGN
 from planar.stackup import Stackup
 
+OUTPUTS = Path("outputs")
+"""Where results go that join no pack, unless a folder is named."""
 REVISION = "A"
 """Of every design as planar makes it; a change of the brief is another design with another hash."""
-DESIGN = "design.json"
-"""Name of a design in its pack."""
 
 
 @dataclass(frozen=True)
@@ -113,19 +114,19 @@ def impedance_lines(design: Design) -> tuple[ImpedanceLine, ...]:
     )
 
 
-def design_file(path: Path) -> Path:
-    """The design.json meant by `path`: itself, or that of the pack in the folder `path`."""
-    return path / DESIGN if path.is_dir() else path
+def joins_pack(source: Path, outputs: Path | None) -> bool:
+    """Whether results for the design file `source` join the pack it lies in: unless another folder is named."""
+    return outputs is None and source.name == DESIGN and is_pack(source.absolute().parent)
 
 
 @contextmanager
-def beside_design(source: Path, alone: Path, part: str) -> Iterator[tuple[Path, Path]]:
-    """A folder to write into and the folder it will be: `part` of the pack in which the design file `source` lies, or
-    `alone` where that is no pack. Raises `HandoffError` as `packed`."""
-    pack = source.absolute().parent
-    if source.name == DESIGN and is_pack(pack):
-        with extended(pack, part) as fresh:
+def beside_design(source: Path, outputs: Path | None, name: str, part: str) -> Iterator[tuple[Path, Path]]:
+    """A folder to write into and the folder it will be: `part` of the pack in which the design file `source` lies, or,
+    where that is no pack or `outputs` are named, `<name>-<part>` there. Raises `HandoffError` as `packed`."""
+    if joins_pack(source, outputs):
+        with extended(source.absolute().parent, part) as fresh:
             yield fresh, source.parent / part
     else:
+        alone = (outputs or OUTPUTS) / f"{name}-{part}"
         with packed(alone) as fresh:
             yield fresh, alone

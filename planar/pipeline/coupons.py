@@ -19,11 +19,11 @@ from planar.pipeline.board_files import (
     Making,
     beside_design,
     check_making,
-    design_file,
     gerber_facts,
     sheet_of,
     write_making,
 )
+from planar.pipeline.design_paths import design_file
 
 Progress = Callable[[str], None]
 PART = "coupon"
@@ -40,18 +40,18 @@ class Couponed:
     folder: Path
 
 
-def coupon(path: Path, library: Library, outputs: Path, progress: Progress = lambda stage: None) -> Couponed:
+def coupon(path: Path, library: Library, outputs: Path | None, progress: Progress = lambda stage: None) -> Couponed:
     """Draw the coupon of the design at `path` (a design.json or the folder of its pack) and write its files.
 
-    They join the pack the design lies in, or stand alone in `outputs`/<name>-coupon. Raises `PlanarError`; nothing is
-    then left behind.
+    They join the pack the design lies in. Where that is none, or `outputs` are named, they stand alone there in
+    <name>-coupon. Raises `PlanarError`; nothing is then left behind.
     """
     source = design_file(path)
     progress("drawing the coupon")
     design = read_design(source, library)
     drawn = design_coupon(design.choices, design.lines, library=library)
     making = _making(design, drawn, str(json.loads(source.read_bytes())["hash"]))
-    with beside_design(source, outputs / f"{design.name}-{PART}", PART) as (fresh, folder):
+    with beside_design(source, outputs, design.name, PART) as (fresh, folder):
         progress("writing files")
         write_making(making, fresh)
         told = json.dumps(coupon_facts(drawn), indent=2, ensure_ascii=False) + "\n"

@@ -23,6 +23,7 @@ from planar.errors import Finding, GeometryError, HandoffError, RangeError, Synt
 from planar.field.result import PointResult
 from planar.library import Library
 from planar.network.touchstone import write_touchstone
+from planar.pipeline.design_paths import design_file
 
 Progress = Callable[[str], None]
 
@@ -57,7 +58,11 @@ def with_sensitivities(design: Design, progress: Progress) -> Design:
 
 
 def solve(path: Path, library: Library, question: SolveQuestion, progress: Progress = lambda stage: None) -> Solved:
-    """Field solution of a brief's design, or of the design in a design.json; `PlanarError`: nothing is then written."""
+    """Field solution of a brief's design, or of the design in a design.json or a pack's folder.
+
+    Raises `PlanarError`; nothing is then written.
+    """
+    path = design_file(path)
     if path.suffix == ".json":
         design = read_design(path, library)
         frequencies, sweep = read_question(question, design.choices.brief)
@@ -72,7 +77,11 @@ def solve(path: Path, library: Library, question: SolveQuestion, progress: Progr
         raise SynthesisError(f"{path}: the field solver cannot take this copper: {error}") from error
     if question.s1p is not None and solution.sweep is not None:
         try:
-            write_touchstone(solution.sweep, question.s1p, comments=(design.name, design.status))
+            solved = (
+                f"Field solution of the copper as drawn, {solution.unknowns} unknowns; the input impedance moves by "
+                f"{100.0 * solution.convergence:.1f} % from a coarser mesh. Nominal board, no tolerances."
+            )
+            write_touchstone(solution.sweep, question.s1p, comments=(design.name, solved))
         except OSError as error:
             raise HandoffError(f"cannot write {question.s1p}: {error.strerror}") from error
     return Solved(design, solution)

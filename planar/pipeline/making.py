@@ -13,7 +13,7 @@ from planar.handoff import check_destination, packed
 from planar.library import Library
 from planar.pipeline.designing import designed, with_sensitivities
 from planar.pipeline.packs import check_pack, write_pack
-from planar.pipeline.reports import write_pack_report, write_refusal
+from planar.pipeline.reports import SPREAD, write_pack_report, write_refusal
 
 Progress = Callable[[str], None]
 REFUSED = "-refused"
@@ -22,10 +22,12 @@ REFUSED = "-refused"
 
 @dataclass(frozen=True)
 class Made:
-    """A design and the folder its pack was written to."""
+    """A design and the folder its pack was written to; `gone` names what an earlier pack there had beside it: panel,
+    coupon and spread were those of the earlier board."""
 
     design: Design
     folder: Path
+    gone: tuple[str, ...] = ()
 
 
 def make(
@@ -53,13 +55,14 @@ def make(
     if sensitive:
         design = with_sensitivities(design, progress)
     progress("writing files")
+    gone = tuple(name for name in ("panel", "coupon", SPREAD) if (folder / name).exists())
     with packed(folder) as fresh:
         write_pack(design, fresh)
         progress("reading the files back")
         check_pack(design, fresh)
         progress("drawing the report")
         write_pack_report(fresh, library)
-    return Made(design, folder)
+    return Made(design, folder, gone)
 
 
 def _refusal_note(error: SynthesisError, brief_path: Path, folder: Path) -> str:

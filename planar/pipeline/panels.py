@@ -22,13 +22,13 @@ from planar.pipeline.board_files import (
     Making,
     beside_design,
     check_making,
-    design_file,
     design_ring,
     gerber_facts,
     impedance_lines,
     sheet_of,
     write_making,
 )
+from planar.pipeline.design_paths import design_file
 
 Progress = Callable[[str], None]
 PART = "panel"
@@ -56,12 +56,12 @@ class PanelQuestion:
 
 
 def panel(
-    path: Path, library: Library, outputs: Path, question: PanelQuestion, progress: Progress = lambda stage: None
+    path: Path, library: Library, outputs: Path | None, question: PanelQuestion, progress: Progress = lambda stage: None
 ) -> Panelled:
     """Plan the panel of the design at `path` (a design.json or the folder of its pack) and write its files.
 
-    They join the pack the design lies in, or stand alone in `outputs`/<name>-panel. Raises `PlanarError`; nothing is
-    then left behind.
+    They join the pack the design lies in. Where that is none, or `outputs` are named, they stand alone there in
+    <name>-panel. Raises `PlanarError`; nothing is then left behind.
     """
     source = design_file(path)
     count = None if question.count is None else _read_count(question.count)
@@ -75,7 +75,7 @@ def panel(
     planned = plan_panel(design.layout, design.choices.fab, request)
     ring = None if coupon is None else coupon.dimensions["via_ring"]
     making = _making(design, planned, said, coupon_ring=ring)
-    with beside_design(source, outputs / f"{design.name}-{PART}", PART) as (fresh, folder):
+    with beside_design(source, outputs, design.name, PART) as (fresh, folder):
         progress("writing files")
         write_making(making, fresh)
         told = json.dumps(panel_facts(design, planned), indent=2, ensure_ascii=False) + "\n"

@@ -23,7 +23,7 @@ from planar.errors import BriefError, Fault, HandoffError, PlanarError
 from planar.handoff import file_hashes, is_pack, packed, renewed
 from planar.library import Library
 from planar.network.touchstone import read_touchstone
-from planar.pipeline.board_files import DESIGN, design_file
+from planar.pipeline.design_paths import DESIGN, design_file
 from planar.report.bars import Bar, Losses, loss_bar, ranked_bars
 from planar.report.board_picture import board_picture, fitting_scale
 from planar.report.callouts import keyed

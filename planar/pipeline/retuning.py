@@ -23,7 +23,7 @@ from planar.handoff import packed
 from planar.handoff.trim_drawing import Way, write_trim_drawing, write_trim_svg
 from planar.library import Library
 from planar.network.measured import Measured, read_measured
-from planar.pipeline.board_files import design_file
+from planar.pipeline.design_paths import design_file
 from planar.pipeline.spreading import solved_design
 from planar.report.page import write_report
 from planar.report.retune_page import retune_page

@@ -16,9 +16,10 @@ from planar.design.sized import sized_design
 from planar.design.spread import Spread, SpreadRequest, spread
 from planar.design.spread_facts import recentred_facts, spread_facts, write_spread
 from planar.design.workers import workers
-from planar.handoff import is_pack, packed, renewed
+from planar.handoff import packed, renewed
 from planar.library import Library
-from planar.pipeline.board_files import DESIGN, design_file
+from planar.pipeline.board_files import OUTPUTS, joins_pack
+from planar.pipeline.design_paths import design_file
 from planar.pipeline.new_file import check_new, write_new
 from planar.pipeline.reports import SPREAD, write_pack_report
 
@@ -54,7 +55,11 @@ class Scattered:
 
 
 def scatter(
-    path: Path, library: Library, outputs: Path, question: SpreadQuestion, progress: Progress = lambda stage: None
+    path: Path,
+    library: Library,
+    outputs: Path | None,
+    question: SpreadQuestion,
+    progress: Progress = lambda stage: None,
 ) -> Scattered:
     """Work out the spread of the design, or of the brief, at `path`.
 
@@ -76,18 +81,18 @@ def scatter(
     return Scattered(design, found, moved, file)
 
 
-def _kept(found: Spread, source: Path, outputs: Path, library: Library) -> Path:
+def _kept(found: Spread, source: Path, outputs: Path | None, library: Library) -> Path:
     """Write spread.json into the pack of the design.json `source`, whose report then shows it, or into a folder of its
     own; where it is."""
     told = spread_facts(found)
     pack = source.absolute().parent
-    if source.name == DESIGN and is_pack(pack):
+    if joins_pack(source, outputs):
         told |= {"design_hash": json.loads(source.read_bytes())["hash"]}
         with renewed(pack) as fresh:
             write_spread(told, fresh / SPREAD)
             write_pack_report(fresh, library)
         return source.parent / SPREAD
-    folder = outputs / f"{found.name}-spread"
+    folder = (outputs or OUTPUTS) / f"{found.name}-spread"
     with packed(folder) as fresh:
         write_spread(told, fresh / SPREAD)
     return folder / SPREAD

@@ -22,7 +22,7 @@ from planar.design.sweep_rows import LOST, Task, row_columns, row_facts, row_gro
 from planar.design.workers import cores
 from planar.handoff import check_destination, packed
 from planar.library import Library
-from planar.pipeline.board_files import design_file
+from planar.pipeline.design_paths import design_file
 from planar.report.page import write_report
 from planar.report.sweep_facts import asked_levels
 from planar.report.sweep_page import sweep_page

@@ -40,7 +40,7 @@ def _margins(facts: Mapping[str, Any], centre: float) -> dict[str, Any]:
     return {
         "spare_db": target["match_db"] - prediction["worst_reflection_db"],
         "axial_ratio_spare_db": None if worst_ratio is None else target["axial_ratio_db"] - worst_ratio,
-        "matched_fraction": None if matched is None else (matched[1] - matched[0]) / centre,
+        "matched_fraction": None if matched is None else 2.0 * (matched[1] - matched[0]) / (matched[0] + matched[1]),
         "axial_ratio_fraction": None if axial is None else (axial[1] - axial[0]) / centre,
         "least_margin_hz": None if margin is None else min(margin),
         "beyond_trusted": matched is not None and (matched[0] < low or matched[1] > high),

@@ -14,7 +14,6 @@ Facts = Mapping[str, Any]
 RESULTS: Mapping[str, tuple[str, str]] = {
     "worst_reflection_db": ("worst reflection in the band", "db"),
     "worst_axial_ratio_db": ("worst axial ratio in the band", "db2"),
-    "best_match_hz": ("best match at", "mhz"),
     "shift_percent": ("shift of the response", "shift"),
 }
 """Key of a result of one board -> its name and how it is written."""
@@ -70,8 +69,7 @@ def result_table(facts: Facts) -> Table | None:
     heads = ("result", "as designed #", *(f"{each:g} % below #" for each in percent))
     note = (
         "5 % below: one board in twenty has less. The shift is that of the whole response along the frequency axis; a "
-        "wide match may stay while it moves. The best match lies on a parabola between the frequencies computed, that "
-        "under Predicted on one of them: they may differ by a part of a step."
+        "wide match may stay while it moves. Mask runs from none, as over edges of copper, to its upper tolerance."
     )
     return table("Over the boards", heads, rows, note)
 

@@ -13,6 +13,7 @@ from planar.report.spread_tables import OTHER_SENSE
 SHOWN = {
     "row": "row",
     "status": "",
+    "meets_brief": "meets\nbrief",
     "family": "family",
     "board_width_mm": "board\nmm",
     "board_height_mm": "\nmm",

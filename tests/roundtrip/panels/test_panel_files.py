@@ -342,7 +342,7 @@ def test_drawing_of_a_scored_panel(folders: dict[str, Path]) -> None:
 
 
 def test_papers_of_a_coupon_speak_of_no_antenna(folders: dict[str, Path]) -> None:
-    assert "Solder mask over the lines to measure" in text_of(folders["coupon"])
+    assert "bare of it on purpose" in text_of(folders["coupon"])
     folder = folders["coupon"] / "fabrication"
     pages = [
         text_of(folders["coupon"]),
