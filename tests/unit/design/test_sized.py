@@ -165,7 +165,7 @@ NINE: dict[str, tuple[dict[str, Any], tuple[str, ...]]] = {
     ),
     "better match than a loop keeps": (
         {"target": {"impedance": "115 ohm", "match": "-30 dB"}, "antenna": PLAIN},
-        ("match over the band", "limit -30 dB", "what it reaches"),
+        ("match over the band", "limit -30 dB", "which this copper keeps"),
     ),
     "circular over more than a second gap carries": (
         {
