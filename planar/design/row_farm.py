@@ -30,8 +30,8 @@ _CONNECT = 20
 
 
 def local_rows(work: Worked, tasks: Sequence[Task], *, processes: int) -> Generator[tuple[int, Facts], None, None]:
-    """`work` of every task on `processes` processes of this machine; in this one when there is one."""
-    if processes == 1 or len(tasks) <= 1:
+    """`work` of every task on `processes` processes of this machine."""
+    if len(tasks) <= 1:  # a row alone may share its own work among processes
         yield from _rows_here(work, tasks)
         return
     waiting, suspects = deque(range(len(tasks))), deque[int]()
