@@ -16,7 +16,7 @@ from pathlib import Path
 from typing import Any
 
 from planar import __version__
-from planar.brief import check_brief, write_brief
+from planar.brief import Brief, check_brief, write_brief
 from planar.copper.layout import Hole, Layout
 from planar.design.design import Design, make_design
 from planar.design.equivalent import circuit_facts
@@ -97,6 +97,16 @@ def read_design(path: Path, library: Library) -> Design:
 
     Raises `BriefError` for a file that is no design or was changed since it was written, and as `make_design`.
     """
+    return drawn_again(read_facts(path), str(path), library)
+
+
+def drawn_again(facts: Mapping[str, Any], where: str, library: Library) -> Design:
+    """The design of `facts`, read from the file `where`, its copper drawn again. Raises as `make_design`."""
+    return make_design(check_brief(given_brief(facts), where, library), library, where)
+
+
+def read_facts(path: Path) -> dict[str, Any]:
+    """What the file `path` says of its design. Raises `BriefError` where it is none or was changed since."""
     try:
         facts = json.loads(path.read_bytes())
     except OSError as error:
@@ -110,7 +120,7 @@ def read_design(path: Path, library: Library) -> Design:
     if facts["hash"] != _digest(facts):
         expected = "the file as planar wrote it: to change dimensions write a brief with [antenna.dimensions]"
         raise _no_design(path, "hash", f'"{facts["hash"]}"', expected)
-    return make_design(check_brief(given_brief(facts), str(path), library), library, str(path))
+    return dict(facts)
 
 
 def given_brief(facts: Mapping[str, Any]) -> dict[str, Any]:
@@ -121,6 +131,20 @@ def given_brief(facts: Mapping[str, Any]) -> dict[str, Any]:
     dimensions = {name: f"{value!r} mm" for name, value in facts["dimensions_mm"].items()}
     antenna = kept | {key: value for key, value in chosen.items() if value is not None} | {"dimensions": dimensions}
     return brief | {"antenna": antenna}
+
+
+def redimensioned(design: Design, dimensions: Mapping[str, float], library: Library) -> Brief:
+    """The brief of `design` with these `dimensions` (name -> m) given, family, shape and end as they were chosen, and
+    nothing else changed; `planar make` takes them as they stand. `write_brief` makes it a file."""
+    choices = design.choices
+    facts = {
+        "brief": tomllib.loads(write_brief(design.brief)),
+        "family": choices.family.key,
+        "shape": choices.brief.antenna.shape,
+        "end": choices.end,
+        "dimensions_mm": {name: round(value * 1e3, 6) for name, value in dimensions.items()},
+    }
+    return check_brief(given_brief(facts), f"{design.name}, redimensioned", library)
 
 
 def _no_design(path: Path, key: str, value: str, expected: str) -> BriefError:

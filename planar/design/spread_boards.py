@@ -20,6 +20,7 @@ from planar.design.tolerances import Quantity, board_with
 from planar.design.trial import Effort, solve_trial
 from planar.design.workers import Workers
 from planar.errors import PlanarError, SynthesisError
+from planar.field.band import BandSolution
 from planar.network.response import reflection
 
 Array = NDArray[np.float64]
@@ -67,6 +68,15 @@ class Question:
             (low - BEYOND * centre, high + BEYOND * centre),
         )
 
+    def terms_of(self, band: BandSolution) -> Complex:
+        """Terms (j,) of a solved board."""
+        reflected = reflection(band.impedance(self.frequencies), self.reference)
+        if not self.axial_frequencies.size:
+            return reflected
+        ratio = band.circular_ratio(self.axial_frequencies)
+        wrong = ratio if self.choices.brief.target.polarisation == "circular-right" else 1.0 / ratio
+        return np.concatenate([reflected, wrong])
+
     def terms(self, tasks: Sequence[Array], workers: Workers) -> list[Complex | None]:
         """Terms (j,) of the boards at each of `tasks`, deviations (d,); None where one cannot be drawn or solved."""
         boards = [board_with(self.choices, self.dimensions, self.quantities, each) for each in tasks]
@@ -85,15 +95,9 @@ def solved_terms(task: tuple[Choices, Mapping[str, float], Effort, Question]) ->
     """Terms of one board, None where it cannot be drawn or solved."""
     choices, dimensions, effort, question = task
     try:
-        band = solve_trial(choices, dimensions, effort).band
-        reflected = reflection(band.impedance(question.frequencies), question.reference)
-        if not question.axial_frequencies.size:
-            return reflected
-        ratio = band.circular_ratio(question.axial_frequencies)
+        return question.terms_of(solve_trial(choices, dimensions, effort).band)
     except (PlanarError, np.linalg.LinAlgError):
         return None
-    wrong = ratio if choices.brief.target.polarisation == "circular-right" else 1.0 / ratio
-    return np.concatenate([reflected, wrong])
 
 
 @dataclass(frozen=True, eq=False)

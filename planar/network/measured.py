@@ -9,7 +9,6 @@ from __future__ import annotations
 import cmath
 import math
 import re
-from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -18,6 +17,7 @@ from numpy.typing import NDArray
 
 from planar.network.measured_text import Line, Reading, Table, read_table
 from planar.network.response import Response
+from planar.network.touchstone import FORMATS, UNITS
 from planar.units import show
 
 Array = NDArray[np.float64]
@@ -31,21 +31,6 @@ ALIKE = 0.02
 """Difference of reflections at one frequency that noise explains."""
 HIGHEST = 3e11
 """Hz, above which a frequency unit must be wrong."""
-_HEAD_UNITS = {"hz": 1.0, "khz": 1e3, "mhz": 1e6, "ghz": 1e9}
-
-Pair = Callable[[float, float], complex]
-
-
-def _polar(size: float, degrees: float) -> complex:
-    return cmath.rect(size, math.radians(degrees))
-
-
-FORMS: dict[str, Pair] = {
-    "RI": complex,
-    "MA": _polar,
-    "DB": lambda decibels, degrees: _polar(10.0 ** (decibels / 20.0), degrees),
-}
-"""Number format -> value of a pair of numbers."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -96,7 +81,7 @@ def _touchstone_rows(table: Table, path: Path, reading: Reading) -> _Rows:
     if width == 5:
         reading.whole("numbers", "5 on a line", "3 for one port, 9 for two")
         return []
-    value = FORMS[table.form]
+    value = FORMATS[table.form]
     return _checked([(line, n[0] * table.unit, value(n[1], n[2])) for line, n in table.rows], reading)
 
 
@@ -110,12 +95,12 @@ def _table_rows(table: Table, reading: Reading) -> _Rows:
         reading.whole("header", ", ".join(heads), right)
         return []
     unit = re.search(r"[kmg]?hz", heads[frequency])
-    scale = _HEAD_UNITS[unit[0]] if unit else 1.0
+    scale = UNITS[unit[0].upper()] if unit else 1.0
     if unit is None:
         reading.assume("no unit in the frequency's column head: Hz")
     first, second, form = pair
     turn = math.degrees(1.0) if "rad" in heads[second] and form != "RI" else 1.0
-    value = FORMS[form]
+    value = FORMATS[form]
     return _checked(
         [(line, n[frequency] * scale, value(n[first], n[second] * turn)) for line, n in table.rows], reading
     )

@@ -12,20 +12,17 @@ from collections.abc import Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
 
-from planar.errors import Fault, FaultyInputError
+from planar.errors import Fault
+from planar.network.touchstone import FORMATS, UNITS, raise_faults
 
 _NUMBER = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eEdD][+-]?\d+)?", re.ASCII)
 _DECIMAL_COMMA = re.compile(r"(?<=\d),(?=\d)")
 _KEYWORD = re.compile(r"\s*\[([^\]]+)\]\s*(.*)")
 _OPTION_WORDS = re.compile(r"[A-Za-z]+|[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?")
-_UNITS = {"HZ": 1.0, "KHZ": 1e3, "MHZ": 1e6, "GHZ": 1e9}
-_FORMS = ("RI", "MA", "DB")
 _UNUSED_KEYWORDS = {
     "version", "number of ports", "two-port data order", "number of frequencies", "matrix format",
     "network data", "begin information", "end information", "mixed-mode order", "end",
 }  # fmt: skip
-MOST_FAULTS = 20
-"""Faults reported of one file."""
 
 
 @dataclass(frozen=True)
@@ -72,11 +69,8 @@ class Reading:
             self.assumed.append(text)
 
     def raise_faults(self) -> None:
-        """Raise `FaultyInputError` when there are any, the first `MOST_FAULTS` of them."""
-        if self.faults:
-            left = len(self.faults) - MOST_FAULTS
-            more = [Fault(self.where, "lines", f"{left} more", "as above")] if left > 0 else []
-            raise FaultyInputError(self.faults[:MOST_FAULTS] + more)
+        """Raise `FaultyInputError` when there are any."""
+        raise_faults(self.faults, self.where)
 
 
 def read_table(path: Path, reading: Reading) -> Table:
@@ -168,9 +162,9 @@ def _options(line: Line | None, reading: Reading) -> tuple[float, str, float]:
     unit, form, z0 = "GHZ", "MA", 50.0
     while words:
         word = words.pop(0)
-        if word in _UNITS:
+        if word in UNITS:
             unit = word
-        elif word in _FORMS:
+        elif word in FORMATS:
             form = word
         elif word == "R" and words and _NUMBER.fullmatch(words[0]) and float(words[0]) > 0.0:
             z0 = float(words.pop(0))
@@ -178,9 +172,9 @@ def _options(line: Line | None, reading: Reading) -> tuple[float, str, float]:
             reading.fault(line, "option line", "S-parameters (S)")
         elif word not in {"S", "R"}:
             reading.fault(line, "option line", "# HZ S RI R 50, where HZ may be KHZ, MHZ, GHZ and RI may be MA or DB")
-    if not set(_UNITS) & set(re.findall(r"[A-Z]+", text.upper())):
+    if not set(UNITS) & set(re.findall(r"[A-Z]+", text.upper())):
         reading.assume("no frequency unit in the option line: GHz, as the specification has it")
-    return _UNITS[unit], form, z0
+    return UNITS[unit], form, z0
 
 
 def _reference(line: Line, text: str, reading: Reading) -> float:

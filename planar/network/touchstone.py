@@ -88,13 +88,18 @@ def read_touchstone(path: Path) -> Response:
     values = _values(rows, options, str(path), faults)
     if not rows and not faults:
         faults.append(Fault(str(path), "data", "(none)", f"lines of {_count(ports)} numbers"))
-    if faults:
-        left = len(faults) - MOST_FAULTS
-        more = [Fault(str(path), "lines", f"{left} more", "as above")] if left > 0 else []
-        raise FaultyInputError(faults[:MOST_FAULTS] + more)
+    raise_faults(faults, str(path))
     # A two-port line runs S11 S21 S12 S22: column by column.
     s = np.array(values).reshape(-1, ports, ports).transpose(0, 2, 1)
     return Response(np.array([numbers[0] for _, numbers in rows]) * UNITS[options.unit], s, options.z0)
+
+
+def raise_faults(faults: list[Fault], where: str) -> None:
+    """Raise `FaultyInputError` with the first `MOST_FAULTS` of the faults of the file `where`, when there are any."""
+    if faults:
+        left = len(faults) - MOST_FAULTS
+        more = [Fault(where, "lines", f"{left} more", "as above")] if left > 0 else []
+        raise FaultyInputError(faults[:MOST_FAULTS] + more)
 
 
 def _options(lines: list[_Line], where: str, faults: list[Fault]) -> _Options:

@@ -12,7 +12,7 @@ from planar.design.coupon import Coupon, design_coupon
 from planar.design.coupon_measure import CouponMeasurement, measure_coupon
 from planar.design.coupon_sheet import coupon_sheet
 from planar.design.design import Design
-from planar.design.design_file import read_design
+from planar.design.design_file import drawn_again, read_design, read_facts
 from planar.handoff import FabricationFacts, ImpedanceLine
 from planar.library import Library
 from planar.pipeline.board_files import (
@@ -48,9 +48,10 @@ def coupon(path: Path, library: Library, outputs: Path | None, progress: Progres
     """
     source = design_file(path)
     progress("drawing the coupon")
-    design = read_design(source, library)
+    facts = read_facts(source)
+    design = drawn_again(facts, str(source), library)
     drawn = design_coupon(design.choices, design.lines, library=library)
-    making = _making(design, drawn, str(json.loads(source.read_bytes())["hash"]))
+    making = _making(design, drawn, str(facts["hash"]))
     with beside_design(source, outputs, design.name, PART) as (fresh, folder):
         progress("writing files")
         write_making(making, fresh)

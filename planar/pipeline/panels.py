@@ -13,7 +13,7 @@ from planar.copper.outline import Outline
 from planar.copper.panel import PanelRequest, PlannedPanel, connector_box, plan_panel
 from planar.design.coupon import design_coupon
 from planar.design.design import Design
-from planar.design.design_file import read_design
+from planar.design.design_file import drawn_again, read_facts
 from planar.errors import BriefError, Fault
 from planar.handoff import FabricationFacts, PanelFacts
 from planar.library import Library
@@ -66,8 +66,8 @@ def panel(
     source = design_file(path)
     count = None if question.count is None else _read_count(question.count)
     progress("drawing the board")
-    design = read_design(source, library)
-    said = json.loads(source.read_bytes())
+    said = read_facts(source)
+    design = drawn_again(said, str(source), library)
     progress("planning the panel")
     coupon = design_coupon(design.choices, design.lines, library=library) if question.coupon else None
     request = _request(design, said["hash"], count, question.separation)

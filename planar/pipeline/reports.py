@@ -6,7 +6,6 @@ its own, so that an earlier result stays.
 
 from __future__ import annotations
 
-import json
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -14,7 +13,7 @@ from typing import Any
 
 from planar import __version__
 from planar.design.design import Design
-from planar.design.design_file import read_design
+from planar.design.design_file import drawn_again, read_facts
 from planar.design.equivalent import circuit_of
 from planar.design.portrait import Portrait
 from planar.design.portrait_file import read_portrait
@@ -110,8 +109,8 @@ class _Told:
 
 def _told(source: Path, library: Library) -> _Told:
     """What the design in the file `source` and the files beside it tell."""
-    design = read_design(source, library)
-    facts = json.loads(source.read_bytes())
+    facts = read_facts(source)
+    design = drawn_again(facts, str(source), library)
     made_by = facts.get("planar_version")
     if made_by != __version__:  # another version may mean something else by the same key
         right = f"a pack made by planar {__version__}: run planar make with its brief.toml again"

@@ -3,19 +3,19 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from planar import __version__
-from planar.brief import read_brief, write_brief
-from planar.design.design_file import design_facts, read_design
+from planar.brief import check_brief, read_brief, write_brief
+from planar.design.design_file import design_facts, given_brief, read_facts, redimensioned
 from planar.design.option_reader import OptionReader
 from planar.design.retune.batch import LearntLaminate, learnt_laminate
 from planar.design.retune.cut_places import cut_places
 from planar.design.retune.facts import retune_facts
-from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, corrected_brief, judged, retune
+from planar.design.retune.retuned import Retuned, RetuneRequest, behind_standards, judged, retune
 from planar.design.retune.unknowns import Plane, coax_delay, plane_of_standards, stated_plane, unstated_plane
 from planar.design.workers import workers
 from planar.errors import HandoffError, PlanarError, SynthesisError
@@ -24,6 +24,7 @@ from planar.handoff.trim_drawing import Way, write_trim_drawing, write_trim_svg
 from planar.library import Library
 from planar.network.measured import Measured, read_measured
 from planar.pipeline.design_paths import design_file
+from planar.pipeline.new_file import check_new, write_new
 from planar.pipeline.spreading import solved_design
 from planar.report.page import write_report
 from planar.report.retune_page import retune_page
@@ -54,11 +55,7 @@ class Retuning:
     retuned: Retuned
     folder: Path
     learnt: LearntLaminate | None
-
-    @property
-    def facts(self) -> dict[str, Any]:
-        """What retune.json and `--json` say."""
-        return retune_facts(self.retuned)
+    facts: dict[str, Any]
 
 
 def retune_board(
@@ -77,30 +74,32 @@ def retune_board(
     source = design_file(path)
     progress("reading the measurement")
     request, measured = _request(question, read_measured(file))
-    _check_new(question.write)
+    if question.write is not None:
+        check_new(question.write)
     judged(_band(source, library), measured, request)  # before any solving
     design = solved_design(source, library, progress)
     with workers() as shared:
         found = retune(design, measured, shared, request, progress)
-    brief = write_brief(corrected_brief(design, found.advice.best.dimensions, library))
+    brief = write_brief(redimensioned(design, found.advice.best.dimensions, library))
     learnt = None
     if question.learn is not None:
         learnt = learnt_laminate(found.inferred, design.name, _digest(source))
     folder = outputs / f"{design.name}-retune"
+    facts = retune_facts(found)
     progress("writing files")
     with packed(folder) as fresh:
         (fresh / "next.toml").write_bytes(brief.encode("utf-8"))
-        _write(found, fresh)
+        _write(found, facts, fresh)
     if question.write is not None:
-        _write_new(brief, question.write)
+        write_new(brief, question.write)
     if question.learn is not None and learnt is not None:
         _keep(learnt, question.learn)
-    return Retuning(found, folder, learnt)
+    return Retuning(found, folder, learnt, facts)
 
 
-def _write(found: Retuned, folder: Path) -> None:
+def _write(found: Retuned, facts: Mapping[str, Any], folder: Path) -> None:
     """Facts, page, and where to cut: a drawing to print at true size, where anything can be cut."""
-    facts, design = retune_facts(found), found.design
+    design = found.design
     told = json.dumps(facts, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
     (folder / "retune.json").write_bytes(told.encode("utf-8"))
     ways = [
@@ -126,8 +125,9 @@ def _request(question: RetuneQuestion, measured: Measured) -> tuple[RetuneReques
 
 def _band(source: Path, library: Library) -> tuple[float, float]:
     """Band (low, high) Hz that the design or brief at `source` is for."""
-    brief = read_design(source, library).brief if source.suffix == ".json" else read_brief(source, library)
-    return brief.target.band
+    if source.suffix != ".json":
+        return read_brief(source, library).target.band
+    return check_brief(given_brief(read_facts(source)), str(source), library).target.band
 
 
 def _stated(question: RetuneQuestion) -> Plane:
@@ -141,20 +141,7 @@ def _stated(question: RetuneQuestion) -> Plane:
 
 def _digest(source: Path) -> str:
     """Hash of the design, none where dimensions come from a brief."""
-    return str(json.loads(source.read_bytes())["hash"]) if source.suffix == ".json" else "none"
-
-
-def _check_new(path: Path | None) -> None:
-    if path is not None and path.exists():
-        raise HandoffError(f"{path} exists already: choose another name or remove it")
-
-
-def _write_new(text: str, path: Path) -> None:
-    try:
-        with path.open("x", encoding="utf-8") as file:
-            file.write(text)
-    except OSError as error:
-        raise HandoffError(f"cannot write {path}: {error.strerror}") from error
+    return str(read_facts(source)["hash"]) if source.suffix == ".json" else "none"
 
 
 def _keep(learnt: LearntLaminate, folder: Path) -> None:

@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-import json
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from planar.brief import check_brief, read_brief, write_brief
 from planar.design.design import Design
-from planar.design.design_file import design_facts, given_brief, read_design
+from planar.design.design_file import given_brief, read_facts, redimensioned
 from planar.design.recentre import Recentred, recentred
 from planar.design.sized import sized_design
 from planar.design.spread import Spread, SpreadRequest, spread
@@ -40,18 +39,13 @@ class SpreadQuestion:
 
 @dataclass(frozen=True)
 class Scattered:
-    """A design, its spread, where it was moved for yield, and where spread.json is."""
+    """A design, its spread, where it was moved for yield, where spread.json is, and in `facts` what `--json` says."""
 
     design: Design
     spread: Spread
     recentred: Recentred | None
     file: Path
-
-    @property
-    def facts(self) -> dict[str, Any]:
-        """What `--json` says: the spread, and what re-centring brought."""
-        moved = self.recentred
-        return spread_facts(self.spread) | ({} if moved is None else {"recentred": recentred_facts(moved)})
+    facts: dict[str, Any]
 
 
 def scatter(
@@ -75,24 +69,25 @@ def scatter(
         found = spread(design, shared, request, progress)
         moved = recentred(design, found, shared, progress) if question.recentre else None
     progress("writing files")
-    file = _kept(found, source, outputs, library)
-    if question.write is not None:
-        _write_brief(moved.design if moved is not None else design, library, question.write)
-    return Scattered(design, found, moved, file)
-
-
-def _kept(found: Spread, source: Path, outputs: Path | None, library: Library) -> Path:
-    """Write spread.json into the pack of the design.json `source`, whose report then shows it, or into a folder of its
-    own; where it is."""
     told = spread_facts(found)
+    file = _kept(told, source, outputs, library)
+    if question.write is not None:
+        kept = design if moved is None else moved.design
+        write_new(write_brief(redimensioned(kept, kept.dimensions, library)), question.write)
+    brought = {} if moved is None else {"recentred": recentred_facts(moved)}
+    return Scattered(design, found, moved, file, told | brought)
+
+
+def _kept(told: Mapping[str, Any], source: Path, outputs: Path | None, library: Library) -> Path:
+    """Write `told`, the facts of a spread, as spread.json into the pack of the design.json `source`, whose report then
+    shows it, or into a folder of its own; where it is."""
     pack = source.absolute().parent
     if joins_pack(source, outputs):
-        told |= {"design_hash": json.loads(source.read_bytes())["hash"]}
         with renewed(pack) as fresh:
-            write_spread(told, fresh / SPREAD)
+            write_spread({**told, "design_hash": read_facts(source)["hash"]}, fresh / SPREAD)
             write_pack_report(fresh, library)
         return source.parent / SPREAD
-    folder = (outputs or OUTPUTS) / f"{found.name}-spread"
+    folder = (outputs or OUTPUTS) / f"{told['name']}-spread"
     with packed(folder) as fresh:
         write_spread(told, fresh / SPREAD)
     return folder / SPREAD
@@ -103,12 +98,5 @@ def solved_design(source: Path, library: Library, progress: Progress) -> Design:
     dimensions it has. Raises `PlanarError`."""
     if source.suffix != ".json":
         return sized_design(read_brief(source, library), library, str(source), progress)
-    read_design(source, library)  # refuses a file that was changed
-    given = given_brief(json.loads(source.read_bytes()))
+    given = given_brief(read_facts(source))
     return sized_design(check_brief(given, str(source), library), library, str(source), progress)
-
-
-def _write_brief(design: Design, library: Library, path: Path) -> None:
-    """The design as a brief with its dimensions given; never over an existing file."""
-    told = given_brief(json.loads(json.dumps(design_facts(design))))
-    write_new(write_brief(check_brief(told, str(path), library)), path)

@@ -13,7 +13,7 @@ from pathlib import Path
 from typing import Any
 
 from planar.brief import read_brief, write_brief
-from planar.design.design_file import design_facts, given_brief, read_design
+from planar.design.design_file import design_facts, drawn_again, given_brief, read_facts
 from planar.design.row_farm import cluster_rows, local_rows
 from planar.design.row_store import RowStore, row_store
 from planar.design.sized import sized_design
@@ -99,8 +99,8 @@ def sweep(
 def _base(path: Path, library: Library, question: SweepQuestion, progress: Progress) -> tuple[str, Mapping[str, Any]]:
     """Name and tables the rows start from; with the dimensions of a design where these stay."""
     if path.suffix == ".json":
-        design = read_design(path, library)
-        return design.name, given_brief(json.loads(path.read_bytes()))
+        facts = read_facts(path)
+        return drawn_again(facts, str(path), library).name, given_brief(facts)
     brief = read_brief(path, library)
     if question.given and not brief.antenna.dimensions:
         progress("sizing the board whose dimensions stay")

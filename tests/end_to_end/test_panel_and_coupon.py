@@ -12,20 +12,15 @@ from pathlib import Path
 import numpy as np
 import pytest
 import skrf
-from click.testing import CliRunner, Result
 
 from planar.brief import read_brief
-from planar.cli import main
 from planar.design.design import make_design
 from planar.design.design_file import design_facts
 from planar.handoff import packed, read_manifest
 from planar.library import Library
+from tests.end_to_end.bench_loop import run
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
-
-
-def run(*arguments: str | Path) -> Result:
-    return CliRunner().invoke(main, [str(each) for each in arguments])
 
 
 @pytest.fixture(scope="module")

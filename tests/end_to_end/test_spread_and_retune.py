@@ -10,35 +10,12 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from click.testing import CliRunner, Result
 
 from planar.brief import read_brief
-from planar.cli import main
 from planar.design.design import make_design
 from planar.design.design_file import design_facts
 from planar.library import Library
-
-BRIEF = """
-name = "bench loop"
-[target]
-band = ["2440 MHz", "2460 MHz"]
-impedance = "140 ohm"
-match = "-6 dB"
-[antenna]
-family = "plain"
-shape = "circle"
-[antenna.dimensions]
-loop_width = "35 mm"
-trace_width = "3 mm"
-gap = "1 mm"
-[board]
-laminate = "ptfe-glass-2-2"
-thickness = "1.6 mm"
-"""
-
-
-def run(*arguments: str | Path) -> Result:
-    return CliRunner().invoke(main, [str(each) for each in arguments])
+from tests.end_to_end.bench_loop import BRIEF, run
 
 
 def test_a_spread_says_yield_and_what_dominates(tmp_path: Path) -> None:

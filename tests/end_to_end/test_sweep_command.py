@@ -10,33 +10,12 @@ import warnings
 from pathlib import Path
 
 import pytest
-from click.testing import CliRunner, Result
+from click.testing import Result
 
-from planar.cli import main
 from planar.design.row_store import row_store
+from tests.end_to_end.bench_loop import BRIEF, run
 
-BRIEF = """
-name = "bench loop"
-[target]
-band = ["2440 MHz", "2460 MHz"]
-impedance = "140 ohm"
-match = "-6 dB"
-[antenna]
-family = "plain"
-shape = "circle"
-[antenna.dimensions]
-loop_width = "35 mm"
-trace_width = "3 mm"
-gap = "1 mm"
-[board]
-laminate = "ptfe-glass-2-2"
-thickness = "1.6 mm"
-"""
 VARY = ("--vary", "board.thickness=0.8 mm,1.6 mm", "--vary", "make.fab=pool-two-layer")
-
-
-def run(*arguments: str | Path) -> Result:
-    return CliRunner().invoke(main, [str(each) for each in arguments])
 
 
 @pytest.fixture(scope="module")

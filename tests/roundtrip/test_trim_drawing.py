@@ -33,6 +33,7 @@ from planar.errors import HandoffError, SynthesisError
 from planar.handoff.trim_detail import FIRST
 from planar.handoff.trim_drawing import WARNINGS, Way, write_trim_drawing, write_trim_svg
 from planar.library import Library
+from tests.roundtrip.pdf_paths import filled_with
 
 Facts = dict[str, Any]
 
@@ -159,14 +160,7 @@ def test_cut_that_takes_nothing_is_refused(tabbed: Design) -> None:
 
 def paths(page: pypdfium2.PdfPage, colour: str) -> Iterator[np.ndarray[Any, Any]]:
     """Points (n, 2), mm, of every path filled with `colour`: ends of lines and curves with their handles."""
-    wanted = tuple(int(colour[i : i + 2], 16) for i in (1, 3, 5))
-    for item in page.get_objects(filter=[pdfium.FPDF_PAGEOBJ_PATH]):
-        mode, stroke = ctypes.c_int(), ctypes.c_int()
-        pdfium.FPDFPath_GetDrawMode(item, mode, stroke)
-        red, green, blue, alpha = (ctypes.c_uint() for _ in range(4))
-        pdfium.FPDFPageObj_GetFillColor(item, red, green, blue, alpha)
-        if not mode.value or (red.value, green.value, blue.value) != wanted:
-            continue
+    for item in filled_with(page, colour):
         points = []
         for i in range(pdfium.FPDFPath_CountSegments(item)):
             x, y = ctypes.c_float(), ctypes.c_float()

@@ -23,7 +23,7 @@ from planar.design.tolerances import board_with
 from planar.design.trial import Effort, solve_trial
 from planar.design.workers import Workers
 from planar.errors import PlanarError, SynthesisError
-from planar.network.response import Response, reflection
+from planar.network.response import Response
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -164,15 +164,9 @@ def _terms(task: tuple[Choices, Artwork, Effort, Question]) -> Complex | None:
     """Terms (j,) of one board, None where it cannot be drawn or solved."""
     choices, artwork, effort, question = task
     try:
-        band = solve_trial(choices, artwork.dimensions, effort, tabs=artwork.tabs).band
-        reflected = reflection(band.impedance(question.frequencies), question.reference)
-        if not question.axial_frequencies.size:
-            return reflected
-        ratio = band.circular_ratio(question.axial_frequencies)
+        return question.terms_of(solve_trial(choices, artwork.dimensions, effort, tabs=artwork.tabs).band)
     except (PlanarError, np.linalg.LinAlgError):
         return None
-    wrong = ratio if choices.brief.target.polarisation == "circular-right" else 1.0 / ratio
-    return np.concatenate([reflected, wrong])
 
 
 def _matched(grid: Array, reflected: Complex, choices: Choices) -> tuple[float, float] | None:

@@ -6,17 +6,14 @@ explains it, what follows.
 
 from __future__ import annotations
 
-import tomllib
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from contextlib import suppress
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planar.brief import Brief, check_brief, write_brief
 from planar.design.design import Design
-from planar.design.design_file import given_brief
 from planar.design.retune.advice import Advice, advised
 from planar.design.retune.board_model import BoardModel, board_model, other_surroundings, surrounded
 from planar.design.retune.built import built_board
@@ -25,7 +22,6 @@ from planar.design.retune.misfit import Comparison, compare_sweeps
 from planar.design.retune.unknowns import Plane, unstated_plane
 from planar.design.workers import Workers
 from planar.errors import Finding, RangeError, Severity, SynthesisError
-from planar.library import Library
 from planar.network.grade import Grade, grade
 from planar.network.measured import Measured
 from planar.network.plane import check_passive, from_standards
@@ -176,20 +172,6 @@ def _at(frequency: Array, standard: Measured, z0: float) -> Complex:
     value = standard.reflection
     found: Complex = np.interp(frequency, own, value.real) + 1j * np.interp(frequency, own, value.imag)
     return found
-
-
-def corrected_brief(design: Design, dimensions: Mapping[str, float], library: Library) -> Brief:
-    """The brief of `design` with these `dimensions` (name -> m) given, family, shape and end as they were chosen, and
-    nothing else changed; `planar make` takes them as they stand. `write_brief` makes it a file."""
-    choices = design.choices
-    facts = {
-        "brief": tomllib.loads(write_brief(design.brief)),
-        "family": choices.family.key,
-        "shape": choices.brief.antenna.shape,
-        "end": choices.end,
-        "dimensions_mm": {name: round(value * 1e3, 6) for name, value in dimensions.items()},
-    }
-    return check_brief(given_brief(facts), f"{design.name}, corrected", library)
 
 
 def _refused(findings: tuple[Finding, ...]) -> tuple[Finding, ...]:

@@ -9,12 +9,13 @@ import pytest
 
 from planar.brief import write_brief
 from planar.design.design import make_design
+from planar.design.design_file import redimensioned
 from planar.design.retune.advice import advice_sentences, advised
 from planar.design.retune.batch import learnt_laminate
 from planar.design.retune.built import built_board
 from planar.design.retune.cuts import cut_now
 from planar.design.retune.facts import retune_facts
-from planar.design.retune.retuned import RetuneRequest, corrected_brief, explained
+from planar.design.retune.retuned import RetuneRequest, explained
 from planar.design.retune.unknowns import COAX_SPEED, unstated_plane
 from planar.design.tolerances import board_with
 from planar.errors import SynthesisError
@@ -106,7 +107,7 @@ def test_board_that_came_out_high_cannot_be_helped_by_the_outer_edge(bench, work
 
 
 def test_corrected_brief_changes_dimensions_only(design, advice):
-    corrected = corrected_brief(design, advice.best.dimensions, LIBRARY)
+    corrected = redimensioned(design, advice.best.dimensions, LIBRARY)
     old, new = (tomllib.loads(write_brief(each)) for each in (design.brief, corrected))
     dimensions = new["antenna"].pop("dimensions")
     old["antenna"].pop("dimensions")
