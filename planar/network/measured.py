@@ -81,8 +81,8 @@ def _touchstone_rows(table: Table, path: Path, reading: Reading) -> _Rows:
     if width == 5:
         reading.whole("numbers", "5 on a line", "3 for one port, 9 for two")
         return []
-    value = FORMATS[table.form]
-    return _checked([(line, n[0] * table.unit, value(n[1], n[2])) for line, n in table.rows], reading)
+    form = table.form
+    return _checked([(line, n[0] * table.unit, _value(form, n[1], n[2])) for line, n in table.rows], reading)
 
 
 def _table_rows(table: Table, reading: Reading) -> _Rows:
@@ -100,10 +100,17 @@ def _table_rows(table: Table, reading: Reading) -> _Rows:
         reading.assume("no unit in the frequency's column head: Hz")
     first, second, form = pair
     turn = math.degrees(1.0) if "rad" in heads[second] and form != "RI" else 1.0
-    value = FORMATS[form]
     return _checked(
-        [(line, n[frequency] * scale, value(n[first], n[second] * turn)) for line, n in table.rows], reading
+        [(line, n[frequency] * scale, _value(form, n[first], n[second] * turn)) for line, n in table.rows], reading
     )
+
+
+def _value(form: str, first: float, second: float) -> complex:
+    """The value of a pair of numbers; decibels of a number that cannot be held are none, which the check then says."""
+    try:
+        return FORMATS[form](first, second)
+    except OverflowError:
+        return complex("nan")
 
 
 def _pair_columns(heads: tuple[str, ...]) -> tuple[int, int, str] | None:

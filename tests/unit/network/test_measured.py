@@ -111,6 +111,7 @@ REFUSED: dict[str, tuple[str, list[str], str]] = {
     "zero frequency": ("a.s1p", ["# MHZ S RI R 50", "0 1 0", *rows(scale=1e6)], "line 2"),
     "hertz taken for gigahertz": ("a.s1p", ["# GHZ S RI R 50", *rows(scale=1.0)], "is the unit right"),
     "noise data": ("a.ts", [*V2, *rows(scale=1e6), "[Noise Data]", "850 1 0.1 0.2 0.3", "[End]"], "keyword"),
+    "decibels beyond all numbers": ("a.s1p", ["# MHZ S DB R 50", "850 9e9 0", *rows("DB", 1e6)], "line 2"),
     "nothing": ("a.s1p", ["# MHZ S RI R 50"], "data"),
     "no angle": ("a.csv", ["freq (MHz),s11 (dB)", "850,-10"], "header"),
     "no header": ("a.csv", rows(scale=1e6, separator=","), "line 1"),
